@@ -1,1 +1,1 @@
-
+"""Curves: models, notation, points, divisors, reductions, local parameters, differentials."""

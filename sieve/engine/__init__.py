@@ -1,1 +1,1 @@
-
+"""The sieve: relations, plans, saturation, verdicts."""

@@ -1,1 +1,1 @@
-
+"""Exact arithmetic: prime powers, lattices, truncated series, p-adic numbers, finite abelian groups."""

@@ -1,1 +1,1 @@
-
+"""Local data: Picard groups over finite fields, logarithms, conditions."""

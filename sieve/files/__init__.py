@@ -1,0 +1,1 @@
+"""Case files, candidate files and results on disk."""

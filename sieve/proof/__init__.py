@@ -1,0 +1,1 @@
+"""Proof logs: what was used, in a form that can be checked again."""

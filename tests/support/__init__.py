@@ -1,0 +1,1 @@
+"""What several tests share: reference data, slow oracles, sizes of sweeps."""
