@@ -1,0 +1,143 @@
+"""From what a case file says to points and divisors of a curve, everything verified on the way."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from fractions import Fraction
+from pathlib import Path
+
+from sieve.curves.divisors import Divisor, Place, Point, RationalPlace
+from sieve.curves.hyperelliptic import HyperellipticCurve, SingularCurve
+from sieve.curves.notation import Origin, Polynomial, dense, quote
+from sieve.files.case import (
+    Case,
+    WrittenClosedPoint,
+    WrittenDivisor,
+    WrittenMumford,
+    WrittenPoint,
+    load_case,
+)
+
+_FORM = "an equation y^2 + h(x)*y = f(x)"
+MAX_DENOMINATOR_BITS = 128
+"""Bits of a denominator in an equation: it is factored to find the smallest integral model."""
+
+
+@dataclass(frozen=True)
+class ResolvedCase:
+    """A case whose data are points and divisors of one curve, in the coordinates of its integral model.
+
+    Fields: `case` as read; `curve`; `known_points` in the order of the file, repetitions removed; `base` of
+    degree 1, and `base_point` when it is one rational point; `generators` of degree 0, as many as the rank
+    (none when `case.generators_from` is set); `torsion`, pairs (claimed order, divisor of degree 0).
+    """
+
+    case: Case
+    curve: HyperellipticCurve
+    known_points: tuple[Point, ...]
+    base: Divisor
+    base_point: Point | None
+    generators: tuple[Divisor, ...]
+    torsion: tuple[tuple[int, Divisor], ...]
+
+
+def resolve(case: Case) -> ResolvedCase:
+    """Check a case against its curve.
+
+    Raises `InputError` for an equation that is not hyperelliptic of genus >= 2, a singular curve, a point off
+    the curve, a Mumford pair or closed point that is none, a divisor of the wrong degree or equal to zero,
+    and for fewer known points than `generators_from` needs.
+    """
+    curve = hyperelliptic_curve(case.equation, case.equation_origin)
+    known: dict[Point, None] = {}
+    for written in case.known_points:
+        known[_rational_point(curve, written)] = None
+    base = _divisor(curve, case.base, 1)
+    base_point = None
+    if len(base.terms) == 1 and isinstance(base.terms[0][1], RationalPlace):
+        base_point = base.terms[0][1].point
+    generators = tuple(_divisor(curve, written, 0) for written in case.generators)
+    torsion = tuple((order, _divisor(curve, written, 0)) for order, written in case.torsion)
+    if case.generators_from is not None:
+        differences = len(known) - (1 if base_point in known else 0)
+        if differences < case.rank:
+            raise case.origin.at("jacobian.generators_from").error(
+                f"{differences} differences of known points for rank {case.rank}", f"at least {case.rank}"
+            )
+    return ResolvedCase(case, curve, tuple(known), base, base_point, generators, torsion)
+
+
+def read_case(path: str | Path) -> ResolvedCase:
+    """`load_case` and `resolve` in one step."""
+    return resolve(load_case(path))
+
+
+def hyperelliptic_curve(equation: Polynomial, origin: Origin) -> HyperellipticCurve:
+    """The curve c*y^2 + h(x)*y - f(x) = 0, any nonzero rational c, sides in any order.
+
+    Arguments: `equation` in x and y (and z, which does not occur), as left side minus right side.
+    Returns the integral model; its `y_scale` records how its y comes from the user's.
+    Raises `InputError` when the equation is of another form, singular, or of genus below 2.
+    """
+    by_power: dict[int, Polynomial] = {}
+    for exponents, coefficient in equation.items():
+        by_power.setdefault(exponents[1], {})[exponents] = coefficient
+    degree = max(by_power)
+    if degree != 2:
+        raise origin.error("an equation without y^2" if degree < 2 else f"a term with y^{degree}", _FORM)
+    leading = dense(by_power[2])
+    if len(leading) > 1:
+        raise origin.error("a coefficient of y^2 that is not constant", _FORM)
+    h = [c / leading[0] for c in dense(by_power.get(1, {}))]
+    f = [-c / leading[0] for c in dense(by_power.get(0, {}))]
+    if max((c.denominator.bit_length() for c in h + f), default=0) > MAX_DENOMINATOR_BITS:
+        raise origin.error("a very large denominator", f"at most {MAX_DENOMINATOR_BITS} bits")
+    try:
+        return HyperellipticCurve.from_rational(f, h)
+    except SingularCurve as error:
+        found = f"a singular curve (4*f + h^2 has the repeated factor {error.factor})"
+        raise origin.error(found, "4*f + h^2 without repeated factors") from None
+    except ValueError as error:
+        if str(error).startswith("genus"):
+            raise origin.error(f"a curve of {error}", "genus at least 2") from None
+        found = f"deg f = {len(f) - 1}, deg h = {len(h) - 1}"
+        expected = "deg h at most g + 1, deg f at most 2*g + 2 (complete the square)"
+        raise origin.error(found, expected) from None
+
+
+def _rational_point(curve: HyperellipticCurve, written: WrittenPoint) -> Point:
+    entries = written.point.entries
+    if not written.point.affine and entries[0] == entries[2] == 0:
+        raise written.origin.error("a point with X = Z = 0", "X or Z nonzero")
+    try:
+        return curve.from_user(*entries)
+    except ValueError:
+        found = f"{quote(written.text, 120)}, which is not on the curve"
+        raise written.origin.error(found, "a point of the curve") from None
+
+
+def _place(curve: HyperellipticCurve, written: WrittenPoint | WrittenClosedPoint | WrittenMumford) -> Place:
+    if isinstance(written, WrittenPoint):
+        return RationalPlace(_rational_point(curve, written))
+    if isinstance(written, WrittenMumford):
+        if len(written.w) >= max(len(written.u), 1):
+            raise written.origin.error("mumford with deg w >= deg u", "deg w < deg u")
+        try:
+            return curve.mumford(written.u, [curve.y_scale * c for c in written.w])
+        except ValueError as error:
+            raise written.origin.error(f"mumford: {error}", "a Mumford pair of the curve") from None
+    x, y = written.point.entries[:2]
+    z = (Fraction(1),) if written.point.affine else written.point.entries[2]
+    try:
+        return curve.closed_point(written.modulus, x, [curve.y_scale * c for c in y], z)
+    except ValueError as error:
+        raise written.origin.error(f"closed point: {error}", "a closed point of the curve") from None
+
+
+def _divisor(curve: HyperellipticCurve, written: WrittenDivisor, degree: int) -> Divisor:
+    divisor = Divisor.of((multiplicity, _place(curve, place)) for multiplicity, place in written.terms)
+    if divisor.degree != degree:
+        raise written.origin.error(f"a divisor of degree {divisor.degree}", f"degree {degree}")
+    if not divisor.terms:
+        raise written.origin.error("a divisor whose terms cancel", "a nonzero divisor")
+    return divisor
