@@ -401,6 +401,26 @@ def dense(polynomial: Polynomial, index: int = 0) -> tuple[Fraction, ...]:
     return tuple(out)
 
 
+def format_univariate(coefficients: Sequence[int | Fraction], variable: str) -> str:
+    """A polynomial in one variable, coefficients low degree first, as `parse_univariate` reads it.
+
+    >>> format_univariate([Fraction(-1, 2), 0, 1, -3], "x")
+    '-3*x^3 + x^2 - 1/2'
+    """
+    terms = []
+    for degree in range(len(coefficients) - 1, -1, -1):
+        value = Fraction(coefficients[degree])
+        if value:
+            power = "" if degree == 0 else variable if degree == 1 else f"{variable}^{degree}"
+            size = str(abs(value))
+            body = size if not power else power if size == "1" else f"{size}*{power}"
+            terms.append(("-" if value < 0 else "+", body))
+    if not terms:
+        return "0"
+    text = "".join(f" {sign} {body}" for sign, body in terms)[1:]
+    return text[2:] if text[0] == "+" else "-" + text[2:]
+
+
 def parse_rational(text: str, origin: Origin) -> Fraction:
     """A rational number, `3` or `-7/4`; arithmetic on numbers such as `2^5/3` is read too.
 

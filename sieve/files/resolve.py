@@ -4,11 +4,14 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
+from math import gcd
 from pathlib import Path
 
+import flint
+
 from sieve.curves.divisors import Divisor, Place, Point, RationalPlace
-from sieve.curves.hyperelliptic import HyperellipticCurve, SingularCurve
-from sieve.curves.notation import Origin, Polynomial, dense, quote
+from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.notation import Origin, Polynomial, dense, format_univariate, quote
 from sieve.files.case import (
     Case,
     WrittenClosedPoint,
@@ -92,17 +95,28 @@ def hyperelliptic_curve(equation: Polynomial, origin: Origin) -> HyperellipticCu
     f = [-c / leading[0] for c in dense(by_power.get(0, {}))]
     if max((c.denominator.bit_length() for c in h + f), default=0) > MAX_DENOMINATOR_BITS:
         raise origin.error("a very large denominator", f"at most {MAX_DENOMINATOR_BITS} bits")
+    repeated = _repeated_factor(f, h)
+    if len(repeated) > 1:
+        factor = quote(format_univariate(repeated, "x"), 120)[1:-1]
+        found = f"a singular curve (the repeated factor of 4*f + h^2 is {factor})"
+        raise origin.error(found, "4*f + h^2 without repeated factors")
     try:
         return HyperellipticCurve.from_rational(f, h)
-    except SingularCurve as error:
-        found = f"a singular curve (4*f + h^2 has the repeated factor {error.factor})"
-        raise origin.error(found, "4*f + h^2 without repeated factors") from None
     except ValueError as error:
         if str(error).startswith("genus"):
             raise origin.error(f"a curve of {error}", "genus at least 2") from None
         found = f"deg f = {len(f) - 1}, deg h = {len(h) - 1}"
         expected = "deg h at most g + 1, deg f at most 2*g + 2 (complete the square)"
         raise origin.error(found, expected) from None
+
+
+def _repeated_factor(f: list[Fraction], h: list[Fraction]) -> list[int]:
+    """The product of the repeated factors of 4 f + h^2, primitive; coefficients low degree first."""
+    fp, hp = (flint.fmpq_poly([flint.fmpq(c.numerator, c.denominator) for c in side]) for side in (f, h))
+    square = (4 * fp + hp * hp).numer()
+    repeated = [int(c) for c in square.gcd(square.derivative()).coeffs()] if square else []
+    content = gcd(*repeated)
+    return [c // content for c in repeated]
 
 
 def _rational_point(curve: HyperellipticCurve, written: WrittenPoint) -> Point:

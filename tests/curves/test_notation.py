@@ -13,6 +13,7 @@ from sieve.curves import notation
 from sieve.curves.notation import (
     Origin,
     dense,
+    format_univariate,
     parse_equation,
     parse_padic,
     parse_padic_point,
@@ -188,6 +189,13 @@ def test_dense_coefficients() -> None:
     assert parse_univariate("x^3 - 1/2", "x", HERE) == (Fraction(-1, 2), 0, 0, 1)
     assert parse_univariate("x - x", "x", HERE) == ()
     assert dense({(2, 0): Fraction(3)}) == (0, 0, 3)
+
+
+@given(st.lists(st.fractions(-20, 20, max_denominator=4), max_size=6))
+def test_formatted_polynomials_are_read_back(coefficients: list[Fraction]) -> None:
+    while coefficients and coefficients[-1] == 0:
+        coefficients.pop()
+    assert parse_univariate(format_univariate(coefficients, "x"), "x", HERE) == tuple(coefficients)
 
 
 def test_points() -> None:
