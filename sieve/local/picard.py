@@ -1,0 +1,385 @@
+"""Certified Picard groups of curves over prime fields, from sections of a linear system.
+
+Pic(X/F_v) modulo the class of one rational point P0 is Pic^0 = J(F_v): the class of D stands for D - deg(D) P0.
+Factor base = some rational points; every section whose zeros are known is a relation.  Sections with one unknown
+zero define it as a short combination of the base; the others close the lattice.
+
+The group is proved complete by two facts.  Generation: if N_e = #X(F_{v^e}) > (2g-2) v^{e/2}, the places of
+degree dividing e generate Pic^0 (a nontrivial character constant on them would have a character sum N_e, but its
+L-polynomial has degree 2g-2 and inverse roots of size sqrt v; Weil 1948).  Index: the relations found span a lattice
+whose index is a multiple of #J(F_v), and it is below twice a lower bound for #J(F_v), or equal to the exact order.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from sieve.curves.hyperelliptic_mod import HigherPlace, LocalDivisor, ReducedHyperelliptic
+from sieve.errors import InternalError, Uncertified
+from sieve.exact.abelian import FiniteQuotient, quotient_by
+from sieve.local.order_bounds import exact_order, extension_count, order_lower_bound
+
+IntArray = NDArray[np.int64]
+
+FAST_FROM = {2: 40, 3: 80}
+"""From this v on, sections through distinct points are used alone (by genus; 4 and up: 100)."""
+
+EXTENSION_LIMIT = 200_000
+"""Largest v^e for which #X(F_{v^e}) is counted."""
+
+
+@dataclass
+class PicardGroup:
+    """J(F_v) with the classes of all rational points.
+
+    `invariants`: invariant factors > 1, each dividing the next.  `point_logs`: int64, shape (N, len(invariants)), the class
+    of P - P0 for every point in the curve's numbering.  `unit_log`: the class of U (the fibre or section class).
+    `reason` says how completeness was proved.
+    """
+
+    curve: ReducedHyperelliptic
+    invariants: tuple[int, ...]
+    order: int
+    point_logs: IntArray
+    unit_log: tuple[int, ...]
+    reason: str
+    higher_logs: dict[HigherPlace, tuple[int, ...]] = field(default_factory=dict)
+    sections_used: int = 0
+
+    @property
+    def prime(self) -> int:
+        """The residue characteristic v."""
+        return self.curve.prime
+
+    def add(self, total: list[int], multiplicity: int, log: tuple[int, ...] | IntArray) -> None:
+        """total += multiplicity * log, in place, reduced."""
+        for i, d in enumerate(self.invariants):
+            total[i] = (total[i] + multiplicity * int(log[i])) % d
+
+    def log(self, divisor: LocalDivisor) -> tuple[int, ...]:
+        """The class of D - deg(D) P0 for an effective divisor over F_v.
+
+        Places of higher degree are replaced through sections; raises `Uncertified` if none is found.
+        """
+        total = [0] * len(self.invariants)
+        self.add(total, divisor.units, self.unit_log)
+        for index, multiplicity in divisor.points:
+            self.add(total, multiplicity, self.point_logs[index])
+        for place, multiplicity in divisor.places:
+            self.add(total, multiplicity, self._higher(place, 0))
+        return tuple(total)
+
+    def _higher(self, place: HigherPlace, depth: int) -> tuple[int, ...]:
+        known = self.higher_logs.get(place)
+        if known is not None:
+            return known
+        partner = self.curve.higher_partner(place)
+        other = self.higher_logs.get(partner)
+        total = [0] * len(self.invariants)
+        if other is not None:
+            self.add(total, len(place[0]) - 1, self.unit_log)
+            self.add(total, -1, other)
+        else:
+            divisor = self._rational_relation(place, depth)
+            self.add(total, divisor.units, self.unit_log)
+            for index, multiplicity in divisor.points:
+                self.add(total, -multiplicity, self.point_logs[index])
+            for rest, multiplicity in divisor.places:
+                if rest != place:
+                    self.add(total, -multiplicity, self._higher(rest, depth + 1))
+        self.higher_logs[place] = tuple(total)
+        return tuple(total)
+
+    def _rational_relation(self, place: HigherPlace, depth: int) -> LocalDivisor:
+        rng = np.random.default_rng([self.prime, *place[0], 7, *place[1]])
+        for _ in range(4000):
+            found = self.curve.substitute(place, rng)
+            if found is None:
+                break
+            _, divisor = found
+            if dict(divisor.places).get(place) != 1:
+                continue
+            rest = [p for p, _ in divisor.places if p != place]
+            lower = all(p in self.higher_logs or len(p[0]) < len(place[0]) for p in rest)
+            if not rest or (depth < 20 and len(place[0]) - 1 > self.curve.genus + 1 and lower):
+                return divisor
+            if all(p in self.higher_logs or self.curve.higher_partner(p) in self.higher_logs for p in rest):
+                return divisor
+        raise Uncertified(self.prime, "no section through a generator's closed point has rational remaining zeros")
+
+
+def picard_group(curve: ReducedHyperelliptic) -> PicardGroup:
+    """The certified group J(F_v) and the logarithms of all its rational points.
+
+    Raises `Uncertified` (with the reason) when completeness cannot be proved, in particular when there is no
+    rational point.  Deterministic: random choices are seeded by v.
+    """
+    if curve.count == 0:
+        raise Uncertified(curve.prime, "no points modulo v")
+    v, g = curve.prime, curve.genus
+    generated = curve.count**2 > (2 * g - 2) ** 2 * v
+    if generated and v >= FAST_FROM.get(g, 100):
+        group = _from_point_sections(curve)
+        if group is not None:
+            return group
+    return _from_exact_sections(curve, generated)
+
+
+# ---- large v: vectorised sections through distinct points ------------------------------------------
+
+
+class _Definitions:
+    """What is known of every orbit: combinations of the base, and definitions to be evaluated later."""
+
+    def __init__(self, curve: ReducedHyperelliptic, base: IntArray) -> None:
+        self.curve = curve
+        self.base = base
+        self.width = 1 + len(base)
+        self.known = np.zeros(curve.orbit_count, dtype=bool)
+        self.combination = np.zeros((curve.orbit_count, self.width), dtype=np.int64)
+        self.short = np.zeros(curve.orbit_count, dtype=bool)
+        for column, orbit in enumerate(base.tolist(), start=1):
+            self.combination[orbit, column] = 1
+        self.known[base] = True
+        self.short[base] = True
+        # rounds of (orbit, sign, unit coefficient, other orbits, their signs), for the logarithms
+        self.rounds: list[tuple[IntArray, IntArray, IntArray, IntArray, IntArray]] = []
+
+
+def _from_point_sections(curve: ReducedHyperelliptic) -> PicardGroup | None:
+    v, g = curve.prime, curve.genus
+    rng = np.random.default_rng([v, g])
+    permutation = rng.permutation(curve.orbit_count)
+    ramified = set(curve.ramified.tolist())
+    size = min(curve.orbit_count, _base_size(curve.orbit_count, g))
+    base = np.array([o for o in permutation.tolist() if o not in ramified][:size], dtype=np.int64)
+    if len(base) < g + 2:
+        return None
+    state = _Definitions(curve, base)
+    lower = order_lower_bound(v, g, curve.count)
+    closing: list[IntArray] = []
+    group: FiniteQuotient | None = None
+    sections = 0
+    for attempt in range(40):
+        pool = np.flatnonzero(state.known[curve.orbit][: curve.affine_count])
+        count = _batch_size(curve, state, attempt)
+        choice = pool[rng.integers(0, len(pool), (count, g + 2))]
+        choice = choice[curve.usable(choice)]
+        rest = curve.residuals(choice)
+        split = rest[:, 0] >= 0
+        divisors = np.concatenate([choice[split], rest[split]], axis=1)
+        sections += len(divisors)
+        closing.extend(_use(curve, state, divisors, g + 2))
+        if group is None:
+            group = _close(curve, state, closing, lower)
+        if group is not None and state.known.all():
+            break
+    if group is None or not state.known.all():
+        return None
+    return _finish(curve, state, group, sections)
+
+
+def _base_size(orbits: int, genus: int) -> int:
+    return max(genus + 4, int(1.1 * orbits**0.5) + 2 + 4 * (genus - 2))
+
+
+def _batch_size(curve: ReducedHyperelliptic, state: _Definitions, attempt: int) -> int:
+    base = 220 if curve.genus == 2 else 1500
+    return int(base + (6 if curve.genus == 2 else 20) * curve.orbit_count)
+
+
+def _use(curve: ReducedHyperelliptic, state: _Definitions, divisors: IntArray, chosen: int) -> list[IntArray]:
+    """Define unknown orbits from sections with one unknown zero; return closing relations among short ones."""
+    orbit, sign, fibre = curve.orbit[divisors], curve.sign[divisors], curve.fibre[divisors]
+    unknown = ~state.known[orbit]
+    missing = unknown.sum(axis=1)
+    units = curve.section_units - fibre.sum(axis=1)
+    single = np.flatnonzero(missing == 1)
+    if len(single):
+        column = unknown[single].argmax(axis=1)
+        target = orbit[single, column]
+        order = np.lexsort((np.where(state.short[orbit[single]].sum(axis=1) >= chosen, 0, 1), target))
+        firsts = order[np.unique(target[order], return_index=True)[1]]
+        rows, column, target = single[firsts], column[firsts], target[firsts]
+        others = np.ones((len(rows), divisors.shape[1]), dtype=bool)
+        others[np.arange(len(rows)), column] = False
+        other_orbit = orbit[rows][others].reshape(len(rows), -1)
+        other_sign = sign[rows][others].reshape(len(rows), -1)
+        own_sign = sign[rows, column]
+        state.rounds.append((target, own_sign, units[rows], other_orbit, other_sign))
+        short = state.short[other_orbit].all(axis=1)
+        if short.any() and len(state.rounds) <= 2:
+            s = np.flatnonzero(short)
+            combination = np.zeros((len(s), state.width), dtype=np.int64)
+            combination[:, 0] = units[rows[s]]
+            for k in range(other_orbit.shape[1]):
+                combination -= other_sign[s, k, None] * state.combination[other_orbit[s, k]]
+            state.combination[target[s]] = own_sign[s, None] * combination
+            if len(state.rounds) == 1:
+                state.short[target[s]] = True
+        state.known[target] = True
+    usable = np.flatnonzero((missing <= 1) & state.short[orbit].all(axis=1))
+    if not len(usable):
+        return []
+    relation = np.zeros((len(usable), state.width), dtype=np.int64)
+    relation[:, 0] = -units[usable]
+    for k in range(divisors.shape[1]):
+        relation += sign[usable, k, None] * state.combination[orbit[usable, k]]
+    relation = relation[relation.any(axis=1)]
+    return list(relation)
+
+
+def _close(
+    curve: ReducedHyperelliptic, state: _Definitions, closing: list[IntArray], lower: int
+) -> FiniteQuotient | None:
+    """Pic / <P0> from the closing relations, or None while their index is not yet certainly #J(F_v)."""
+    n = state.width - 1
+    rows = sorted((tuple(row.tolist()) for row in closing), key=lambda r: (sum(map(abs, r)), r))
+    rows = list(dict.fromkeys(rows))
+    for orbit in curve.ramified.tolist():
+        if state.short[orbit]:
+            row = [2 * int(c) for c in state.combination[orbit]]
+            row[0] -= 1
+            rows.insert(0, tuple(row))
+    # P0 is the first base point: its column is dropped
+    reduced = [row[:1] + row[2:] for row in rows]
+    for take in (n + 6, n + 16, n + 40, len(reduced)):
+        if len(reduced) < n + 3:
+            return None
+        quotient = quotient_by(n, reduced[: min(take, len(reduced))])
+        if quotient is not None and quotient.order < 2 * lower:
+            if quotient.order < lower:
+                raise InternalError(f"v = {curve.prime}: index {quotient.order} below the Weil bound {lower}")
+            return quotient
+        if take >= len(reduced):
+            break
+    return None
+
+
+def _finish(curve: ReducedHyperelliptic, state: _Definitions, group: FiniteQuotient, sections: int) -> PicardGroup:
+    invariants = group.invariants
+    moduli = np.array(invariants, dtype=np.int64)
+    logs = np.zeros((curve.orbit_count, len(invariants)), dtype=np.int64)
+    # columns: U, then the base without its first point, which is P0
+    unit = group.coordinates[0]
+    for k, orbit in enumerate(state.base.tolist()[1:], start=1):
+        logs[orbit] = group.coordinates[k]
+    unit_row = np.array(unit, dtype=np.int64)
+    for target, own_sign, units, others, signs in state.rounds:
+        value = units[:, None] * unit_row
+        for k in range(others.shape[1]):
+            value = value - signs[:, k, None] * logs[others[:, k]]
+        logs[target] = (own_sign[:, None] * value) % moduli
+    point_logs = (curve.sign[:, None] * logs[curve.orbit] + curve.fibre[:, None] * unit_row) % moduli
+    return PicardGroup(
+        curve, invariants, group.order, point_logs, unit,
+        "rational points generate (N > (2g-2) sqrt v); index below twice the Weil bound", sections_used=sections,
+    )
+
+
+# ---- small v: exact divisors of sections, contact orders and places of higher degree ----------------
+
+
+def _from_exact_sections(curve: ReducedHyperelliptic, generated: bool) -> PicardGroup:
+    v, g = curve.prime, curve.genus
+    counts = [curve.count]
+    higher_degree = 1
+    reason = "rational points generate (N > (2g-2) sqrt v)"
+    if not generated:
+        for degree in (2, 3):
+            if v**degree > 2500:
+                break
+            count = extension_count(curve, degree)
+            if count * count > (2 * g - 2) ** 2 * v**degree:
+                higher_degree = degree
+                reason = f"places of degree dividing {degree} generate (N_{degree} > (2g-2) v^({degree}/2))"
+                break
+        else:
+            raise Uncertified(v, "places of degree at most 3 are not known to generate J(F_v)")
+        if higher_degree == 1:
+            raise Uncertified(v, f"too few points ({curve.count}) to know that they generate J(F_v)")
+    lower, exact = order_lower_bound(v, g, curve.count), False
+    if order_upper_exceeds(v, g, curve.count, 2 * lower):
+        if v**g > EXTENSION_LIMIT:
+            raise Uncertified(v, "the Weil bound is not sharp enough and the extension fields are too large to count")
+        counts += [extension_count(curve, e) for e in range(2, g + 1)]
+        lower, exact = exact_order(curve, counts), True
+    places: list[HigherPlace] = curve.places_of_degree(higher_degree) if higher_degree > 1 else []
+    column = {place: 1 + curve.orbit_count + i for i, place in enumerate(places)}
+    width = 1 + curve.orbit_count + len(places)
+    base_column = 1  # orbit 0 holds P0
+    relations: list[list[int]] = []
+    for orbit in curve.ramified.tolist():
+        row = [0] * width
+        row[0], row[1 + orbit] = -1, 2
+        relations.append(row)
+    for place in places:
+        if curve.higher_partner(place) == place:
+            row = [0] * width
+            row[0], row[column[place]] = -(len(place[0]) - 1), 2
+            relations.append(row)
+    rng = np.random.default_rng([v, g])
+    group: FiniteQuotient | None = None
+    target, tries = width + 10, 0
+    seen: set[tuple[int, ...]] = set()
+    while tries < 60_000:
+        tries += 1
+        c = curve.random_section(rng, extra=0 if tries < 400 else tries % 4)
+        row_or_none = _exact_row(curve, curve.section_divisor(c), column, width)
+        if row_or_none is None or tuple(row_or_none) in seen:
+            continue
+        seen.add(tuple(row_or_none))
+        relations.append(row_or_none)
+        if len(relations) < target:
+            continue
+        group = quotient_by(width - 1, [r[:base_column] + r[base_column + 1 :] for r in relations])
+        if group is not None and group.order < lower:
+            raise InternalError(f"v = {v}: index {group.order} below the bound {lower} for #J")
+        if group is not None and (group.order == lower if exact else group.order < 2 * lower):
+            break
+        group = None
+        target = len(relations) + 10
+    if group is None:
+        raise Uncertified(v, "sections of low degree do not close the relation lattice")
+    logs = [group.coordinates[0]] + [tuple([0] * len(group.invariants))] + list(group.coordinates[1:])
+    moduli = np.array(group.invariants, dtype=np.int64)
+    orbit_logs = np.array(logs[1 : 1 + curve.orbit_count], dtype=np.int64).reshape(curve.orbit_count, len(moduli))
+    unit = np.array(logs[0], dtype=np.int64)
+    point_logs = (curve.sign[:, None] * orbit_logs[curve.orbit] + curve.fibre[:, None] * unit) % moduli
+    result = PicardGroup(
+        curve, group.invariants, group.order, point_logs, logs[0],
+        reason + ("; index equals the order from point counts" if exact else "; index below twice the Weil bound"),
+        sections_used=tries,
+    )
+    for place, position in column.items():
+        result.higher_logs[place] = logs[position]
+    return result
+
+
+def order_upper_exceeds(v: int, genus: int, points: int, bound: int) -> bool:
+    """Can #J(F_v) reach `bound`?  Uses prod (v + 1 - x_i) <= ((v + 1) - mean x)^g (arithmetic-geometric mean)."""
+    total = genus * (v + 1) - (v + 1 - points)
+    return total**genus >= bound * genus**genus
+
+
+def _exact_row(
+    curve: ReducedHyperelliptic, divisor: LocalDivisor, column: dict[HigherPlace, int], width: int
+) -> list[int] | None:
+    row = [0] * width
+    row[0] = -divisor.units
+    for index, multiplicity in divisor.points:
+        row[1 + int(curve.orbit[index])] += multiplicity * int(curve.sign[index])
+        row[0] += multiplicity * int(curve.fibre[index])
+    for place, multiplicity in divisor.places:
+        if place in column:
+            row[column[place]] += multiplicity
+            continue
+        partner = curve.higher_partner(place)
+        if partner not in column:
+            return None
+        row[column[partner]] -= multiplicity
+        row[0] += multiplicity * (len(place[0]) - 1)
+    return row
