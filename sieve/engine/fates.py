@@ -1,0 +1,258 @@
+"""The fate of every candidate: eliminated by which conditions, or alive and why.
+
+A candidate is a label on some classes of a labelled relation.  It is eliminated when no vector of L lies in
+one of its classes and satisfies all of a few conditions; the conditions responsible are kept as few as
+possible.  Nothing is ever dropped without a `Fate` that says why.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Collection, Mapping, Sequence
+from dataclasses import dataclass
+
+from sieve.engine.join import join, match, project, semijoin, semijoin_mask
+from sieve.engine.outlook import sum_of_parts
+from sieve.engine.plan import Reporter, Step, informative, sieve_classes
+from sieve.engine.relation import Relation, coarsen
+from sieve.errors import Inconsistent
+from sieve.exact.primary import Characters
+
+Exponents = tuple[tuple[int, int], ...]
+
+
+@dataclass(frozen=True)
+class Use:
+    """One condition of an elimination: its name, the exponents (l, e) it was coarsened to, join or
+    semijoin."""
+
+    name: str
+    exponents: Exponents
+    kind: str
+
+
+@dataclass(frozen=True)
+class Fate:
+    """What became of one candidate.
+
+    Fields: `condition`, the candidate relation; `label`; `kind`:
+      "image": no class of the candidate lies in the image of L (no other condition is needed);
+      "single": one condition excludes all its classes;
+      "several": the conditions together exclude them (`uses`, joined in this order, end with no class);
+      "shared": open, and it will stay so with these conditions, since in the part of the group that they see
+      it has a
+        class in common with the labels `same_as`, which are rational points;
+      "unseen": open, since no condition sees any part of its group;
+      "open": open, `classes` classes are left in a quotient of order `index` after the conditions in `uses`.
+    `exponents`: the part of the candidate's group that the conditions see, as pairs (l, e).
+    """
+
+    condition: str
+    label: str
+    kind: str
+    uses: tuple[Use, ...] = ()
+    same_as: tuple[str, ...] = ()
+    classes: int = 0
+    index: int = 1
+    exponents: Exponents = ()
+
+    @property
+    def eliminated(self) -> bool:
+        """Whether the candidate is proved not to be rational (given that the conditions hold)."""
+        return self.kind in ("image", "single", "several")
+
+    @property
+    def conditions(self) -> tuple[str, ...]:
+        """The names of the conditions in `uses`, in order, without repetition."""
+        return tuple(dict.fromkeys(use.name for use in self.uses))
+
+
+def visible_view(candidates: Relation, pool: Sequence[Relation]) -> Relation:
+    """The candidates in the part of their group that the conditions see, L/(K + K_pool); loses nothing."""
+    parts: dict[int, Characters] = {}
+    for relation in pool:
+        parts = sum_of_parts(parts, relation)
+    return project(candidates, parts)
+
+
+def replay(start: Relation, uses: Sequence[Use], by_name: Mapping[str, Relation],
+           cap: int) -> Relation | None:
+    """Apply the uses in order; None when a join exceeds the cap.  Stops as soon as no class is left."""
+    state = start
+    for use in uses:
+        if state.count == 0:
+            break
+        condition = coarsen(by_name[use.name], dict(use.exponents))
+        if use.kind == "semijoin":
+            state = semijoin(state, condition)
+        else:
+            found = match(state, condition)
+            if found.size > cap:
+                return None
+            state = join(state, condition, matching=found)
+    return state
+
+
+def shorten(start: Relation, uses: Sequence[Use], by_name: Mapping[str, Relation],
+            cap: int) -> tuple[Use, ...]:
+    """Leave out conditions, the latest first, as long as the start still dies; the uses must kill it to begin
+    with."""
+    kept = list(uses)
+    for cut in range(1, len(kept) + 1):
+        end = replay(start, kept[:cut], by_name, cap)
+        if end is not None and end.count == 0:
+            kept = kept[:cut]
+            break
+    for name in reversed(tuple(dict.fromkeys(use.name for use in kept))):
+        rest = [use for use in kept if use.name != name]
+        for attempt in (rest, [Use(use.name, use.exponents, "join") for use in rest]):
+            end = replay(start, attempt, by_name, cap)
+            if end is not None and end.count == 0:
+                kept = attempt
+                break
+    return tuple(kept)
+
+
+def _uses(steps: Sequence[Step]) -> tuple[Use, ...]:
+    return tuple(Use(step.name, step.exponents, step.kind) for step in steps)
+
+
+def _full(relation: Relation) -> Exponents:
+    return tuple(sorted(relation.exponents.items()))
+
+
+def _single_kills(view: Relation, wanted: Collection[str], pool: Sequence[Relation]) -> dict[str, str]:
+    """For labels that one condition alone excludes the name of such a condition; few names overall (greedy
+    cover)."""
+    kills: dict[str, set[str]] = {}
+    for condition in pool:
+        mask = semijoin_mask(view, condition)
+        if not mask.all():
+            dead = set(wanted).difference(view.select(mask).labels)
+            if dead:
+                kills[condition.name] = dead
+    chosen: dict[str, str] = {}
+    while kills:
+        name = min(kills, key=lambda k: (-len(kills[k]), k))
+        for label in kills[name]:
+            chosen[label] = name
+        gone = set(kills.pop(name))
+        kills = {k: left for k, dead in kills.items() if (left := dead - gone)}
+    return chosen
+
+
+def decide(candidates: Sequence[Relation], auxiliary: Sequence[Relation],
+           rational: Collection[tuple[str, str]] = (), *, cap: int = 100_000, max_joins: int = 16,
+           width: int = 12, report: Reporter | None = None) -> list[Fate]:
+    """Decide every candidate as far as the conditions go.
+
+    Arguments: labelled relations with distinct names (one for each Chabauty prime, or several where
+    precisions differ); the conditions at auxiliary primes, names distinct from all others; pairs (relation
+    name, label) of the candidates known to be rational; limits and the reporter as in `sieve_classes`. A
+    candidate relation that is `complete` also serves as a condition for the others.  It must then have a
+    class for every rational point of X. Returns: one fate for each label that is not known to be rational, by
+    relation in the given order, then by label. Raises: Inconsistent (witness = the label) when a candidate
+    known to be rational is excluded.
+    """
+    fates: list[Fate] = []
+    for relation in candidates:
+        others = [r.unlabelled() for r in candidates if r is not relation and r.complete]
+        pool = informative([*auxiliary, *others])
+        known = {label for name, label in rational if name == relation.name}
+        fates.extend(_decide_one(relation, pool, known, cap, max_joins, width, report))
+    return fates
+
+
+def _decide_one(relation: Relation, pool: Sequence[Relation], known: set[str], cap: int, max_joins: int,
+                width: int, report: Reporter | None) -> list[Fate]:
+    name = relation.name
+    by_name = {r.name: r for r in pool}
+    for label in sorted(known.intersection(relation.outside)):
+        raise Inconsistent(f"{name}: the rational candidate {label} is not in the image of the group", label)
+    found = {label: Fate(name, label, "image") for label in relation.outside}
+    view = visible_view(relation, pool)
+    seen = _full(view)
+    labels = [label for label in relation.labels if label not in known]
+    if not view.parts:
+        for label in labels:
+            found[label] = Fate(name, label, "unseen", classes=1)
+        return [found[label] for label in sorted(found)]
+
+    known_view = view.with_labels(known)
+    for condition in pool:
+        _require(name, known, known_view, condition.name, semijoin_mask(known_view, condition))
+    shared = _shared(view, known)
+    for label in labels:
+        if label in shared:
+            found[label] = Fate(name, label, "shared", same_as=shared[label], classes=1, index=view.index,
+                                exponents=seen)
+
+    todo = [label for label in labels if label not in found]
+    for label, killer in _single_kills(view.with_labels(todo), todo, pool).items():
+        use = Use(killer, _full(by_name[killer]), "semijoin")
+        found[label] = Fate(name, label, "single", (use,), exponents=seen)
+
+    todo = [label for label in todo if label not in found]
+    _together(view, known_view, known, todo, pool, by_name, found, cap, max_joins, width, report)
+    for label in [label for label in todo if label not in found]:
+        start = view.with_labels([label])
+        end = sieve_classes(pool, start, cap=cap, max_joins=max_joins, width=width, comfort=None,
+                            report=report)
+        uses = _uses(end.plan.steps)
+        if end.relation.count == 0:
+            found[label] = _several(view, label, uses, by_name, cap)
+        else:
+            found[label] = Fate(name, label, "open", uses, classes=end.relation.count,
+                                index=end.relation.index, exponents=seen)
+    return [found[label] for label in sorted(found)]
+
+
+def _together(view: Relation, known_view: Relation, known: set[str], todo: Sequence[str],
+              pool: Sequence[Relation], by_name: Mapping[str, Relation], found: dict[str, Fate], cap: int,
+              max_joins: int, width: int, report: Reporter | None) -> None:
+    """Sieve all undecided labels at once; labels that die are entered in `found`."""
+    if not todo:
+        return
+    start = view.with_labels(todo)
+    end = sieve_classes(pool, start, cap=cap, max_joins=max_joins, width=width, comfort=None, report=report)
+    uses = _uses(end.plan.steps)
+    # the rational candidates go the same way, as a check on the data
+    state = known_view
+    for use in uses:
+        following = replay(state, [use], by_name, cap)
+        if following is None:
+            break
+        missing = known.intersection(known_view.labels).difference(following.labels)
+        for label in sorted(missing):
+            raise Inconsistent(f"{view.name}: the rational candidate {label} is excluded by "
+                               f"{', '.join(dict.fromkeys(u.name for u in uses))}", label)
+        state = following
+    alive = set(end.relation.labels)
+    for label in todo:
+        if label not in alive:
+            found[label] = _several(view, label, uses, by_name, cap)
+
+
+def _several(view: Relation, label: str, uses: Sequence[Use], by_name: Mapping[str, Relation],
+             cap: int) -> Fate:
+    short = shorten(view.with_labels([label]), uses, by_name, cap)
+    kind = "single" if len({use.name for use in short}) == 1 else "several"
+    return Fate(view.name, label, kind, short, exponents=_full(view))
+
+
+def _require(name: str, known: set[str], view: Relation, condition: str, mask: object) -> None:
+    """Every rational candidate must keep a class under a condition."""
+    kept = set(view.select(mask).labels)  # type: ignore[arg-type]
+    for label in sorted(known.intersection(view.labels) - kept):
+        raise Inconsistent(f"{name}: the rational candidate {label} is excluded by {condition}", label)
+
+
+def _shared(view: Relation, known: set[str]) -> dict[str, tuple[str, ...]]:
+    """For labels with a class in common with rational candidates these candidates."""
+    out: dict[str, set[str]] = {}
+    for labels in view.label_sets:
+        rational = known.intersection(labels)
+        if rational:
+            for label in labels:
+                if label not in known:
+                    out.setdefault(label, set()).update(rational)
+    return {label: tuple(sorted(names)) for label, names in out.items()}

@@ -1,0 +1,200 @@
+"""Which condition to join next: expected sizes with one step of foresight.
+
+The state is a relation (K, W).  A condition c with N allowed classes multiplies |W| by about N / [L : K +
+K_c], and afterwards every condition that is still waiting can be semijoined and lets about the fraction 1 -
+exp(-N' / [L : K' + K_c']) of the classes pass (N' classes thrown at random into the common quotient).  The
+planner takes the condition for which the product of all these factors is smallest, with a premium on new
+parts of the quotient.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Collection, Mapping, Sequence
+from dataclasses import dataclass
+from math import exp, inf, log, log1p
+
+from sieve.engine.join import match, project
+from sieve.engine.relation import Relation, coarsen
+from sieve.exact.primary import Characters, adapt, intersection_length
+
+#: worth of the part of a new condition that the state has not met yet, as a share of its logarithm: a
+#: large quotient lets more of the waiting conditions interact (on curves of rank 2, 3 and 6, 0.3 to 0.7
+#: is much better than 0)
+FRESH = 0.4
+
+Parts = Mapping[int, Characters]
+
+
+def sum_of_parts(parts: Parts, relation: Relation) -> dict[int, Characters]:
+    """The characters of K cap K_c by prime, for K given by its characters."""
+    out = dict(parts)
+    for part in relation.parts:
+        old = out.get(part.prime)
+        out[part.prime] = part if old is None else adapt(
+            part.prime, old.rows + part.rows, old.exponents + part.exponents).basis
+    return out
+
+
+def visible_parts(relations: Sequence[Relation]) -> list[Relation]:
+    """Project every relation to what at least one of the others can see: L/(K_c + K'), K' the meet of the
+    others.
+
+    Loses nothing: whether a vector satisfies all of the others and lies in a given class of c depends on that
+    class modulo K' only.  Cuts off, say, a prime factor of one group order that no other shares.
+    """
+    primes = sorted({ell for r in relations for ell in r.by_prime})
+    keep: list[dict[int, Characters]] = [{} for _ in relations]
+    for ell in primes:
+        holders = [(i, r.by_prime[ell]) for i, r in enumerate(relations) if ell in r.by_prime]
+        if len(holders) < 2:
+            continue
+        before: list[Characters] = [Characters(ell, (), ())]
+        after: list[Characters] = [Characters(ell, (), ())]
+        for _, part in holders:
+            before.append(_plus(before[-1], part))
+        for _, part in reversed(holders):
+            after.append(_plus(after[-1], part))
+        for k, (i, _) in enumerate(holders):
+            others = _plus(before[k], after[len(holders) - 1 - k])
+            if others.rows:
+                keep[i][ell] = others
+    return [project(r, others) for r, others in zip(relations, keep, strict=True)]
+
+
+def _plus(a: Characters, b: Characters) -> Characters:
+    return adapt(a.prime, a.rows + b.rows, a.exponents + b.exponents).basis
+
+
+def log_pass(count: int, log_common: float) -> float:
+    """log of the fraction of classes that a semijoin is expected to let pass."""
+    if count == 0:
+        return -inf
+    if log_common <= 0:
+        return 0.0
+    load = count * exp(-log_common)
+    return log1p(-exp(-load)) if load < 30 else 0.0
+
+
+class Outlook:
+    """What the waiting conditions can do for a state: common quotients and expected shrinking."""
+
+    def __init__(self, pool: Sequence[Relation], parts: Parts) -> None:
+        self.pool = pool
+        self.parts = dict(parts)
+        # for each condition and each of its primes the length of the common part
+        self.meets = [{part.prime: self._length(part, self.parts.get(part.prime)) for part in r.parts}
+                      for r in pool]
+        self.common = [self.log_order(meets) for meets in self.meets]
+
+    @staticmethod
+    def _length(part: Characters, state: Characters | None) -> int:
+        if state is None or not state.rows:
+            return 0
+        if len(state.rows) == len(state.rows[0]) and min(state.exponents) >= max(part.exponents):
+            return part.length
+        return intersection_length(part, state)
+
+    @staticmethod
+    def log_order(meets: Mapping[int, int]) -> float:
+        """log of the product of the l^length."""
+        return sum(length * log(ell) for ell, length in meets.items())
+
+    def absorbed(self, place: int) -> bool:
+        """Whether the condition has nothing beyond the quotient of the state: a semijoin says all it can
+        say."""
+        return all(part.length == self.meets[place][part.prime] for part in self.pool[place].parts)
+
+    def after(self, option: Relation, used: Collection[str]) -> float:
+        """log of the fraction expected to survive the waiting conditions once `option` has been joined."""
+        parts = sum_of_parts(self.parts, option)
+        changed = [ell for ell in option.by_prime if parts[ell] != self.parts.get(ell)]
+        total = 0.0
+        for place, waiting in enumerate(self.pool):
+            if waiting.name in used or waiting.name == option.name:
+                continue
+            common = self.common[place]
+            for ell in changed:
+                part = waiting.by_prime.get(ell)
+                if part is not None:
+                    more = self._length(part, parts[ell]) - self.meets[place][ell]
+                    common += more * log(ell)
+            total += log_pass(waiting.count, common)
+        return total
+
+
+def _variants(relation: Relation, state_primes: Collection[int]) -> list[Relation]:
+    """The condition and its coarser forms by leaving out primes; each still meets a prime of the state."""
+    out = [relation]
+    primes = sorted(relation.by_prime)
+    if 1 < len(primes) <= 4:
+        for mask in range(1, 2 ** len(primes) - 1):
+            chosen = [ell for k, ell in enumerate(primes) if mask >> k & 1]
+            if any(ell in state_primes for ell in chosen):
+                out.append(coarsen(relation, {ell: relation.exponents[ell] for ell in chosen}))
+    return out
+
+
+@dataclass(frozen=True, eq=False)
+class Choice:
+    """A proposed join: the condition (possibly coarser), its expected and its found size, its score (small is
+    good)."""
+
+    relation: Relation
+    expected: float
+    size: float
+    score: float
+
+    @property
+    def key(self) -> tuple[float, float, str, int]:
+        """What choices are compared by."""
+        return (self.score, self.size, self.relation.name, -self.relation.index)
+
+
+def choose(outlook: Outlook, size: float, used: Collection[str], width: int,
+           exact: Relation | None = None, cap: float = inf) -> Choice | None:
+    """The best next join, or None when no waiting condition that interacts with the state fits below the cap.
+
+    Arguments: the outlook of the state; its number of classes; names not to be used; how many options to look
+    at closely; the state itself when exact sizes are wanted; the largest size allowed. Ties are broken by
+    size, name and index.
+    """
+    rough: list[tuple[float, str, int, float, Relation]] = []
+    for place, relation in enumerate(outlook.pool):
+        if relation.name in used or outlook.common[place] <= 0:
+            continue
+        meets = outlook.meets[place]
+        for number, option in enumerate(_variants(relation, outlook.parts)):
+            common = Outlook.log_order({ell: meets[ell] for ell in option.by_prime})
+            if common <= 0 or all(part.length == meets[part.prime] for part in option.parts):
+                continue
+            growth = log(max(option.count, 1)) - common
+            gain = log(option.index) - log(max(option.count, 1))
+            if log(max(size, 1e-300)) + growth <= log(cap) + 1:
+                rough.append((growth - gain / 2, option.name, number, common, option))
+    rough.sort(key=lambda t: t[:3])
+    best: Choice | None = None
+    for _, _, _, common, option in rough[:width]:
+        expected = size * option.count * exp(-common)
+        found = expected if exact is None else float(match(exact, option).size)
+        if found > cap:
+            continue
+        score = (log(found) if found > 0 else -inf) + outlook.after(option, used)
+        score -= FRESH * (log(option.index) - common)
+        if best is None or (score, found, option.name, -option.index) < best.key:
+            best = Choice(option, expected, found, score)
+    return best
+
+
+def choose_start(pool: Sequence[Relation], cap: float = inf) -> Relation | None:
+    """The condition to begin with, by the same measure as `choose`; None if all of them exceed the cap."""
+    best: tuple[float, str] | None = None
+    chosen = None
+    outlook = Outlook(pool, {})
+    for relation in pool:
+        if relation.count > cap:
+            continue
+        score = (log(relation.count) if relation.count else -inf) + outlook.after(relation, ())
+        score -= FRESH * log(relation.index)
+        if best is None or (score, relation.name) < best:
+            best, chosen = (score, relation.name), relation
+    return chosen
