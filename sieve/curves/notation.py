@@ -26,7 +26,7 @@ MAX_DEPTH = 50
 """Nested parentheses."""
 MAX_EXPONENT = 1000
 """Absolute value of an exponent, of a polynomial or of a p-adic power."""
-MAX_WORK = 2_000_000
+MAX_WORK = 300_000
 """Products of terms while one text is expanded."""
 MAX_TERMS = 4 * MAX_EXPONENT
 """Terms of one p-adic expansion."""
@@ -39,7 +39,9 @@ Entry = TypeVar("Entry")
 _DIGITS = "0123456789"
 _LETTERS = "abcdefghijklmnopqrstuvwxyzABCDEFGHIJKLMNOPQRSTUVWXYZ_"
 _SYMBOLS = "+-*/^()=:,"
-_LOOKALIKES = {"−": "-", "–": "-", "·": "*", "×": "*", "²": "^2", "³": "^3", ".": "a fraction such as 1/2"}
+_LOOKALIKES = {
+    "−": "'-'", "–": "'-'", "·": "'*'", "×": "'*'", "²": "'^2'", "³": "'^3'", ".": "a fraction such as 1/2",
+}  # fmt: skip
 _OPERAND = "a number, a variable or '('"
 
 
@@ -51,6 +53,16 @@ def quote(text: str, limit: int = 40) -> str:
     """
     shown = text if len(text) <= limit else text[:limit] + "..."
     return "'" + "".join(c if c.isprintable() else repr(c)[1:-1] for c in shown) + "'"
+
+
+def alternatives(names: Sequence[str]) -> str:
+    """Names as a message offers them; at least one.
+
+    >>> print(alternatives(["x", "y", "z"]))
+    'x', 'y' or 'z'
+    """
+    quoted = [quote(name) for name in names]
+    return " or ".join([", ".join(quoted[:-1]), quoted[-1]] if len(quoted) > 1 else quoted)
 
 
 @dataclass(frozen=True)
@@ -224,7 +236,7 @@ class _Parser:
             return {(0,) * len(variables): value} if value else {}
         if token.kind == "name":
             if token.text not in variables:
-                known = " or ".join(variables) if variables else "a number"
+                known = alternatives(variables) if variables else "a number"
                 self.refuse(token, f"the unknown name {quote(token.text)}", known)
             place = variables.index(token.text)
             return {tuple(int(i == place) for i in range(len(variables))): Fraction(1)}

@@ -208,10 +208,10 @@ def _form(coefficients: tuple[int, ...], degree: int, x: PadicNumber, z: PadicNu
 
 def _check_counts(candidate: Candidate, rank: int, torsion_orders: tuple[int, ...]) -> None:
     if len(candidate.coefficients) != rank:
-        found = f"{len(candidate.coefficients)} coefficients"
+        found = f"a list of {len(candidate.coefficients)}"
         raise candidate.origin.at("coefficients", ".").error(found, f"{rank}, one for each generator")
     if len(candidate.torsion) != len(torsion_orders):
-        found = f"{len(candidate.torsion)} torsion coefficients"
+        found = f"a list of {len(candidate.torsion)}"
         expected = f"{len(torsion_orders)}, one for each torsion generator"
         raise candidate.origin.at("torsion", ".").error(found, expected)
 

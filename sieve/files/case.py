@@ -302,8 +302,9 @@ def _generators_from(jacobian: Table, rank: int, count: int) -> str | None:
     place = jacobian.at("generators")
     if not jacobian.has("generators_from"):
         if count != rank:
-            found = f"{count} generators for rank {rank}" if count else f"no generators for rank {rank}"
-            raise place.error(found, f"{rank} generators" + ("" if count else ", or generators_from"))
+            found = f"{count or 'no'} generator{'s' * (count != 1)} for rank {rank}"
+            expected = f"{rank} of them" + ("" if count else ", or generators_from")
+            raise place.error(found, expected)
         return None
     source = jacobian.text("generators_from", "'known_points'")
     if source != "known_points":

@@ -14,8 +14,9 @@ from dataclasses import dataclass
 from difflib import get_close_matches
 from pathlib import Path
 from typing import Any, NoReturn
+from unicodedata import category
 
-from sieve.curves.notation import Origin, quote
+from sieve.curves.notation import Origin, alternatives, quote
 from sieve.errors import InputError
 
 MAX_BYTES = 32 * 2**20
@@ -74,8 +75,7 @@ class Table:
         for key in self.data:
             if key not in keys:
                 near = get_close_matches(key, keys, 1, 0.6)
-                expected = f"{quote(near[0])}" if near else "one of " + ", ".join(sorted(keys))
-                raise self.origin.error(f"the unknown key {quote(key)}", expected)
+                raise self.origin.error(f"the unknown key {quote(key)}", alternatives(near or sorted(keys)))
 
     def at(self, key: str) -> Origin:
         """The place of a key."""
@@ -100,6 +100,10 @@ class Table:
             raise self.at(key).error(f"a text of {len(value)} characters", f"at most {MAX_TEXT}")
         if not blank and not value.strip():
             raise self.at(key).error("a blank text", expected)
+        for c in value:
+            # such characters cannot be printed, or even written to a file
+            if category(c) in ("Cc", "Cs") and c not in "\t\n\r":
+                raise self.at(key).error(f"the character {quote(c)}", f"{expected}, of printable characters")
         return value
 
     def notation(self, key: str, expected: str) -> tuple[str, Origin]:
@@ -215,7 +219,7 @@ def _parse_toml(text: str, origin: Origin) -> Any:
         message, _, place = message.rpartition(" (at ")
         if not message:
             message, place = place, ""
-        raise origin.at(place.rstrip(")")).error(quote(message, 120), "TOML") from None
+        raise origin.at(place.rstrip(")")).error(quote(message, 120)[1:-1], "valid TOML") from None
 
 
 @dataclass(frozen=True)
@@ -250,4 +254,4 @@ def _parse_json(text: str, origin: Origin) -> Any:
         )
     except json.JSONDecodeError as error:
         place = f"line {error.lineno}, column {error.colno}"
-        raise origin.at(place).error(quote(error.msg, 120), "JSON") from None
+        raise origin.at(place).error(quote(error.msg, 120)[1:-1], "valid JSON") from None

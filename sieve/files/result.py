@@ -51,7 +51,7 @@ class Verdict:
 
 @dataclass(frozen=True)
 class Premise:
-    """A statement the verdicts rest on: "assumed" with its `source`, or "proved" with `primes` that prove it."""
+    """What the verdicts rest on: "assumed" with its `source`, or "proved" with the `primes` that prove it."""
 
     id: str
     status: Literal["assumed", "proved"]
