@@ -1,10 +1,10 @@
-"""The invented candidate list of the demo: the known points and spurious p-adic points, in the format of a real list.
+"""The invented candidate list of the demo: the known points and spurious p-adic points.
 
     python scripts/demo_candidates.py [PRIME]      writes data/demo/candidates.json
 
-Nothing here comes from a Chabauty computation: every spurious point is a random x (or 1/x) in Z_p with y lifted by
-Newton's iteration, some of them chosen to agree with a known point to one digit.  The seed is fixed, so the file is
-the same on every machine.  Standard library alone.
+Nothing here comes from a Chabauty computation: every spurious point is a random x (or 1/x) in Z_p with y
+lifted by Newton's iteration, some of them chosen to agree with a known point to one digit.  The seed is
+fixed, so the file is the same on every machine.  Standard library alone.
 """
 
 from __future__ import annotations
@@ -110,8 +110,9 @@ def document(p: int) -> dict[str, object]:
         "precision": PRECISION,
         "complete": True,
         "source": (
-            "INVENTED for the demonstration by scripts/demo_candidates.py, not the output of a Chabauty computation: "
-            f"the {len(KNOWN)} known points and {len(points) - len(KNOWN)} random {p}-adic points (seed {SEED})"
+            "INVENTED for the demonstration by scripts/demo_candidates.py, not the output of a Chabauty "
+            f"computation: the {len(KNOWN)} known points and {len(points) - len(KNOWN)} random {p}-adic "
+            f"points (seed {SEED})"
         ),
         "candidates": [{"id": f"z{i}", "point": written(*point, p)} for i, point in enumerate(points, 1)],
     }

@@ -5,9 +5,11 @@
 
 For y^2 = x^6 + a x^4 + b x^2 + c the maps (x, y) |-> (x^2, y) and (x, y) |-> (c/x^2, c*y/x^3) go to
     E1: y^2 = u^3 + a u^2 + b u + c        E2: y^2 = u^3 + b u^2 + a*c u + c^2
-and J is isogenous to E1 x E2 over Q.  Each rank is proved twice: by PARI's 2-descent (`ellrank`, lower and upper
-bound equal, the class group of the cubic field certified), and by L(E, 1) = 0 (root number -1) with
-L'(E, 1) != 0 (Gross and Zagier 1986, Kolyvagin 1988; E is modular).  Needs cypari (`pip install -e '.[test]'`).
+and J is isogenous to E1 x E2 over Q.  Each rank is proved twice: by PARI's 2-descent (`ellrank`, lower and
+upper bound equal, the class group of the cubic field certified), and by L(E, 1) = 0 (root number -1) with
+L'(E, 1) != 0 (Gross and Zagier 1986, Kolyvagin 1988; E is modular).
+
+Needs cypari (`pip install -e '.[test]'`).
 """
 
 from __future__ import annotations

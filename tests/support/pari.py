@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from functools import lru_cache
+from functools import cache
 
 from cypari import pari
 
@@ -12,7 +12,7 @@ def _polynomial(c: Sequence[int]) -> str:
     return "+".join(f"({int(a)})*x^{i}" for i, a in enumerate(c)) or "0"
 
 
-@lru_cache(maxsize=None)
+@cache
 def _jacobian_order(v: int, f: tuple[int, ...], h: tuple[int, ...]) -> int:
     return int(pari(f"subst(hyperellcharpoly(Mod(1,{v})*[{_polynomial(f)}, {_polynomial(h)}]), 'x, 1)"))
 

@@ -17,11 +17,11 @@ from tests.support.cantor import CantorJacobian, Element
 
 
 class SylowSubgroup:
-    """The l-part of J(F_v), of order l^k: independent generators `basis` of orders l^`exponents` (falling)."""
+    """The ell-part of J(F_v): independent generators `basis` of orders ell^`exponents`, falling."""
 
-    def __init__(self, J: CantorJacobian, order: int, l: int, k: int, rng: random.Random) -> None:
-        self.J, self.l, self.k = J, l, k
-        self.cofactor = order // l**k
+    def __init__(self, J: CantorJacobian, order: int, ell: int, k: int, rng: random.Random) -> None:
+        self.J, self.ell, self.k = J, ell, k
+        self.cofactor = order // ell**k
         self.basis: list[Element] = []
         self.exponents: list[int] = []
         self.baby: dict[Element, tuple[int, ...]] = {}
@@ -30,10 +30,10 @@ class SylowSubgroup:
             self.insert(J.multiple(self.cofactor, J.random_prime(rng)))
 
     def exponent(self, x: Element) -> int:
-        """e with l^e the order of x."""
+        """e with ell^e the order of x."""
         e = 0
         while x != self.J.zero:
-            x, e = self.J.multiple(self.l, x), e + 1
+            x, e = self.J.multiple(self.ell, x), e + 1
             if e > self.k:
                 raise ArithmeticError("the order of the group does not kill its elements")
         return e
@@ -50,15 +50,15 @@ class SylowSubgroup:
                 waiting.append((self.exponents.pop(), self.basis.pop()))
                 self.baby = {}
             for i in range(e + 1):
-                logs = self.logarithm(self.J.multiple(self.l**i, x), e - i)
+                logs = self.logarithm(self.J.multiple(self.ell**i, x), e - i)
                 if logs is not None:
                     break
             else:
                 raise ArithmeticError("zero has no logarithm")
-            # The orders of the basis are at least that of x, so l^i divides every entry of logs.
+            # The orders of the basis are at least that of x, so ell^i divides every entry of logs.
             for c, b in zip(logs, self.basis, strict=True):
-                assert c % self.l**i == 0
-                x = self.J.add(x, self.J.multiple(-(c // self.l**i), b))
+                assert c % self.ell**i == 0
+                x = self.J.add(x, self.J.multiple(-(c // self.ell**i), b))
             if i == e:
                 self.basis.append(x)
                 self.exponents.append(e)
@@ -67,24 +67,27 @@ class SylowSubgroup:
                 waiting.append((i, x))
 
     def boxes(self) -> tuple[list[int], list[int]]:
-        """Sizes of the baby and the giant box; position j stands for generator j // 2, low or high digit."""
+        """Numbers of low digits (baby steps) and high digits (giant steps) for each generator."""
         low, high, table, r = [], [], 1, len(self.basis)
-        for j in range(r):
-            room = max(1, isqrt(self.l**r) // table)
-            size = min(self.l, room) if room > 1 else 1
+        for _ in range(r):
+            room = max(1, isqrt(self.ell**r) // table)
+            size = min(self.ell, room) if room > 1 else 1
             table *= size
             low.append(size)
-            high.append(-(-self.l // size))
+            high.append(-(-self.ell // size))
         return low, high
 
     def tables(self) -> None:
         """Fill the baby and giant steps of the socle."""
         J = self.J
-        socle = [J.multiple(self.l ** (e - 1), b) for b, e in zip(self.basis, self.exponents, strict=True)]
+        socle = [J.multiple(self.ell ** (e - 1), b) for b, e in zip(self.basis, self.exponents, strict=True)]
         low, high = self.boxes()
-        self.baby = {x: digits for x, digits in self.span(socle, low)}
+        self.baby = dict(self.span(socle, low))
         strides = [J.multiple(-m, s) for m, s in zip(low, socle, strict=True)]
-        self.giant = [(x, tuple(d * m for d, m in zip(digits, low, strict=True))) for x, digits in self.span(strides, high)]
+        self.giant = [
+            (x, tuple(d * m for d, m in zip(digits, low, strict=True)))
+            for x, digits in self.span(strides, high)
+        ]
 
     def span(self, generators: list[Element], sizes: list[int]) -> Iterator[tuple[Element, tuple[int, ...]]]:
         """All combinations with digits below `sizes`, each by one addition."""
@@ -101,7 +104,7 @@ class SylowSubgroup:
             yield x, digits
 
     def socle_logarithm(self, x: Element) -> tuple[int, ...] | None:
-        """Coordinates modulo l of an element killed by l, or None outside the subgroup."""
+        """Coordinates modulo ell of an element killed by ell, or None outside the subgroup."""
         if x == self.J.zero:
             return (0,) * len(self.basis)
         if not self.basis:
@@ -111,25 +114,25 @@ class SylowSubgroup:
         for step, digits in self.giant:
             low = self.baby.get(self.J.add(x, step) if any(digits) else x)
             if low is not None:
-                return tuple((a + b) % self.l for a, b in zip(low, digits, strict=True))
+                return tuple((a + b) % self.ell for a, b in zip(low, digits, strict=True))
         return None
 
     def logarithm(self, x: Element, e: int | None = None) -> tuple[int, ...] | None:
-        """Coordinates of x (of order l^e) on the basis, or None when x is not in the subgroup so far."""
+        """Coordinates of x (of order ell^e) on the basis, or None when x is not in the subgroup so far."""
         e = self.exponent(x) if e is None else e
         logs = [0] * len(self.basis)
         for top in range(e, 0, -1):
-            digits = self.socle_logarithm(self.J.multiple(self.l ** (top - 1), x))
+            digits = self.socle_logarithm(self.J.multiple(self.ell ** (top - 1), x))
             if digits is None:
                 return None
             for j, d in enumerate(digits):
                 if d:
                     if self.exponents[j] < top:
                         return None
-                    c = d * self.l ** (self.exponents[j] - top)
+                    c = d * self.ell ** (self.exponents[j] - top)
                     logs[j] += c
                     x = self.J.add(x, self.J.multiple(-c, self.basis[j]))
-        return tuple(c % self.l**f for c, f in zip(logs, self.exponents, strict=True))
+        return tuple(c % self.ell**f for c, f in zip(logs, self.exponents, strict=True))
 
 
 class GroupOracle:
@@ -141,8 +144,8 @@ class GroupOracle:
     def __init__(self, J: CantorJacobian, order: int, seed: int = 1) -> None:
         rng = random.Random(seed)
         self.J, self.order = J, order
-        self.parts = [SylowSubgroup(J, order, int(l), int(k), rng) for l, k in fmpz(order).factor()]
-        self.moduli = tuple(part.l**e for part in self.parts for e in part.exponents)
+        self.parts = [SylowSubgroup(J, order, int(ell), int(k), rng) for ell, k in fmpz(order).factor()]
+        self.moduli = tuple(part.ell**e for part in self.parts for e in part.exponents)
         assert prod(self.moduli) == order
 
     def invariants(self) -> list[int]:
@@ -151,7 +154,7 @@ class GroupOracle:
         factors = [1] * length
         for part in self.parts:
             for j, e in enumerate(part.exponents):
-                factors[length - 1 - j] *= part.l**e
+                factors[length - 1 - j] *= part.ell**e
         return factors
 
     def logarithm(self, x: Element) -> tuple[int, ...]:
@@ -161,11 +164,10 @@ class GroupOracle:
             one = part.logarithm(self.J.multiple(part.cofactor, x))
             assert one is not None
             for c, e in zip(one, part.exponents, strict=True):
-                logs.append(c * pow(part.cofactor, -1, part.l**e) % part.l**e)
+                logs.append(c * pow(part.cofactor, -1, part.ell**e) % part.ell**e)
         return tuple(logs)
 
     def combination(self, logs: Sequence[Sequence[int]], coefficients: Sequence[int]) -> tuple[int, ...]:
         """sum of coefficients[i] * logs[i], reduced."""
-        return tuple(
-            sum(c * row[j] for c, row in zip(coefficients, logs, strict=True)) % m for j, m in enumerate(self.moduli)
-        )
+        rows = list(zip(coefficients, logs, strict=True))
+        return tuple(sum(c * row[j] for c, row in rows) % m for j, m in enumerate(self.moduli))
