@@ -17,7 +17,6 @@ from typing import Any, NoReturn
 from unicodedata import category
 
 from sieve.curves.notation import Origin, alternatives, quote
-from sieve.errors import InputError
 
 MAX_BYTES = 32 * 2**20
 """Size of a file."""
@@ -159,17 +158,15 @@ def read_bytes(path: str | Path) -> bytes:
     file = Path(path)
     origin = Origin(str(path))
     try:
-        if not file.exists():
-            raise origin.error("no such file", "a file")
-        if not file.is_file():
-            raise origin.error("not a regular file", "a file")
-        with file.open("rb") as stream:
-            data = stream.read(MAX_BYTES + 1)
+        present, regular, data = file.exists(), file.is_file(), b""
+        if regular:
+            with file.open("rb") as stream:
+                data = stream.read(MAX_BYTES + 1)
     except (OSError, ValueError) as error:
-        if isinstance(error, InputError):
-            raise
         reason = getattr(error, "strerror", None) or str(error)
         raise origin.error(f"cannot be read ({reason})", "a readable file") from None
+    if not regular:
+        raise origin.error("not a regular file" if present else "no such file", "a file")
     if len(data) > MAX_BYTES:
         raise origin.error("a very large file", f"at most {MAX_BYTES} bytes")
     return data

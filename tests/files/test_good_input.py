@@ -249,6 +249,10 @@ def test_every_kind_of_candidate(tmp_path: Path) -> None:
     curve = curve_of(SEXTIC)
     assert disc_residues(curve, second) == (1, 3, 1) and disc_residues(curve, third) == (1, 1, 0)
     check_candidates(file, curve, 3, (2, 4))
+    with pytest.raises(InputError, match="no point"):
+        model_coordinates(curve, second)
+    with pytest.raises(InputError, match="no disc"):
+        disc_residues(curve, first)
     for rank, torsion in [(2, (2, 4)), (3, (2,)), (3, ())]:
         with pytest.raises(InputError, match="one for each"):
             check_candidates(file, curve, rank, torsion)
