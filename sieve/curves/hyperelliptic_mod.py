@@ -365,7 +365,8 @@ class ReducedHyperelliptic:
 
     def _roots_modulo(self, u: flint.nmod_poly) -> list[tuple[int, ...]]:
         """All w of degree < deg u with w^2 + h w = f modulo the irreducible u."""
-        field = flint.fq_default_ctx(modulus=u) if u.degree() > 1 else flint.fq_default_ctx(self.prime)
+        modulus = flint.fmpz_mod_poly_ctx(self.prime)([int(a) for a in u.coeffs()])
+        field = flint.fq_default_ctx(modulus=modulus) if u.degree() > 1 else flint.fq_default_ctx(self.prime)
         def element(p: flint.nmod_poly) -> flint.fq_default:
             return field([int(a) for a in (p % u).coeffs()])
 

@@ -149,13 +149,27 @@ class _Definitions:
         self.rounds: list[tuple[IntArray, IntArray, IntArray, IntArray, IntArray]] = []
 
 
+    def enlarge(self) -> bool:
+        """Add an orbit that nothing reaches to the base: the base generates a proper subgroup."""
+        missing = np.flatnonzero(~self.known)
+        if not len(missing):
+            return False
+        self.base = np.append(self.base, missing[0])
+        self.width += 1
+        self.combination = np.pad(self.combination, ((0, 0), (0, 1)))
+        self.combination[missing[0], -1] = 1
+        self.known[missing[0]] = self.short[missing[0]] = True
+        return True
+
+
 def _from_point_sections(curve: ReducedHyperelliptic) -> PicardGroup | None:
     v, g = curve.prime, curve.genus
     rng = np.random.default_rng([v, g])
     permutation = rng.permutation(curve.orbit_count)
-    ramified = set(curve.ramified.tolist())
+    # ramified points and those that `usable` never draws would hardly meet any relation
+    unfit = set(curve.ramified.tolist()) | set(curve.orbit[curve.affine_count :].tolist())
     size = min(curve.orbit_count, _base_size(curve.orbit_count, g))
-    base = np.array([o for o in permutation.tolist() if o not in ramified][:size], dtype=np.int64)
+    base = np.array([o for o in permutation.tolist() if o not in unfit][:size], dtype=np.int64)
     if len(base) < g + 2:
         return None
     state = _Definitions(curve, base)
@@ -164,7 +178,9 @@ def _from_point_sections(curve: ReducedHyperelliptic) -> PicardGroup | None:
     group: FiniteQuotient | None = None
     sections = 0
     for attempt in range(40):
-        pool = np.flatnonzero(state.known[curve.orbit][: curve.affine_count])
+        # closing relations need short combinations throughout; unknown points need many known ones
+        wanted = state.short if state.known.all() or attempt % 2 == 0 else state.known
+        pool = np.flatnonzero(wanted[curve.orbit][: curve.affine_count])
         count = _batch_size(curve, state, attempt)
         choice = pool[rng.integers(0, len(pool), (count, g + 2))]
         choice = choice[curve.usable(choice)]
@@ -172,9 +188,16 @@ def _from_point_sections(curve: ReducedHyperelliptic) -> PicardGroup | None:
         split = rest[:, 0] >= 0
         divisors = np.concatenate([choice[split], rest[split]], axis=1)
         sections += len(divisors)
+        rounds = len(state.rounds)
         closing.extend(_use(curve, state, divisors, g + 2))
         if group is None:
             group = _close(curve, state, closing, lower)
+        stalled = attempt > 3 and len(state.rounds) == rounds and not state.known.all()
+        if stalled or (group is not None and group.order < lower):
+            if not state.enlarge():
+                raise InternalError(f"v = {v}: index {group and group.order} below the Weil bound {lower}")
+            closing = [np.append(row, 0) for row in closing]
+            group = None
         if group is not None and state.known.all():
             break
     if group is None or not state.known.all():
@@ -251,8 +274,6 @@ def _close(
             return None
         quotient = quotient_by(n, reduced[: min(take, len(reduced))])
         if quotient is not None and quotient.order < 2 * lower:
-            if quotient.order < lower:
-                raise InternalError(f"v = {curve.prime}: index {quotient.order} below the Weil bound {lower}")
             return quotient
         if take >= len(reduced):
             break
@@ -307,6 +328,20 @@ def _from_exact_sections(curve: ReducedHyperelliptic, generated: bool) -> Picard
             raise Uncertified(v, "the Weil bound is not sharp enough and the extension fields are too large to count")
         counts += [extension_count(curve, e) for e in range(2, g + 1)]
         lower, exact = exact_order(curve, counts), True
+    wanted = [higher_degree] if higher_degree > 1 or v > 40 else [1, 2]
+    for degree in wanted:
+        limit = 60_000 if degree == wanted[-1] else 1_500
+        result = _close_exactly(curve, degree, lower, exact, reason, limit)
+        if result is not None:
+            return result
+    raise Uncertified(v, "sections of low degree do not close the relation lattice")
+
+
+def _close_exactly(
+    curve: ReducedHyperelliptic, higher_degree: int, lower: int, exact: bool, reason: str, limit: int
+) -> PicardGroup | None:
+    """The group on the factor base of all places of degree 1 and `higher_degree`; None after `limit` sections."""
+    v, g = curve.prime, curve.genus
     places: list[HigherPlace] = curve.places_of_degree(higher_degree) if higher_degree > 1 else []
     column = {place: 1 + curve.orbit_count + i for i, place in enumerate(places)}
     width = 1 + curve.orbit_count + len(places)
@@ -323,27 +358,28 @@ def _from_exact_sections(curve: ReducedHyperelliptic, generated: bool) -> Picard
             relations.append(row)
     rng = np.random.default_rng([v, g])
     group: FiniteQuotient | None = None
-    target, tries = width + 10, 0
+    tried_with, tries = 0, 0
     seen: set[tuple[int, ...]] = set()
-    while tries < 60_000:
+    while tries < limit:
         tries += 1
-        c = curve.random_section(rng, extra=0 if tries < 400 else tries % 4)
+        c = curve.random_section(rng, extra=0 if tries < 400 else tries % 5)
         row_or_none = _exact_row(curve, curve.section_divisor(c), column, width)
-        if row_or_none is None or tuple(row_or_none) in seen:
+        if row_or_none is not None and tuple(row_or_none) not in seen:
+            seen.add(tuple(row_or_none))
+            relations.append(row_or_none)
+        fresh = len(relations) - tried_with
+        # where few sections split, look again after a while even with few new relations
+        if len(relations) < width - 1 or fresh < (10 if tries % 400 else 1):
             continue
-        seen.add(tuple(row_or_none))
-        relations.append(row_or_none)
-        if len(relations) < target:
-            continue
+        tried_with = len(relations)
         group = quotient_by(width - 1, [r[:base_column] + r[base_column + 1 :] for r in relations])
         if group is not None and group.order < lower:
             raise InternalError(f"v = {v}: index {group.order} below the bound {lower} for #J")
         if group is not None and (group.order == lower if exact else group.order < 2 * lower):
             break
         group = None
-        target = len(relations) + 10
     if group is None:
-        raise Uncertified(v, "sections of low degree do not close the relation lattice")
+        return None
     logs = [group.coordinates[0]] + [tuple([0] * len(group.invariants))] + list(group.coordinates[1:])
     moduli = np.array(group.invariants, dtype=np.int64)
     orbit_logs = np.array(logs[1 : 1 + curve.orbit_count], dtype=np.int64).reshape(curve.orbit_count, len(moduli))
