@@ -132,6 +132,7 @@ def test_polynomials(text: str, expected: notation.Polynomial) -> None:
         ("__import__('os')", 12, "'''", "a number"),
         ("(" * 200 + "x" + ")" * 200, 51, "51 nested", "at most 50"),
         ("9" * 5000, 1, "5000 digits", "at most 4000"),
+        ("(2^1000)^100/(2^1000)^100", 13, "too large", "20000 bits"),
         ("(9^1000)^1000", 14, "too large", "20000 bits"),
     ],
 )
