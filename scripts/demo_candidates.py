@@ -3,8 +3,8 @@
     python scripts/demo_candidates.py [PRIME]      writes data/demo/candidates.json
 
 Nothing here comes from a Chabauty computation: every spurious point is a random x (or 1/x) in Z_p with y
-lifted by Newton's iteration, some of them chosen to agree with a known point to one digit.  The seed is
-fixed, so the file is the same on every machine.  Standard library alone.
+lifted by Newton's iteration, some of them chosen to agree with a known point to exactly one or two digits.
+The seed is fixed, so the file is the same on every machine.  Standard library alone.
 """
 
 from __future__ import annotations
@@ -23,7 +23,7 @@ KNOWN = [(1, 1, 0), (1, -1, 0)] + [
     for sy in (1, -1)
 ]
 PRECISION = 6
-ANYWHERE, NEAR, AT_INFINITY = 20, 9, 3
+ANYWHERE, ONE_DIGIT, TWO_DIGITS, AT_INFINITY = 18, 8, 3, 3
 SEED = 20
 
 
@@ -66,16 +66,21 @@ def written(x: int, y: int, z: int, p: int) -> str:
     return f"(1 : {expansion(y, p)} : {expansion(z, p)})"
 
 
+def unit(p: int, rng: random.Random) -> int:
+    """A random unit of Z/p^(PRECISION - 2)."""
+    return rng.randrange(p ** (PRECISION - 3)) * p + rng.randrange(1, p)
+
+
 def spurious(p: int, rng: random.Random) -> list[tuple[int, int, int]]:
-    """Random points of X over Z/p^PRECISION, each different from every known point at its second digit."""
+    """Random points of X over Z/p^PRECISION, each different from every known point modulo p^3."""
     modulus = p**PRECISION
     known = [normalised(*point, p) for point in KNOWN]
     found: list[tuple[int, int, int]] = []
 
     def accept(x: int, z: int, y: int) -> bool:
         point = (x, lift(x, z, y, p), z)
-        taken = [tuple(c % p**2 for c in other) for other in known]
-        if tuple(c % p**2 for c in point) in taken or point in found:
+        taken = [tuple(c % p**3 for c in other) for other in known]
+        if tuple(c % p**3 for c in point) in taken or point in found:
             return False
         found.append(point)
         return True
@@ -83,16 +88,15 @@ def spurious(p: int, rng: random.Random) -> list[tuple[int, int, int]]:
     def roots(x: int, z: int) -> list[int]:
         return [y for y in range(1, p) if (y * y - evaluate(x, z, p)) % p == 0]
 
-    for kind, wanted in (("anywhere", ANYWHERE), ("near", NEAR), ("at infinity", AT_INFINITY)):
+    for digits, wanted in ((1, ONE_DIGIT), (2, TWO_DIGITS)):
         target = len(found) + wanted
         while len(found) < target:
-            tail = p * rng.randrange(1, modulus // p)
-            if kind == "near":
-                x, y, z = rng.choice([point for point in known if point[2] == 1])
-                if y % p:
-                    accept((x + tail) % modulus, 1, y % p)
-                continue
-            x, z = (1, tail) if kind == "at infinity" else (rng.randrange(modulus), 1)
+            x, y, z = rng.choice([point for point in known if point[2] == 1 and point[1] % p])
+            accept((x + p**digits * unit(p, rng)) % modulus, 1, y % p)
+    for infinite, wanted in ((False, ANYWHERE), (True, AT_INFINITY)):
+        target = len(found) + wanted
+        while len(found) < target:
+            x, z = (1, p * unit(p, rng)) if infinite else (rng.randrange(modulus), 1)
             signs = roots(x, z)
             if signs:
                 accept(x, z, rng.choice(signs))
@@ -124,7 +128,7 @@ def rendered(p: int) -> str:
 
 
 def main() -> None:
-    p = int(sys.argv[1]) if len(sys.argv) > 1 else 7
+    p = int(sys.argv[1]) if len(sys.argv) > 1 else 5
     (HERE / "candidates.json").write_text(rendered(p), "utf-8")
 
 
