@@ -7,12 +7,12 @@ possible.  Nothing is ever dropped without a `Fate` that says why.
 
 from __future__ import annotations
 
-from collections.abc import Collection, Mapping, Sequence
+from collections.abc import Collection, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
 from sieve.engine.join import join, match, project, semijoin, semijoin_mask
-from sieve.engine.outlook import sum_of_parts
-from sieve.engine.plan import Reporter, Step, informative, sieve_classes
+from sieve.engine.outlook import Outlook, sum_of_parts
+from sieve.engine.plan import Outcome, Reporter, Step, informative, sieve_run
 from sieve.engine.relation import Relation, coarsen
 from sieve.errors import Inconsistent
 from sieve.exact.primary import Characters
@@ -42,7 +42,9 @@ class Fate:
       it has a
         class in common with the labels `same_as`, which are rational points;
       "unseen": open, since no condition sees any part of its group;
-      "open": open, `classes` classes are left in a quotient of order `index` after the conditions in `uses`.
+      "open": open, `classes` classes are left in a quotient of order `index` after the conditions in `uses`;
+        `exhausted` says whether they satisfy all conditions that interact (then only new conditions can
+        help), or whether a limit was reached before all of them were joined.
     `exponents`: the part of the candidate's group that the conditions see, as pairs (l, e).
     """
 
@@ -54,6 +56,7 @@ class Fate:
     classes: int = 0
     index: int = 1
     exponents: Exponents = ()
+    exhausted: bool = True
 
     @property
     def eliminated(self) -> bool:
@@ -94,22 +97,34 @@ def replay(start: Relation, uses: Sequence[Use], by_name: Mapping[str, Relation]
 
 def shorten(start: Relation, uses: Sequence[Use], by_name: Mapping[str, Relation],
             cap: int) -> tuple[Use, ...]:
-    """Leave out conditions, the latest first, as long as the start still dies; the uses must kill it to begin
-    with."""
-    kept = list(uses)
-    for cut in range(1, len(kept) + 1):
-        end = replay(start, kept[:cut], by_name, cap)
-        if end is not None and end.count == 0:
-            kept = kept[:cut]
+    """Leave out uses, the latest first, as long as the start still dies; the uses must kill it to begin with.
+
+    A shorter list may need larger sets on the way: up to four times the largest one of the full list, and
+    `cap`.
+    """
+    states, kept = [start], []
+    for use in uses:
+        state = replay(states[-1], [use], by_name, cap)
+        if state is None:
+            return tuple(uses)
+        kept.append(use)
+        states.append(state)
+        if state.count == 0:
             break
-    for name in reversed(tuple(dict.fromkeys(use.name for use in kept))):
-        rest = [use for use in kept if use.name != name]
-        for attempt in (rest, [Use(use.name, use.exponents, "join") for use in rest]):
-            end = replay(start, attempt, by_name, cap)
-            if end is not None and end.count == 0:
-                kept = attempt
-                break
+    limit = min(cap, 1000 + 4 * max(state.count for state in states))
+    # states[i] is the state after the first i kept uses, which the rounds to come do not touch
+    for i in reversed(range(len(kept) - 1)):
+        end = replay(states[i], kept[i + 1:], by_name, limit)
+        if end is not None and end.count == 0:
+            del kept[i]
     return tuple(kept)
+
+
+def _last(outcomes: Iterator[Outcome]) -> Outcome:
+    """The end of a run."""
+    for outcome in outcomes:
+        end = outcome
+    return end
 
 
 def _uses(steps: Sequence[Step]) -> tuple[Use, ...]:
@@ -195,14 +210,14 @@ def _decide_one(relation: Relation, pool: Sequence[Relation], known: set[str], c
     _together(view, known_view, known, todo, pool, by_name, found, cap, max_joins, width, report)
     for label in [label for label in todo if label not in found]:
         start = view.with_labels([label])
-        end = sieve_classes(pool, start, cap=cap, max_joins=max_joins, width=width, comfort=None,
-                            report=report)
+        end = _last(sieve_run(pool, start, cap=cap, max_joins=max_joins, width=width, report=report))
         uses = _uses(end.plan.steps)
         if end.relation.count == 0:
             found[label] = _several(view, label, uses, by_name, cap)
         else:
             found[label] = Fate(name, label, "open", uses, classes=end.relation.count,
-                                index=end.relation.index, exponents=seen)
+                                index=end.relation.index, exponents=seen,
+                                exhausted=_exhausted(end.relation, pool))
     return [found[label] for label in sorted(found)]
 
 
@@ -213,7 +228,7 @@ def _together(view: Relation, known_view: Relation, known: set[str], todo: Seque
     if not todo:
         return
     start = view.with_labels(todo)
-    end = sieve_classes(pool, start, cap=cap, max_joins=max_joins, width=width, comfort=None, report=report)
+    end = _last(sieve_run(pool, start, cap=cap, max_joins=max_joins, width=width, report=report))
     uses = _uses(end.plan.steps)
     # the rational candidates go the same way, as a check on the data
     state = known_view
@@ -237,6 +252,12 @@ def _several(view: Relation, label: str, uses: Sequence[Use], by_name: Mapping[s
     short = shorten(view.with_labels([label]), uses, by_name, cap)
     kind = "single" if len({use.name for use in short}) == 1 else "several"
     return Fate(view.name, label, kind, short, exponents=_full(view))
+
+
+def _exhausted(end: Relation, pool: Sequence[Relation]) -> bool:
+    """Whether every condition that interacts with the end of a run lives on its quotient."""
+    outlook = Outlook(pool, end.by_prime)
+    return all(outlook.common[place] <= 0 or outlook.absorbed(place) for place in range(len(pool)))
 
 
 def _require(name: str, known: set[str], view: Relation, condition: str, mask: object) -> None:

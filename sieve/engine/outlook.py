@@ -17,10 +17,10 @@ from sieve.engine.join import match, project
 from sieve.engine.relation import Relation, coarsen
 from sieve.exact.primary import Characters, adapt, intersection_length
 
-#: worth of the part of a new condition that the state has not met yet, as a share of its logarithm: a
-#: large quotient lets more of the waiting conditions interact (on curves of rank 2, 3 and 6, 0.3 to 0.7
-#: is much better than 0)
-FRESH = 0.4
+#: premiums that are tried: the worth of the part of a new condition that the state has not met yet, as a
+#: share of its logarithm; a larger quotient lets more of the waiting conditions interact (on curves of rank
+#: 2, 3 and 6 anything from 0.3 to 0.8 is much better than 0, and no single value is best)
+PREMIUMS = (0.4, 0.6, 0.8)
 
 Parts = Mapping[int, Characters]
 
@@ -150,13 +150,13 @@ class Choice:
         return (self.score, self.size, self.relation.name, -self.relation.index)
 
 
-def choose(outlook: Outlook, size: float, used: Collection[str], width: int,
-           exact: Relation | None = None, cap: float = inf) -> Choice | None:
+def choose(outlook: Outlook, size: float, used: Collection[str], width: int, exact: Relation | None = None,
+           cap: float = inf, premium: float = PREMIUMS[0]) -> Choice | None:
     """The best next join, or None when no waiting condition that interacts with the state fits below the cap.
 
     Arguments: the outlook of the state; its number of classes; names not to be used; how many options to look
-    at closely; the state itself when exact sizes are wanted; the largest size allowed. Ties are broken by
-    size, name and index.
+    at closely; the state itself when exact sizes are wanted; the largest size allowed; the premium on new
+    parts. Ties are broken by size, name and index.
     """
     rough: list[tuple[float, str, int, float, Relation]] = []
     for place, relation in enumerate(outlook.pool):
@@ -179,13 +179,14 @@ def choose(outlook: Outlook, size: float, used: Collection[str], width: int,
         if found > cap:
             continue
         score = (log(found) if found > 0 else -inf) + outlook.after(option, used)
-        score -= FRESH * (log(option.index) - common)
+        score -= premium * (log(option.index) - common)
         if best is None or (score, found, option.name, -option.index) < best.key:
             best = Choice(option, expected, found, score)
     return best
 
 
-def choose_start(pool: Sequence[Relation], cap: float = inf) -> Relation | None:
+def choose_start(pool: Sequence[Relation], cap: float = inf,
+                 premium: float = PREMIUMS[0]) -> Relation | None:
     """The condition to begin with, by the same measure as `choose`; None if all of them exceed the cap."""
     best: tuple[float, str] | None = None
     chosen = None
@@ -194,7 +195,7 @@ def choose_start(pool: Sequence[Relation], cap: float = inf) -> Relation | None:
         if relation.count > cap:
             continue
         score = (log(relation.count) if relation.count else -inf) + outlook.after(relation, ())
-        score -= FRESH * log(relation.index)
+        score -= premium * log(relation.index)
         if best is None or (score, relation.name) < best:
             best, chosen = (score, relation.name), relation
     return chosen

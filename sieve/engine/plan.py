@@ -7,12 +7,12 @@ conditions.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Collection, Sequence
+from collections.abc import Callable, Collection, Iterator, Sequence
 from dataclasses import dataclass, replace
 from math import exp, log, prod
 
 from sieve.engine.join import join, match, semijoin
-from sieve.engine.outlook import Outlook, Parts, choose, choose_start, log_pass, sum_of_parts
+from sieve.engine.outlook import PREMIUMS, Outlook, Parts, choose, choose_start, log_pass, sum_of_parts
 from sieve.engine.relation import Relation, coarsen, trivial
 from sieve.exact.primary import Characters
 
@@ -179,40 +179,59 @@ def fit(state: Relation, condition: Relation, cap: int) -> Relation | None:
 
 
 def sieve_classes(relations: Sequence[Relation], start: Relation | None = None, *, cap: int = 200_000,
-                  max_joins: int = 16, width: int = 12, comfort: int | None = 20_000,
-                  report: Reporter | None = None,
-                  finished: Callable[[Relation], bool] | None = None) -> Outcome:
-    """Sieve with the exact size of every option in view, from `start` or from the best first condition.
+                  max_joins: int = 16, width: int = 12, comfort: int = 20_000,
+                  premiums: Sequence[float] = PREMIUMS, report: Reporter | None = None) -> Outcome:
+    """The strongest statement about the vectors that all conditions allow, with exact sizes of every option
+    in view.
 
     Arguments: conditions with distinct names; the relation to start from (labels are carried along); the
     largest number of classes; the largest number of joins; how many options each choice compares; `comfort`,
-    see below; a reporter that receives each executed step; a predicate that ends the run early. Returns: with
-    `comfort` None the last relation; otherwise the relation on the way with the largest log([L : K] / |W|),
-    that is with the strongest statement, among those with at most `comfort` classes (or the first one if
-    there is none).  The plan has the steps up to that relation.  An empty relation proves that no vector
-    satisfies the conditions in its sources.
+    see below; the premiums on new parts of the quotient, one run for each; a reporter that receives each
+    executed step. Returns: of all relations met between joins, in all runs, the one with the largest log([L :
+    K] / |W|) among those with at most `comfort` classes (or the first one if there is none), with the plan
+    that leads to it.  An empty relation ends the work: no vector satisfies the conditions in its sources.
+    """
+    best: tuple[float, Outcome] | None = None
+    for premium in premiums:
+        for outcome in sieve_run(relations, start, cap=cap, max_joins=max_joins, width=width, premium=premium,
+                                 report=report):
+            relation = outcome.relation
+            if relation.count == 0:
+                return outcome
+            merit = log(relation.index) - log(relation.count)
+            if best is None or (merit > best[0] + 1e-9 and relation.count <= comfort):
+                best = (merit, outcome)
+    assert best is not None
+    return best[1]
+
+
+def sieve_run(relations: Sequence[Relation], start: Relation | None = None, *, cap: int = 200_000,
+              max_joins: int = 16, width: int = 12, premium: float = PREMIUMS[0],
+              report: Reporter | None = None) -> Iterator[Outcome]:
+    """One greedy run; yields the state whenever all semijoins are done, that is before each join and at the
+    end.
+
+    Arguments as in `sieve_classes`.  The last outcome has the plan of the whole run.  It ends when the set is
+    empty, when no condition is left that adds anything, or at a limit.
     """
     pool = informative(relations)
     steps: list[Step] = []
 
-    def record(step: Step) -> None:
-        steps.append(step)
+    def record(kind: str, relation: Relation, expected: float) -> None:
+        steps.append(Step(kind, relation.name, _exponents(relation), expected, state.index, state.count))
         if report is not None:
-            report(step)
+            report(steps[-1])
 
-    def result(relation: Relation, count: int) -> Outcome:
-        return Outcome(relation, Plan(tuple(steps[:count])), largest)
-
-    largest = 1
     if start is None:
-        empty = next((r for r in pool if r.count == 0), None)
-        start = empty if empty is not None else choose_start(pool, cap)
-        if start is None:
-            return result(trivial(relations[0].n if relations else 0), 0)
-        record(Step("start", start.name, _exponents(start), float(start.count), start.index, start.count))
-    state, used = start, {start.name}
-    largest = state.count
-    best: tuple[float, Relation, int] | None = None
+        first = next((r for r in pool if r.count == 0), None) or choose_start(pool, cap, premium)
+        if first is None:
+            yield Outcome(trivial(relations[0].n if relations else 0), Plan(()), 1)
+            return
+        state = first
+        record("start", first, float(first.count))
+    else:
+        state = start
+    used, largest = {state.name}, state.count
     for number in range(max_joins + 1):
         outlook = Outlook(pool, state.by_prime)
         for place, relation in _waiting(outlook, used):
@@ -220,25 +239,16 @@ def sieve_classes(relations: Sequence[Relation], start: Relation | None = None, 
             smaller = semijoin(state, relation)
             if smaller is not state:
                 state = smaller
-                record(Step("semijoin", relation.name, _exponents(relation), expected, state.index,
-                            state.count))
+                record("semijoin", relation, expected)
             if state.count == 0:
-                return result(state, len(steps))
+                break
         used |= _spent(outlook)
-        merit = log(state.index) - log(state.count)
-        if best is None or (merit > best[0] and (comfort is None or state.count <= comfort)):
-            best = (merit, state, len(steps))
-        if number == max_joins or (finished is not None and finished(state)):
-            break
-        choice = choose(outlook, float(state.count), used, width, exact=state, cap=cap)
+        yield Outcome(state, Plan(tuple(steps)), largest)
+        if number == max_joins or state.count == 0:
+            return
+        choice = choose(outlook, float(state.count), used, width, state, cap, premium)
         if choice is None:
-            break
+            return
         state = join(state, choice.relation)
         largest = max(largest, state.count)
-        record(Step("join", choice.relation.name, _exponents(choice.relation), choice.expected, state.index,
-                    state.count))
-        if state.count == 0:
-            return result(state, len(steps))
-    if comfort is None or best is None:
-        return result(state, len(steps))
-    return result(best[1], best[2])
+        record("join", choice.relation, choice.expected)
