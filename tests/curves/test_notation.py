@@ -151,6 +151,8 @@ def test_work_is_bounded() -> None:
         parse_polynomial("(a+b+c+d+e+f+g)^99", list("abcdefg"), HERE)
     with pytest.raises(InputError, match="characters"):
         parse_polynomial("1+" * 200_000 + "1", [], HERE)
+    with pytest.raises(InputError, match="too large"):
+        parse_polynomial(f"1/1{'0' * 3998}1 + 1/1{'0' * 3998}3", [], HERE)
     with pytest.raises(InputError, match="4000 terms"):
         parse_padic("1+" * 5000 + "1", 7, 6, HERE)
 

@@ -142,6 +142,8 @@ def test_residues_and_refusals() -> None:
         half + PadicNumber.zero(5, 3)
     with pytest.raises(InternalError):
         half / 0
+    with pytest.raises(InternalError):
+        valuation(0, 7)
     for fields in [(7, 7, 0, 3), (7, 0, 0, 3), (7, 50, 0, 2), (7, 1, 3, 3), (7, -1, 0, 3)]:
         with pytest.raises(InternalError):
             PadicNumber(*fields)
