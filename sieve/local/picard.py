@@ -24,8 +24,8 @@ from sieve.local.order_bounds import exact_order, extension_count, order_lower_b
 
 IntArray = NDArray[np.int64]
 
-FAST_FROM = {2: 40, 3: 80}
-"""From this v on, sections through distinct points are used alone (by genus; 4 and up: 100)."""
+FAST_FROM = {2: 30, 3: 30}
+"""From this v on, sections through distinct points are used alone (by genus; 4 and up: 60)."""
 
 EXTENSION_LIMIT = 200_000
 """Largest v^e for which #X(F_{v^e}) is counted."""
@@ -121,7 +121,7 @@ def picard_group(curve: ReducedHyperelliptic) -> PicardGroup:
         raise Uncertified(curve.prime, "no points modulo v")
     v, g = curve.prime, curve.genus
     generated = curve.count**2 > (2 * g - 2) ** 2 * v
-    if generated and v >= FAST_FROM.get(g, 100):
+    if generated and v >= FAST_FROM.get(g, 60):
         group = _from_point_sections(curve)
         if group is not None:
             return group
@@ -148,6 +148,16 @@ class _Definitions:
         # rounds of (orbit, sign, unit coefficient, other orbits, their signs), for the logarithms
         self.rounds: list[tuple[IntArray, IntArray, IntArray, IntArray, IntArray]] = []
 
+
+    def lengthen(self) -> None:
+        """Write every known orbit as a combination of the base, the later rounds (longer ones) too."""
+        for target, own_sign, units, others, signs in self.rounds:
+            combination = np.zeros((len(target), self.width), dtype=np.int64)
+            combination[:, 0] = units
+            for k in range(others.shape[1]):
+                combination -= signs[:, k, None] * self.combination[others[:, k]]
+            self.combination[target] = own_sign[:, None] * combination
+        self.short = self.known.copy()
 
     def enlarge(self) -> bool:
         """Add an orbit that nothing reaches to the base: the base generates a proper subgroup."""
@@ -192,6 +202,8 @@ def _from_point_sections(curve: ReducedHyperelliptic) -> PicardGroup | None:
         closing.extend(_use(curve, state, divisors, g + 2))
         if group is None:
             group = _close(curve, state, closing, lower)
+        if group is None and state.known.all() and attempt >= 4:
+            state.lengthen()
         stalled = attempt > 3 and len(state.rounds) == rounds and not state.known.all()
         if stalled or (group is not None and group.order < lower):
             if not state.enlarge():
@@ -328,7 +340,7 @@ def _from_exact_sections(curve: ReducedHyperelliptic, generated: bool) -> Picard
             raise Uncertified(v, "the Weil bound is not sharp enough and the extension fields are too large to count")
         counts += [extension_count(curve, e) for e in range(2, g + 1)]
         lower, exact = exact_order(curve, counts), True
-    wanted = [higher_degree] if higher_degree > 1 or v > 40 else [1, 2]
+    wanted = [higher_degree] if higher_degree > 1 or v > 23 else [1, 2]
     for degree in wanted:
         limit = 60_000 if degree == wanted[-1] else 1_500
         result = _close_exactly(curve, degree, lower, exact, reason, limit)
@@ -369,7 +381,8 @@ def _close_exactly(
             relations.append(row_or_none)
         fresh = len(relations) - tried_with
         # where few sections split, look again after a while even with few new relations
-        if len(relations) < width - 1 or fresh < (10 if tries % 400 else 1):
+        enough = max(10, width // 4) if tried_with or places else 1
+        if len(relations) < width - 1 or fresh < (enough if tries % 400 else 1):
             continue
         tried_with = len(relations)
         group = quotient_by(width - 1, [r[:base_column] + r[base_column + 1 :] for r in relations])
