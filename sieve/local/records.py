@@ -1,0 +1,112 @@
+"""Local data at one auxiliary prime: the group, the images of divisors, the classes of all points.
+
+A record is plain data (integers, tuples, one array), so that worker processes and stores can pass it on.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Sequence
+from concurrent.futures import Executor
+from dataclasses import dataclass
+from functools import partial
+
+import numpy as np
+from numpy.typing import NDArray
+
+from sieve.curves.divisors import Divisor
+from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.errors import BadReduction, SieveError, Uncertified
+from sieve.local.condition import Condition
+from sieve.local.picard import PicardGroup, picard_group
+
+
+@dataclass(frozen=True, eq=False)
+class LocalRecord:
+    """What is known at the good prime `prime`, or why nothing is.
+
+    Fields: `points`, #X(F_v) (-1 when not counted); `order`, `invariants` of J(F_v); `images`, one row for every divisor of
+    degree 0 that was asked for, in the product of Z/invariants[i]; `allowed`, int64, shape (count, len(invariants)), the
+    classes of P - B for P in X(F_v), distinct and sorted; `reason`, how completeness was proved; `skipped`, when
+    not empty, says why the prime is not used, and then the other fields are empty.
+    """
+
+    prime: int
+    points: int
+    order: int
+    invariants: tuple[int, ...]
+    images: tuple[tuple[int, ...], ...]
+    allowed: NDArray[np.int64]
+    reason: str
+    skipped: str = ""
+
+    @property
+    def usable(self) -> bool:
+        """Whether the prime gives a condition."""
+        return not self.skipped
+
+    def condition(self, images: Sequence[Sequence[int]] | None = None) -> Condition:
+        """The condition at v; `images` (of the generators of L) defaults to the images in the record."""
+        rows = self.images if images is None else tuple(tuple(row) for row in images)
+        return Condition(f"v = {self.prime}", self.prime, self.invariants, rows, self.allowed)
+
+
+def _skip(v: int, reason: str, points: int = -1) -> LocalRecord:
+    return LocalRecord(v, points, 0, (), (), np.zeros((0, 0), dtype=np.int64), "", reason)
+
+
+def divisor_log(group: PicardGroup, divisor: Divisor) -> tuple[int, ...]:
+    """The class of D - deg(D) P0 in J(F_v) for a divisor over Q.
+
+    Raises `BadReduction` when it does not reduce, `Uncertified` when a closed point cannot be expressed.
+    """
+    total = [0] * len(group.invariants)
+    for multiplicity, place in divisor.terms:
+        group.add(total, multiplicity, group.log(group.curve.reduce(place)))
+    return tuple(total)
+
+
+def local_record(curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor], v: int) -> LocalRecord:
+    """The record at the prime v.
+
+    Arguments: `base` of degree 1, `divisors` of degree 0, v a prime below 2^20.  Never raises for a prime that cannot
+    be used: the record says why.  A prime without points gives a record with no allowed class.
+    """
+    try:
+        reduced = curve.modulo(v)
+        if reduced.count == 0:
+            images = tuple(() for _ in divisors)
+            return LocalRecord(v, 0, 1, (), images, np.zeros((0, 0), dtype=np.int64), "X has no point modulo v")
+        group = picard_group(reduced)
+        images = tuple(divisor_log(group, divisor) for divisor in divisors)
+        origin = np.array(divisor_log(group, base), dtype=np.int64)
+    except (BadReduction, Uncertified) as error:
+        return _skip(v, error.reason)
+    moduli = np.array(group.invariants, dtype=np.int64)
+    allowed = np.unique((group.point_logs - origin) % moduli, axis=0) if len(moduli) else np.zeros((1, 0), dtype=np.int64)
+    return LocalRecord(v, reduced.count, group.order, group.invariants, images, allowed, group.reason)
+
+
+def _guarded(curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor], v: int) -> LocalRecord:
+    try:
+        return local_record(curve, base, divisors, v)
+    except SieveError:
+        raise
+    except Exception as error:  # name the prime: the traceback of a worker would not
+        raise RuntimeError(f"local data at v = {v}: {type(error).__name__}: {error}") from error
+
+
+def local_records(
+    curve: HyperellipticCurve,
+    base: Divisor,
+    divisors: Sequence[Divisor],
+    primes: Sequence[int],
+    executor: Executor | None = None,
+    progress: Callable[[int], None] | None = None,
+) -> Iterator[LocalRecord]:
+    """Records for the given primes, in their order, through any executor (None: in this process)."""
+    work = partial(_guarded, curve, base, tuple(divisors))
+    results = map(work, primes) if executor is None else executor.map(work, primes, chunksize=4)
+    for record in results:
+        if progress is not None:
+            progress(record.prime)
+        yield record
