@@ -43,8 +43,8 @@ class Fate:
         class in common with the labels `same_as`, which are rational points;
       "unseen": open, since no condition sees any part of its group;
       "open": open, `classes` classes are left in a quotient of order `index` after the conditions in `uses`;
-        `exhausted` says whether they satisfy all conditions that interact (then only new conditions can
-        help), or whether a limit was reached before all of them were joined.
+        `exhausted` says that no condition is left that bears on them, so that only new conditions can help;
+        otherwise a limit was reached.
     `exponents`: the part of the candidate's group that the conditions see, as pairs (l, e).
     """
 
@@ -187,19 +187,20 @@ def _decide_one(relation: Relation, pool: Sequence[Relation], known: set[str], c
     view = visible_view(relation, pool)
     seen = _full(view)
     labels = [label for label in relation.labels if label not in known]
-    if not view.parts:
-        for label in labels:
-            found[label] = Fate(name, label, "unseen", classes=1)
-        return [found[label] for label in sorted(found)]
-
     known_view = view.with_labels(known)
     for condition in pool:
-        _require(name, known, known_view, condition.name, semijoin_mask(known_view, condition))
-    shared = _shared(view, known)
-    for label in labels:
-        if label in shared:
-            found[label] = Fate(name, label, "shared", same_as=shared[label], classes=1, index=view.index,
-                                exponents=seen)
+        kept = known_view.select(semijoin_mask(known_view, condition)).labels
+        for label in sorted(known.intersection(view.labels).difference(kept)):
+            raise Inconsistent(
+                f"{name}: the rational candidate {label} is excluded by {condition.name}", label)
+    if all(condition.count for condition in pool):
+        shared = _shared(view, known)
+        for label in labels:
+            if not view.parts:
+                found[label] = Fate(name, label, "unseen", classes=1)
+            elif label in shared:
+                found[label] = Fate(name, label, "shared", same_as=shared[label], classes=1, index=view.index,
+                                    exponents=seen)
 
     todo = [label for label in labels if label not in found]
     for label, killer in _single_kills(view.with_labels(todo), todo, pool).items():
@@ -255,16 +256,9 @@ def _several(view: Relation, label: str, uses: Sequence[Use], by_name: Mapping[s
 
 
 def _exhausted(end: Relation, pool: Sequence[Relation]) -> bool:
-    """Whether every condition that interacts with the end of a run lives on its quotient."""
+    """Whether the end of a run is independent of all conditions that do not live on its quotient."""
     outlook = Outlook(pool, end.by_prime)
-    return all(outlook.common[place] <= 0 or outlook.absorbed(place) for place in range(len(pool)))
-
-
-def _require(name: str, known: set[str], view: Relation, condition: str, mask: object) -> None:
-    """Every rational candidate must keep a class under a condition."""
-    kept = set(view.select(mask).labels)  # type: ignore[arg-type]
-    for label in sorted(known.intersection(view.labels) - kept):
-        raise Inconsistent(f"{name}: the rational candidate {label} is excluded by {condition}", label)
+    return not outlook.joint_primes(())
 
 
 def _shared(view: Relation, known: set[str]) -> dict[str, tuple[str, ...]]:

@@ -100,9 +100,25 @@ class Outlook:
         return sum(length * log(ell) for ell, length in meets.items())
 
     def absorbed(self, place: int) -> bool:
-        """Whether the condition has nothing beyond the quotient of the state: a semijoin says all it can
-        say."""
+        """Whether the condition has nothing beyond the quotient of the state: a semijoin then says it all."""
         return all(part.length == self.meets[place][part.prime] for part in self.pool[place].parts)
+
+    def joint_primes(self, used: Collection[str]) -> set[int]:
+        """The primes at which the waiting conditions together meet the state, even if none of them does
+        alone.
+
+        In Z^2 modulo 2 the characters x, y and x + y are such a case.
+        """
+        out = set()
+        for ell, part in self.parts.items():
+            rest = Characters(ell, (), ())
+            for place, relation in enumerate(self.pool):
+                other = relation.by_prime.get(ell)
+                if other is not None and relation.name not in used and not self.absorbed(place):
+                    rest = _plus(rest, other)
+            if rest.rows and self._length(rest, part):
+                out.add(ell)
+        return out
 
     def after(self, option: Relation, used: Collection[str]) -> float:
         """log of the fraction expected to survive the waiting conditions once `option` has been joined."""
@@ -122,22 +138,22 @@ class Outlook:
         return total
 
 
-def _variants(relation: Relation, state_primes: Collection[int]) -> list[Relation]:
-    """The condition and its coarser forms by leaving out primes; each still meets a prime of the state."""
+def _variants(relation: Relation, primes_wanted: Collection[int]) -> list[Relation]:
+    """The condition and its coarser forms by leaving out primes; each still has one of the wanted primes."""
     out = [relation]
     primes = sorted(relation.by_prime)
     if 1 < len(primes) <= 4:
         for mask in range(1, 2 ** len(primes) - 1):
             chosen = [ell for k, ell in enumerate(primes) if mask >> k & 1]
-            if any(ell in state_primes for ell in chosen):
+            if any(ell in primes_wanted for ell in chosen):
                 out.append(coarsen(relation, {ell: relation.exponents[ell] for ell in chosen}))
     return out
 
 
 @dataclass(frozen=True, eq=False)
 class Choice:
-    """A proposed join: the condition (possibly coarser), its expected and its found size, its score (small is
-    good)."""
+    """A proposed join: the condition (possibly coarser), its size as expected and as found, its score (small
+    wins)."""
 
     relation: Relation
     expected: float
@@ -150,31 +166,48 @@ class Choice:
         return (self.score, self.size, self.relation.name, -self.relation.index)
 
 
+Option = tuple[float, str, int, float, Relation]
+
+
+def _options(outlook: Outlook, used: Collection[str], joint: Collection[int]) -> list[Option]:
+    """(rough score, name, number of the variant, log of the common index, condition) for what may be joined.
+
+    A condition that does not meet the state is an option at the `joint` primes only.
+    """
+    out: list[Option] = []
+    for place, relation in enumerate(outlook.pool):
+        if relation.name in used:
+            continue
+        meets = outlook.meets[place]
+        wanted = {ell for ell, length in meets.items() if length}.union(joint)
+        if wanted.isdisjoint(meets):
+            continue
+        for number, option in enumerate(_variants(relation, wanted)):
+            if all(part.length == meets[part.prime] for part in option.parts):
+                continue
+            common = Outlook.log_order({ell: meets[ell] for ell in option.by_prime})
+            growth = log(max(option.count, 1)) - common
+            gain = log(option.index) - log(max(option.count, 1))
+            out.append((growth - gain / 2, option.name, number, common, option))
+    return sorted(out, key=lambda t: t[:3])
+
+
 def choose(outlook: Outlook, size: float, used: Collection[str], width: int, exact: Relation | None = None,
            cap: float = inf, premium: float = PREMIUMS[0]) -> Choice | None:
-    """The best next join, or None when no waiting condition that interacts with the state fits below the cap.
+    """The best next join, or None when nothing that interacts with the state fits below the cap.
 
     Arguments: the outlook of the state; its number of classes; names not to be used; how many options to look
     at closely; the state itself when exact sizes are wanted; the largest size allowed; the premium on new
-    parts. Ties are broken by size, name and index.
+    parts.  Ties are broken by size, name and index.
     """
-    rough: list[tuple[float, str, int, float, Relation]] = []
-    for place, relation in enumerate(outlook.pool):
-        if relation.name in used or outlook.common[place] <= 0:
-            continue
-        meets = outlook.meets[place]
-        for number, option in enumerate(_variants(relation, outlook.parts)):
-            common = Outlook.log_order({ell: meets[ell] for ell in option.by_prime})
-            if common <= 0 or all(part.length == meets[part.prime] for part in option.parts):
-                continue
-            growth = log(max(option.count, 1)) - common
-            gain = log(option.index) - log(max(option.count, 1))
-            if log(max(size, 1e-300)) + growth <= log(cap) + 1:
-                rough.append((growth - gain / 2, option.name, number, common, option))
-    rough.sort(key=lambda t: t[:3])
+    options = _options(outlook, used, ()) or _options(outlook, used, outlook.joint_primes(used))
     best: Choice | None = None
-    for _, _, _, common, option in rough[:width]:
+    looked_at = 0
+    for _, _, _, common, option in options:
         expected = size * option.count * exp(-common)
+        if expected > 3 * cap or looked_at == width:
+            continue
+        looked_at += 1
         found = expected if exact is None else float(match(exact, option).size)
         if found > cap:
             continue
