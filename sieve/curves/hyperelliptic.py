@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from fractions import Fraction
 from functools import cached_property
-from math import gcd, lcm
+from math import lcm
 
 import flint
 
@@ -63,7 +63,7 @@ class HyperellipticCurve:
         self.genus: int = (degree - 1) // 2
         repeated = square.gcd(square.derivative()) if square.degree() > 0 else square
         if repeated.degree() > 0:
-            raise SingularCurve(repeated.str(var="x", pretty=True) if hasattr(repeated, "str") else str(repeated))
+            raise SingularCurve(str(repeated))
         if self.genus < 2:
             raise ValueError(f"genus {max(self.genus, 0)}")
         if len(self.h) > self.genus + 2 or len(self.f) > 2 * self.genus + 3:
@@ -246,6 +246,21 @@ class HyperellipticCurve:
             raise BadReduction(v, "the model is not smooth there")
         return ReducedHyperelliptic(self.f, self.h, self.genus, v)
 
+    def two_torsion_dimension(self) -> int | None:
+        """dim J(Q)[2] over F_2, from the factors of 4 f + h^2, or None where these do not tell.
+
+        J[2] is the group of subsets of even size of the 2 g + 2 branch points modulo complements.  An invariant class
+        is an invariant subset, or one that is exchanged with its complement; the latter has g + 1 points, so g must be
+        odd and no factor of odd degree may exist (Mumford 1984, chapter IIIa).
+        """
+        degrees = [int(q.degree()) for q, e in flint.fmpz_poly(list(self.square_form)).factor()[1]]
+        if sum(degrees) == 2 * self.genus + 1:
+            degrees.append(1)
+        odd = any(d % 2 for d in degrees)
+        if not odd and self.genus % 2:
+            return None
+        return len(degrees) - 2 if odd else len(degrees) - 1
+
     def difference(self, point: Point, base: Divisor) -> Divisor:
         """The divisor P - B."""
         return Divisor.of([(1, RationalPlace(point))]) - base
@@ -285,4 +300,4 @@ def _express(b: flint.fmpq_poly, a: flint.fmpq_poly, m: flint.fmpq_poly) -> flin
     return flint.fmpq_poly([solution[i, 0] for i in range(n)])
 
 
-__all__ = ["Coefficients", "HyperellipticCurve", "SingularCurve", "gcd"]
+__all__ = ["Coefficients", "HyperellipticCurve", "SingularCurve"]
