@@ -47,8 +47,8 @@ def combine(codes: CodeArray, matrix: Sequence[Sequence[int]], modulus: int,
         for k, entry in enumerate(row):
             factor = entry % modulus
             if factor:
-                # both factors are below 2^31 and the running sum below the modulus
-                column += codes[:, k] % modulus * factor % modulus
+                # both factors are below 2^31, and the sum of fewer than 2^31 residues is below 2^62
+                column += codes[:, k] * factor % modulus
         column %= modulus
         if divisor != 1:
             column //= divisor

@@ -11,10 +11,10 @@ from collections.abc import Collection, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
 from sieve.engine.join import join, match, project, semijoin, semijoin_mask
-from sieve.engine.outlook import Outlook, sum_of_parts
+from sieve.engine.outlook import PREMIUMS, Outlook, shared_parts, sum_of_parts
 from sieve.engine.plan import Outcome, Reporter, Step, informative, sieve_run
 from sieve.engine.relation import Relation, coarsen
-from sieve.errors import Inconsistent
+from sieve.errors import Inconsistent, InternalError
 from sieve.exact.primary import Characters
 
 Exponents = tuple[tuple[int, int], ...]
@@ -69,6 +69,29 @@ class Fate:
         return tuple(dict.fromkeys(use.name for use in self.uses))
 
 
+    @property
+    def reason(self) -> str:
+        """The fate in words, without the name of the candidate."""
+        names = ", ".join(self.conditions)
+        seen = " * ".join(f"{ell}^{e}" if e > 1 else str(ell) for ell, e in self.exponents)
+        if self.kind == "image":
+            return "none of its classes lies in the image of the group"
+        if self.kind == "single":
+            return f"excluded by {names}"
+        if self.kind == "several":
+            return f"excluded by {names} together"
+        if self.kind == "shared":
+            return (f"in one class with {', '.join(self.same_as)} as far as the conditions see "
+                    f"(exponent {seen}, quotient of order {self.index})")
+        if self.kind == "unseen":
+            return "no condition sees any part of its group"
+        left = f"{self.classes} classes in a quotient of order {self.index}"
+        used = f" after {names}" if names else ""
+        if self.exhausted:
+            return f"all conditions that bear on it allow {left}{used}"
+        return f"a limit was reached with {left}{used}"
+
+
 def visible_view(candidates: Relation, pool: Sequence[Relation]) -> Relation:
     """The candidates in the part of their group that the conditions see, L/(K + K_pool); loses nothing."""
     parts: dict[int, Characters] = {}
@@ -99,7 +122,7 @@ def shorten(start: Relation, uses: Sequence[Use], by_name: Mapping[str, Relation
             cap: int) -> tuple[Use, ...]:
     """Leave out uses, the latest first, as long as the start still dies; the uses must kill it to begin with.
 
-    A shorter list may need larger sets on the way: up to four times the largest one of the full list, and
+    A shorter list may need larger sets on the way: up to twice the largest one of the full list, and
     `cap`.
     """
     states, kept = [start], []
@@ -107,11 +130,13 @@ def shorten(start: Relation, uses: Sequence[Use], by_name: Mapping[str, Relation
         state = replay(states[-1], [use], by_name, cap)
         if state is None:
             return tuple(uses)
+        if use.kind == "semijoin" and state.count == states[-1].count:
+            continue
         kept.append(use)
         states.append(state)
         if state.count == 0:
             break
-    limit = min(cap, 1000 + 4 * max(state.count for state in states))
+    limit = min(cap, 1000 + 2 * max(state.count for state in states))
     # states[i] is the state after the first i kept uses, which the rounds to come do not touch
     for i in reversed(range(len(kept) - 1)):
         end = replay(states[i], kept[i + 1:], by_name, limit)
@@ -156,7 +181,7 @@ def _single_kills(view: Relation, wanted: Collection[str], pool: Sequence[Relati
 
 
 def decide(candidates: Sequence[Relation], auxiliary: Sequence[Relation],
-           rational: Collection[tuple[str, str]] = (), *, cap: int = 100_000, max_joins: int = 16,
+           rational: Collection[tuple[str, str]] = (), *, cap: int = 100_000, max_joins: int = 40,
            width: int = 12, report: Reporter | None = None) -> list[Fate]:
     """Decide every candidate as far as the conditions go.
 
@@ -168,10 +193,13 @@ def decide(candidates: Sequence[Relation], auxiliary: Sequence[Relation],
     relation in the given order, then by label. Raises: Inconsistent (witness = the label) when a candidate
     known to be rational is excluded.
     """
+    names = [r.name for r in [*candidates, *auxiliary]]
+    if len(set(names)) != len(names):
+        raise InternalError("two conditions have the same name")
     fates: list[Fate] = []
     for relation in candidates:
         others = [r.unlabelled() for r in candidates if r is not relation and r.complete]
-        pool = informative([*auxiliary, *others])
+        pool = informative(shared_parts([*auxiliary, *others, relation])[:-1])
         known = {label for name, label in rational if name == relation.name}
         fates.extend(_decide_one(relation, pool, known, cap, max_joins, width, report))
     return fates
@@ -210,15 +238,7 @@ def _decide_one(relation: Relation, pool: Sequence[Relation], known: set[str], c
     todo = [label for label in todo if label not in found]
     _together(view, known_view, known, todo, pool, by_name, found, cap, max_joins, width, report)
     for label in [label for label in todo if label not in found]:
-        start = view.with_labels([label])
-        end = _last(sieve_run(pool, start, cap=cap, max_joins=max_joins, width=width, report=report))
-        uses = _uses(end.plan.steps)
-        if end.relation.count == 0:
-            found[label] = _several(view, label, uses, by_name, cap)
-        else:
-            found[label] = Fate(name, label, "open", uses, classes=end.relation.count,
-                                index=end.relation.index, exponents=seen,
-                                exhausted=_exhausted(end.relation, pool))
+        found[label] = _one(view, label, pool, by_name, cap, max_joins, width, report)
     return [found[label] for label in sorted(found)]
 
 
@@ -246,6 +266,22 @@ def _together(view: Relation, known_view: Relation, known: set[str], todo: Seque
     for label in todo:
         if label not in alive:
             found[label] = _several(view, label, uses, by_name, cap)
+
+
+def _one(view: Relation, label: str, pool: Sequence[Relation], by_name: Mapping[str, Relation], cap: int,
+         max_joins: int, width: int, report: Reporter | None) -> Fate:
+    """Sieve one label by itself, in several ways if limits stop the first."""
+    for premium in PREMIUMS:
+        end = _last(sieve_run(pool, view.with_labels([label]), cap=cap, max_joins=max_joins, width=width,
+                              premium=premium, report=report))
+        exhausted = _exhausted(end.relation, pool)
+        if end.relation.count == 0 or exhausted:
+            break
+    uses = _uses(end.plan.steps)
+    if end.relation.count == 0:
+        return _several(view, label, uses, by_name, cap)
+    return Fate(view.name, label, "open", uses, classes=end.relation.count, index=end.relation.index,
+                exponents=_full(view), exhausted=exhausted)
 
 
 def _several(view: Relation, label: str, uses: Sequence[Use], by_name: Mapping[str, Relation],

@@ -13,9 +13,9 @@ from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass
 from math import exp, inf, log, log1p
 
-from sieve.engine.join import match, project
+from sieve.engine.join import match
 from sieve.engine.relation import Relation, coarsen
-from sieve.exact.primary import Characters, adapt, intersection_length
+from sieve.exact.primary import Characters, adapt, intersect, intersection_length
 
 #: premiums that are tried: the worth of the part of a new condition that the state has not met yet, as a
 #: share of its logarithm; a larger quotient lets more of the waiting conditions interact (on curves of rank
@@ -35,30 +35,29 @@ def sum_of_parts(parts: Parts, relation: Relation) -> dict[int, Characters]:
     return out
 
 
-def visible_parts(relations: Sequence[Relation]) -> list[Relation]:
-    """Project every relation to what at least one of the others can see: L/(K_c + K'), K' the meet of the
-    others.
+def shared_parts(relations: Sequence[Relation]) -> list[Relation]:
+    """Coarsen every relation to the prime powers at which the others together can see it.
 
-    Loses nothing: whether a vector satisfies all of the others and lies in a given class of c depends on that
-    class modulo K' only.  Cuts off, say, a prime factor of one group order that no other shares.
+    Loses nothing for the question which classes of one relation are compatible with all the others: that
+    depends on L/(K_c + K') only, K' the meet of the others.  Cuts off, say, a prime factor of one group order
+    that no other shares.  Returns the relations in the given order, with `coarsen` applied to each.
     """
-    primes = sorted({ell for r in relations for ell in r.by_prime})
-    keep: list[dict[int, Characters]] = [{} for _ in relations]
-    for ell in primes:
+    keep: list[dict[int, int]] = [{} for _ in relations]
+    for ell in sorted({ell for r in relations for ell in r.by_prime}):
         holders = [(i, r.by_prime[ell]) for i, r in enumerate(relations) if ell in r.by_prime]
         if len(holders) < 2:
             continue
-        before: list[Characters] = [Characters(ell, (), ())]
-        after: list[Characters] = [Characters(ell, (), ())]
+        before = [Characters(ell, (), ())]
+        after = [Characters(ell, (), ())]
         for _, part in holders:
             before.append(_plus(before[-1], part))
         for _, part in reversed(holders):
             after.append(_plus(after[-1], part))
-        for k, (i, _) in enumerate(holders):
+        for k, (i, part) in enumerate(holders):
             others = _plus(before[k], after[len(holders) - 1 - k])
             if others.rows:
-                keep[i][ell] = others
-    return [project(r, others) for r, others in zip(relations, keep, strict=True)]
+                keep[i][ell] = max(intersect(part, others).basis.exponents, default=0)
+    return [coarsen(r, exponents) for r, exponents in zip(relations, keep, strict=True)]
 
 
 def _plus(a: Characters, b: Characters) -> Characters:

@@ -12,7 +12,16 @@ from dataclasses import dataclass, replace
 from math import exp, log, prod
 
 from sieve.engine.join import join, match, semijoin
-from sieve.engine.outlook import PREMIUMS, Outlook, Parts, choose, choose_start, log_pass, sum_of_parts
+from sieve.engine.outlook import (
+    PREMIUMS,
+    Outlook,
+    Parts,
+    choose,
+    choose_start,
+    log_pass,
+    shared_parts,
+    sum_of_parts,
+)
 from sieve.engine.relation import Relation, coarsen, trivial
 from sieve.exact.primary import Characters
 
@@ -77,7 +86,7 @@ def informative(relations: Sequence[Relation]) -> list[Relation]:
 
 
 def make_plan(relations: Sequence[Relation], start: Relation | None = None, *, known: int = 1,
-              cap: float = 2e5, max_joins: int = 16, width: int = 12) -> Plan:
+              cap: float = 2e5, max_joins: int = 24, width: int = 12) -> Plan:
     """Predict a plan from the counts and subgroups of the conditions alone; no classes are touched.
 
     Arguments: the conditions (distinct names); a relation to start from (None: the planner picks one); how
@@ -179,7 +188,7 @@ def fit(state: Relation, condition: Relation, cap: int) -> Relation | None:
 
 
 def sieve_classes(relations: Sequence[Relation], start: Relation | None = None, *, cap: int = 200_000,
-                  max_joins: int = 16, width: int = 12, comfort: int = 20_000,
+                  max_joins: int = 24, width: int = 12, comfort: int = 20_000,
                   premiums: Sequence[float] = PREMIUMS, report: Reporter | None = None) -> Outcome:
     """The strongest statement about the vectors that all conditions allow, with exact sizes of every option
     in view.
@@ -191,9 +200,11 @@ def sieve_classes(relations: Sequence[Relation], start: Relation | None = None, 
     K] / |W|) among those with at most `comfort` classes (or the first one if there is none), with the plan
     that leads to it.  An empty relation ends the work: no vector satisfies the conditions in its sources.
     """
+    given = list(relations) if start is None else [*relations, start]
+    pool = informative(shared_parts(given)[:len(relations)]) or informative(relations) or list(relations)
     best: tuple[float, Outcome] | None = None
     for premium in premiums:
-        for outcome in sieve_run(relations, start, cap=cap, max_joins=max_joins, width=width, premium=premium,
+        for outcome in sieve_run(pool, start, cap=cap, max_joins=max_joins, width=width, premium=premium,
                                  report=report):
             relation = outcome.relation
             if relation.count == 0:
@@ -206,7 +217,7 @@ def sieve_classes(relations: Sequence[Relation], start: Relation | None = None, 
 
 
 def sieve_run(relations: Sequence[Relation], start: Relation | None = None, *, cap: int = 200_000,
-              max_joins: int = 16, width: int = 12, premium: float = PREMIUMS[0],
+              max_joins: int = 24, width: int = 12, premium: float = PREMIUMS[0],
               report: Reporter | None = None) -> Iterator[Outcome]:
     """One greedy run; yields the state whenever all semijoins are done, that is before each join and at the
     end.

@@ -10,7 +10,7 @@ from sieve.engine.fates import decide, replay, visible_view
 from sieve.engine.join import join
 from sieve.engine.plan import informative
 from sieve.engine.relation import coarsen, relation_from_condition
-from sieve.errors import Inconsistent
+from sieve.errors import Inconsistent, InternalError
 from tests.support.random_conditions import (
     allows,
     box,
@@ -118,6 +118,8 @@ def test_shared_means_no_condition_can_ever_tell_them_apart():
     y, z = decide([relation], relations, [("p", "k")])
     assert (y.kind, y.conditions) == ("single", ("v",))
     assert (z.kind, z.same_as, z.exponents, z.index) == ("shared", ("k",), ((5, 1),), 5)
+    assert y.reason == "excluded by v"
+    assert z.reason == "in one class with k as far as the conditions see (exponent 5, quotient of order 5)"
 
 
 def test_conditions_that_meet_each_other_where_the_candidates_do_not_look():
@@ -129,6 +131,8 @@ def test_conditions_that_meet_each_other_where_the_candidates_do_not_look():
     a, b = decide([relation_from_condition(candidate)], relations)
     assert a.kind == "several" and set(a.conditions) == {"v", "w"}
     assert b.kind == "open" and b.exhausted and b.classes == 1
+    assert a.reason in ("excluded by v, w together", "excluded by w, v together")
+    assert b.reason.startswith("all conditions that bear on it allow 1 classes in a quotient of order 63")
 
 
 def test_conditions_that_meet_the_candidates_only_together():
@@ -157,6 +161,8 @@ def test_labels_outside_the_image():
     relation = relation_from_condition(candidate)
     a, b = decide([relation], [])
     assert a.kind == "unseen" and (b.kind, b.conditions) == ("image", ())
+    assert b.reason == "none of its classes lies in the image of the group"
+    assert a.reason == "no condition sees any part of its group"
     with pytest.raises(Inconsistent) as caught:
         decide([relation], [], [("p", "b")])
     assert caught.value.witness == "b"
@@ -183,6 +189,22 @@ def test_an_empty_condition_excludes_everything():
     assert [(f.kind, f.conditions) for f in fates] == [("single", ("v",))] * 2
     with pytest.raises(Inconsistent):
         decide([candidate], [nothing], [("p", "a")])
+
+
+def test_names_must_be_distinct():
+    relation = relation_from_condition(make("p", [9], [[1]], [[1]], [["a"]]))
+    with pytest.raises(InternalError):
+        decide([relation, relation], [])
+
+
+def test_a_limit_is_reported_as_a_limit():
+    rng = random.Random(4)
+    conditions = [random_condition(rng, f"v{k}", 2, moduli=(35, 77, 91, 63), density=0.5) for k in range(8)]
+    candidate = labelled(rng, random_condition(rng, "p", 2, moduli=(7,), density=0.05, factors=1), 3)
+    relations = [relation_from_condition(c) for c in conditions]
+    fates = decide([relation_from_condition(candidate)], relations, cap=10)
+    left = [f for f in fates if f.kind == "open" and not f.exhausted]
+    assert left and all(f.reason.startswith("a limit was reached with ") for f in left)
 
 
 def test_no_candidates_and_no_conditions():

@@ -9,7 +9,7 @@ import pytest
 
 from sieve.engine.join import join
 from sieve.engine.lift_filter import lift_and_filter
-from sieve.engine.outlook import Outlook, choose, choose_start, log_pass, visible_parts
+from sieve.engine.outlook import Outlook, choose, choose_start, log_pass, shared_parts
 from sieve.engine.plan import Plan, Step, fit, informative, make_plan, run_plan, sieve_classes, sieve_run
 from sieve.engine.relation import coarsen, relation_from_condition, trivial
 from sieve.errors import LimitReached
@@ -29,7 +29,7 @@ def planted_family(seed, n=2, conditions=12, density=0.12, points=3):
 @pytest.mark.parametrize("seed", range(12))
 def test_planted_vectors_survive_every_way_of_sieving(seed):
     planted, relations = planted_family(seed, n=1 + seed % 4)
-    for pool in (relations, visible_parts(relations)):
+    for pool in (relations, shared_parts(relations)):
         plan = make_plan(pool, known=len(planted))
         for outcome in (sieve_classes(pool), run_plan(plan, pool), run_plan(plan, pool, cap=50)):
             assert all(outcome.relation.contains(x) for x in planted)

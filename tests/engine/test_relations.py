@@ -18,7 +18,7 @@ from sieve.engine.join import (
     semijoin,
     semijoin_mask,
 )
-from sieve.engine.outlook import visible_parts
+from sieve.engine.outlook import shared_parts
 from sieve.engine.relation import coarsen, relation_from_condition, trivial
 from sieve.errors import LimitReached
 from tests.support.random_conditions import (
@@ -128,7 +128,7 @@ def test_project_and_common_index(seed):
 
 
 @pytest.mark.parametrize("seed", range(25))
-def test_arc_consistency_and_visible_parts_lose_nothing(seed):
+def test_arc_consistency_and_shared_parts_lose_nothing(seed):
     n, conditions = small_case(5000 + seed)
     relations = [relation_from_condition(c) for c in conditions]
     whole = join(join(*relations[:2]), relations[2])
@@ -138,7 +138,7 @@ def test_arc_consistency_and_visible_parts_lose_nothing(seed):
     for before, after in zip(relations, tight, strict=True):
         assert after.count <= before.count
     modulus = exponent(conditions)
-    seen = visible_parts(relations)
+    seen = shared_parts(relations)
     for k, relation in enumerate(relations):
         others = [r for i, r in enumerate(relations) if i != k]
         rest = join(*others)
