@@ -1,13 +1,172 @@
-"""The command line: `sieve COMMAND ...`."""
+"""The command line: `sieve COMMAND ...`.  Arguments in, exit codes out; the work is in `sieve.commands`."""
 
 from __future__ import annotations
+
+import os
+import sys
+from collections.abc import Callable
+from pathlib import Path
+from typing import Any
 
 import click
 
 from sieve import __version__
+from sieve.commands import inspect as inspect_command
+from sieve.commands import run as run_command
+from sieve.commands.common import Progress, parse_primes, workers
+from sieve.errors import Inconsistent, InputError, SieveError
+from sieve.files.result import json_text
+from sieve.files.store import Store
+
+BAD_INPUT = 2
+INTERRUPTED = 130
 
 
-@click.group(context_settings={"help_option_names": ["-h", "--help"]})
+class _Group(click.Group):
+    """Click's own usage errors in the one-line form of the interface."""
+
+    def main(self, *args: Any, **kwargs: Any) -> Any:  # noqa: D102
+        kwargs["standalone_mode"] = False
+        try:
+            code = super().main(*args, **kwargs)
+            sys.exit(code if isinstance(code, int) else 0)
+        except click.exceptions.Abort:
+            sys.exit(INTERRUPTED)
+        except click.UsageError as error:
+            _fail(f"command line: {error.format_message()}, expected the usage that --help shows")
+        except click.ClickException as error:
+            _fail(error.format_message())
+
+
+def _fail(message: str) -> None:
+    sys.stderr.write("sieve: error: " + " ".join(message.split()) + "\n")
+    sys.exit(BAD_INPUT)
+
+
+def _guard(case: str, work: Callable[[], int]) -> int:
+    """Run a command; every expected failure becomes one line and an exit code."""
+    try:
+        return work()
+    except KeyboardInterrupt:
+        sys.stderr.write("sieve: interrupted, progress kept\n")
+        return INTERRUPTED
+    except InputError as error:
+        _fail(error.line)
+    except Inconsistent as error:
+        _fail(f"{case}: {error.witness}: {error}, expected data that agree with one another")
+    except SieveError as error:
+        _fail(f"{case}: {error}")
+    except OSError as error:
+        _fail(f"{error.filename or case}: {error.strerror or error}, expected a readable file and a writable directory")
+    return BAD_INPUT
+
+
+@click.group(cls=_Group, context_settings={"help_option_names": ["-h", "--help"]})
 @click.version_option(__version__, prog_name="sieve")
 def main() -> None:
-    """Decide which p-adic candidates on a curve are rational points."""
+    """Prove that p-adic candidates on a curve are not rational points (a Mordell-Weil sieve).
+
+    Example: sieve run data/demo/case.toml -c data/demo/candidates.json
+    """
+
+
+def _common(command: Callable[..., Any]) -> Callable[..., Any]:
+    for option in (
+        click.option("--json", "as_json", is_flag=True, help="One JSON document on standard output, nothing else."),
+        click.option("-v", "--verbose", is_flag=True, help="Say what is being done, on standard error."),
+        click.option("--jobs", type=click.IntRange(0, 256), default=0, help="Processes (0: all cores)."),
+        click.option("--store", type=click.Path(dir_okay=False), help="File that keeps local data between runs."),
+    ):
+        command = option(command)
+    return command
+
+
+def _bound(value: int | None, option: str = "--bound") -> int | None:
+    if value is not None and not 3 <= value <= 2**20:
+        raise InputError(option, "", str(value), "a bound between 3 and 2^20")
+    return value
+
+
+@main.command("run", epilog="Example: sieve run case.toml -c candidates7.json -o out --bound 1000")
+@click.argument("case")
+@click.option("-c", "--candidates", multiple=True, help="A candidate file (once for each Chabauty prime).")
+@click.option("-o", "--output", help="Directory for result.json, proof.jsonl, report.txt (default NAME.out).")
+@click.option("--bound", type=int, help="Use auxiliary primes below this (default: grows until all is decided).")
+@click.option("--primes", help="Use exactly these auxiliary primes, separated by commas.")
+@click.option("--time", "seconds", type=float, help="Start no new local data after this many seconds.")
+@_common
+def run(
+    case: str, candidates: tuple[str, ...], output: str | None, bound: int | None, primes: str | None,
+    seconds: float | None, as_json: bool, verbose: bool, jobs: int, store: str | None,
+) -> int:
+    """Decide the candidates of CASE, or, without candidates, whether X(Q) is empty.
+
+    Exit code 0: every candidate is decided (without candidates: X(Q) is proved empty); 1: something stays open.
+    """
+    progress = Progress(verbose)
+
+    def work() -> int:
+        if seconds is not None and not seconds > 0:
+            raise InputError("--time", "", str(seconds), "a positive number of seconds")
+        wanted = None if primes is None else parse_primes(primes)
+        limit = _bound(bound)
+        name = run_command.case_name(case)
+        directory = Path(output) if output else Path(f"{name}.out")
+        if directory.exists() and not directory.is_dir():
+            raise InputError(str(directory), "", "a file", "a directory for the results")
+        path = Path(store) if store else run_command.default_store(directory)
+        with Store(path) as kept, workers(jobs) as executor:
+            done = run_command.execute(
+                case, candidates, bound=limit, primes=wanted, seconds=seconds, store=kept, executor=executor,
+                progress=progress,
+            )
+        result = run_command.write_files(done, directory)
+        progress.close()
+        if as_json:
+            click.echo(json_text(result.document()), nl=False)
+        else:
+            click.echo((directory / "report.txt").read_text(encoding="utf-8"), nl=False)
+        return done.exit_code
+
+    return _guard(case, work)
+
+
+@main.command("inspect", epilog="Example: sieve inspect case.toml --bound 60 --padic 7:10")
+@click.argument("case")
+@click.option("--bound", type=int, help="Show auxiliary primes below this.")
+@click.option("--primes", help="Show exactly these auxiliary primes, separated by commas.")
+@click.option("--padic", multiple=True, help="P:N, coefficients of the known points at P with N digits.")
+@_common
+def inspect(
+    case: str, bound: int | None, primes: str | None, padic: tuple[str, ...], as_json: bool, verbose: bool, jobs: int,
+    store: str | None,
+) -> int:
+    """Check CASE: groups J(F_v), torsion, independence, saturation, coefficients of the known points."""
+    progress = Progress(verbose)
+
+    def work() -> int:
+        wanted = None if primes is None else parse_primes(primes)
+        limit = _bound(bound)
+        kept = Store(store) if store else None
+        try:
+            with workers(jobs) as executor:
+                done = inspect_command.execute(
+                    case, bound=limit, primes=wanted, padic=padic, store=kept, executor=executor, progress=progress
+                )
+        finally:
+            if kept is not None:
+                kept.close()
+        progress.close()
+        if as_json:
+            click.echo(json_text(inspect_command.document(done)), nl=False)
+        else:
+            click.echo(inspect_command.text(done), nl=False)
+        return 0
+
+    return _guard(case, work)
+
+
+def entry() -> None:
+    """Entry point that keeps numerical libraries to one thread for each process."""
+    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
+    main()

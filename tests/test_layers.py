@@ -9,7 +9,7 @@ from pathlib import Path
 import pytest
 
 PACKAGE = Path(__file__).resolve().parent.parent / "sieve"
-LAYERS = ("errors", "exact", "curves", "local", "engine", "proof", "files", "report", "cli")
+LAYERS = ("errors", "exact", "curves", "local", "engine", "proof", "files", "report", "commands", "cli")
 
 
 def layer_of(module: str) -> int:

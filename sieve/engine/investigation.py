@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Collection, Iterable, Sequence
 from concurrent.futures import Executor
 
 from sieve.curves.divisors import Divisor, Point
@@ -54,18 +54,26 @@ class Investigation:
 
     # ---- local data ---------------------------------------------------------------------------------
 
-    def gather(self, primes: Iterable[int]) -> None:
-        """Add the records of the given primes (those not known yet), in increasing order."""
+    def add(self, record: LocalRecord) -> None:
+        """Add a record that was computed for the divisors `asked`."""
+        self.records[record.prime] = record
+        self._saturation.clear()
+
+    def gather(self, primes: Iterable[int], save: Callable[[LocalRecord], None] | None = None) -> None:
+        """Add the records of the given primes (those not known yet), in increasing order; `save` sees each new one."""
         missing = sorted(v for v in set(primes) if v not in self.records)
         if not missing:
             return
-        executor = self.executor if len(missing) > 24 else None
-        report = None if self.progress is None else (lambda v: self.progress and self.progress("local data", v))
+        # starting worker processes costs more than a few small primes
+        executor = self.executor if len(missing) > 12 and missing[-1] > 100 else None
+        progress = self.progress
+        report = None if progress is None else (lambda v: progress("local data", v))
         for record in local_records(
             self.problem.curve, self.problem.base, self.asked, missing, executor, report
         ):
-            self.records[record.prime] = record
-        self._saturation.clear()
+            self.add(record)
+            if save is not None:
+                save(record)
 
     @property
     def usable(self) -> list[LocalRecord]:
@@ -118,18 +126,19 @@ class Investigation:
                 out.append((d, values))
         return out
 
-    def establish(self) -> None:
+    def establish(self, gather: Callable[[list[int]], object] | None = None) -> None:
         """Fix the generators in use, check relations and orders, and compute the coordinates of the known points.
 
-        Raises `Inconsistent`: dependent generators, wrong torsion orders, a rank that does not match the known points, a
+        `gather` replaces the method of that name (a store may stand behind it).  Raises `Inconsistent`: dependent generators, wrong torsion orders, a rank that does not match the known points, a
         known point that is no combination of the generators.
         """
         problem = self.problem
-        self.gather(primes_below(FIRST_BOUND))
+        gather = gather or self.gather
+        gather(primes_below(FIRST_BOUND))
         bound = FIRST_BOUND
         while len([r for r in self.usable if r.points]) < 12 and bound < 2000:
             bound *= 2
-            self.gather(primes_below(bound))
+            gather(primes_below(bound))
         total = len(self.asked)
         unit = [[int(i == j) for j in range(total)] for i in range(total)]
         if problem.from_known_points:
@@ -232,10 +241,12 @@ class Investigation:
                 return False
         return True
 
-    def relations(self, ells: Sequence[int], bound: int | None = None) -> list[Relation]:
-        """The relations of the usable primes (below `bound`), restricted to the l-parts given."""
+    def relations(
+        self, ells: Sequence[int], bound: int | None = None, primes: Collection[int] | None = None
+    ) -> list[Relation]:
+        """The relations of the usable primes (below `bound`, among `primes`), restricted to the l-parts given."""
         out = []
         for record in self.usable:
-            if bound is None or record.prime < bound:
+            if (bound is None or record.prime < bound) and (primes is None or record.prime in primes):
                 out.append(relation_from_condition(record.condition(self.images(record)), ells))
         return out

@@ -1,0 +1,1 @@
+"""What the subcommands do, one module each; `sieve.cli` only parses arguments."""

@@ -1,0 +1,76 @@
+"""What the verdicts rest on: assumed by the user's word, or proved, with the primes that prove it."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from sieve.engine.investigation import Investigation
+from sieve.files.result import Premise
+
+if TYPE_CHECKING:
+    from sieve.commands.run import Run
+
+
+def hypothesis_premises(investigation: Investigation, ells: list[int]) -> list[Premise]:
+    """The rank, the torsion, independence and saturation at the primes l in use."""
+    problem = investigation.problem
+    out = [Premise("rank", "assumed", f"J(Q) has rank at most {problem.rank}", problem.rank_source)]
+    order = 1
+    for t in investigation.orders:
+        order *= t
+    if investigation.torsion_proved():
+        out.append(Premise("torsion", "proved", f"J(Q) has {order} torsion points", "", _torsion_primes(investigation)))
+    for ell in ells:
+        saturation = investigation.saturation_at(ell)
+        if saturation.proved:
+            out.append(Premise(
+                f"saturated at {ell}", "proved", f"{ell} does not divide the index [J(Q) : G]", "", saturation.primes
+            ))
+        elif ell in problem.index_prime_to:
+            out.append(Premise(
+                f"saturated at {ell}", "assumed", f"{ell} does not divide the index [J(Q) : G]", problem.index_source
+            ))
+    proved = [ell for ell in ells if investigation.saturation_at(ell).proved]
+    if proved and problem.rank:
+        out.insert(1, Premise(
+            "independence", "proved", "the free generators are independent", "",
+            investigation.saturation_at(proved[-1]).primes,
+        ))
+    return out
+
+
+def _torsion_primes(investigation: Investigation) -> tuple[int, ...]:
+    """A few primes whose group orders have the same greatest common divisor as all of them."""
+    from math import gcd
+
+    records = [r for r in investigation.usable if r.points and r.prime != 2]
+    goal = 0
+    for record in records:
+        goal = gcd(goal, record.order)
+    used, value = [], 0
+    for record in records:
+        if gcd(value, record.order) != value:
+            value = gcd(value, record.order)
+            used.append(record.prime)
+        if value == goal:
+            break
+    return tuple(used)
+
+
+def premises_of(run: Run) -> list[Premise]:
+    """All premises of a run, in a fixed order."""
+    out = hypothesis_premises(run.investigation, run.ells)
+    for file in run.files:
+        statement = (
+            f"every rational point of X is near one of the {len(file.candidates)} candidates at {file.prime}"
+            if file.complete else f"the {len(file.candidates)} candidates at {file.prime} are as stated"
+        )
+        if file.complete:
+            out.append(Premise(f"complete at {file.prime}", "assumed", statement, file.source))
+        for candidate in file.candidates:
+            if candidate.at_most is not None:
+                out.append(Premise(
+                    f"bound in {candidate.id} at {file.prime}", "assumed",
+                    f"at most {candidate.at_most} rational points are near {candidate.id}", file.source,
+                ))
+    return out

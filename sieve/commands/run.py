@@ -1,0 +1,308 @@
+"""`sieve run`: the main job, from files to verdicts, report and result."""
+
+from __future__ import annotations
+
+import json
+import time
+from collections.abc import Callable, Sequence
+from concurrent.futures import Executor
+from dataclasses import dataclass, field
+from pathlib import Path
+
+from sieve import __version__
+from sieve.commands.common import Progress, StoredInvestigation, problem_of
+from sieve.commands.premises import premises_of
+from sieve.curves.divisors import Point
+from sieve.curves.search import search_points
+from sieve.engine.investigation import FIRST_BOUND, Investigation
+from sieve.engine.plan import Step
+from sieve.engine.verdicts import (
+    CandidateList,
+    Decision,
+    Outlook,
+    decide_candidates,
+    match_rational,
+    surviving_classes,
+)
+from sieve.errors import BadReduction, InputError, PrecisionLost, Uncertified
+from sieve.exact.primes import primes_below
+from sieve.files.candidates import CandidateFile, check_candidates, disc_residues, load_candidates, model_coordinates
+from sieve.files.case import load_case
+from sieve.files.notation_out import divisor_document
+from sieve.files.resolve import ResolvedCase, read_case
+from sieve.files.result import LocalGroup, Result, Survivors, Verdict, json_text, make_directory, write_result, write_whole
+from sieve.files.store import Store
+from sieve.local.chabauty import ChabautyPlace, LocatedCandidate
+from sieve.report.text import report_text
+
+SEARCH_HEIGHT = 200
+"""Rational points up to this height of x are looked for, to recognise candidates that the case does not list."""
+
+
+def default_stages(genus: int) -> list[int]:
+    """Bounds for the auxiliary primes, tried one after the other until every candidate is decided."""
+    return [FIRST_BOUND, 400, 1000] if genus == 2 else [FIRST_BOUND, 300]
+
+
+def case_name(case_path: str) -> str:
+    """The name in a case file, for the default output directory."""
+    return load_case(case_path).name
+
+
+def default_store(directory: Path) -> Path:
+    """The store inside the output directory (made if needed), so that an interrupted run can go on."""
+    return make_directory(directory) / "local.sqlite"
+
+
+@dataclass
+class Run:
+    """One run and everything it found."""
+
+    resolved: ResolvedCase
+    investigation: Investigation
+    lists: list[CandidateList]
+    files: list[CandidateFile]
+    found_points: list[Point]
+    ells: list[int] = field(default_factory=list)
+    decisions: list[Decision] = field(default_factory=list)
+    outlook: Outlook | None = None
+    bound: int = 0
+    stopped: str = ""
+    steps: list[Step] = field(default_factory=list)
+
+    @property
+    def exit_code(self) -> int:
+        """0 when everything is decided, 1 when something stays open."""
+        if self.lists:
+            return 1 if any(d.verdict == "open" for d in self.decisions) else 0
+        return 0 if self.outlook is not None and self.outlook.empty else 1
+
+
+def locate(place: ChabautyPlace, file: CandidateFile) -> list[LocatedCandidate]:
+    """The candidates of a file in terms of residue discs and parameters."""
+    out = []
+    for c in file.candidates:
+        if c.kind == "point":
+            x, y, z = model_coordinates(place.curve, c)
+            try:
+                disc, parameter, digits = place.integrals.parameter_of_padic(x, y, z)
+            except ValueError as error:
+                raise c.origin.at("point", ".").error(str(error), "a p-adic point of the curve") from None
+            out.append(LocatedCandidate(
+                c.id, "point", disc, parameter, digits, (x, y, z), multiplicity=c.multiplicity, at_most=c.at_most
+            ))
+            continue
+        disc_number = None
+        if c.disc is not None:
+            disc_number = place.group.curve.index_of(*disc_residues(place.curve, c))
+        if c.kind == "disc":
+            out.append(LocatedCandidate(c.id, "disc", disc_number, multiplicity=c.multiplicity, at_most=c.at_most))
+        else:
+            out.append(LocatedCandidate(
+                c.id, "coefficients", disc_number, coefficients=c.coefficients, torsion=c.torsion,
+                multiplicity=c.multiplicity, at_most=c.at_most,
+            ))
+    return out
+
+
+def chabauty_place(investigation: Investigation, p: int, digits: int, name: str) -> ChabautyPlace:
+    """The Chabauty prime with the images of the generators; errors name the file or option `name`."""
+    try:
+        place = ChabautyPlace(investigation.problem.curve, p, digits)
+        place.attach(investigation.problem.base, investigation.generators)
+    except (BadReduction, Uncertified) as error:
+        raise InputError(name, "prime", f"{p} cannot be used: {error.reason}", "another prime") from None
+    except PrecisionLost as error:
+        raise InputError(name, "precision", str(error), "more digits, or another prime") from None
+    return place
+
+
+def execute(
+    case_path: str, candidate_paths: Sequence[str], *, bound: int | None = None, primes: Sequence[int] | None = None,
+    seconds: float | None = None, store: Store | None = None, executor: Executor | None = None,
+    progress: Progress | None = None,
+) -> Run:
+    """Everything `sieve run` computes; writes nothing but the store."""
+    started = time.monotonic()
+    say: Callable[[str], None] = progress.say if progress else (lambda text: None)
+    resolved = read_case(case_path)
+    files = [load_candidates(path) for path in candidate_paths]
+    for i, file in enumerate(files):
+        if file.prime in [f.prime for f in files[:i]]:
+            raise InputError(file.path, "prime", f"a second list for {file.prime}", "one list for each prime")
+        if not resolved.curve.is_smooth(file.prime):
+            check_candidates(file, resolved.curve, resolved.case.rank, ())
+    investigation = Investigation(problem_of(resolved), executor, progress)
+    deadline = None if seconds is None else started + seconds
+    stored = StoredInvestigation(investigation, store)
+    investigation.establish(stored.gather)
+    stored.deadline = deadline
+    lists = []
+    for file in files:
+        check_candidates(file, resolved.curve, resolved.case.rank, investigation.orders)
+        place = chabauty_place(investigation, file.prime, file.precision, file.path)
+        lists.append(CandidateList(place, locate(place, file), file.complete, file.source, file.path))
+    known = set(resolved.known_points)
+    found = [p for p in search_points(resolved.curve, SEARCH_HEIGHT) if p not in known]
+    run = Run(resolved, investigation, lists, files, found)
+    matched = match_rational(investigation, lists, found)
+    for points in matched.values():
+        for point in points:
+            if point not in known and point not in found:
+                found.append(point)
+    stages = default_stages(resolved.curve.genus)
+    if bound is not None:
+        stages = [b for b in stages if b < bound] + [bound]
+    if primes is not None:
+        stages = [max(primes) + 1]
+    chabauty_primes = [listing.place.prime for listing in lists]
+    wanted = None if primes is None else set(primes)
+    for stage in stages:
+        todo = primes_below(stage) if wanted is None else sorted(wanted)
+        finished = stored.gather(todo)
+        run.bound = stage
+        run.ells = investigation.allowed_ells(chabauty_primes)
+        say(f"auxiliary primes below {stage}: {len(investigation.usable)} usable, parts at l = {run.ells}")
+        if lists:
+            decisions = decide_candidates(investigation, lists, matched, run.ells, stage, wanted)
+            run.decisions = [
+                decisions[i, c.id] for i, listing in enumerate(lists) for c in listing.candidates
+            ]
+        if lists and all(d.verdict != "open" for d in run.decisions):
+            break
+        if not finished:
+            run.stopped = f"the time limit of {seconds:g} s stopped the run"
+            break
+        if not lists:
+            run.outlook = surviving_classes(investigation, run.ells, stage, wanted, run.steps.append)
+            if run.outlook.empty:
+                break
+    if run.outlook is None:
+        run.outlook = surviving_classes(investigation, run.ells, run.bound, wanted, run.steps.append)
+    return run
+
+
+def statement(run: Run) -> str:
+    """The final statement, true under the premises."""
+    curve = run.resolved.curve
+    if not run.lists:
+        if run.outlook is not None and run.outlook.empty:
+            return "X(Q) is empty."
+        count = run.outlook.outcome.relation.count if run.outlook else 0
+        index = run.outlook.outcome.relation.index if run.outlook else 1
+        return f"Every rational point of X has one of {count} classes modulo a subgroup of index {index} of the known group."
+    eliminated = sum(d.verdict == "eliminated" for d in run.decisions)
+    left = [d for d in run.decisions if d.verdict == "open"]
+    points = rational_points(run)
+    shown = ", ".join(curve.format_point(p) for p in points)
+    complete = [listing for listing in run.lists if listing.complete]
+    decided = [
+        listing for listing in complete
+        if all(d.verdict != "open" and (d.verdict != "rational" or d.sole) for d in run.decisions if d.prime == listing.place.prime)
+    ]
+    if decided:
+        p = decided[0].place.prime
+        return f"X(Q) has exactly {len(points)} points: {shown}. (The {p}-adic list is complete and every candidate in it is decided.)"
+    text = f"{eliminated} candidates are proved not to be rational."
+    if left:
+        text += f" {len(left)} stay open."
+    if points:
+        text += f" Rational points met: {shown}."
+    return text
+
+
+def rational_points(run: Run) -> list[Point]:
+    """The rational points known, found or recognised, sorted by height."""
+    points = set(run.resolved.known_points) | set(run.found_points)
+    for decision in run.decisions:
+        points |= set(decision.points)
+    return sorted(points, key=lambda p: (max(abs(p[0]), abs(p[2])), p))
+
+
+def result_of(run: Run) -> Result:
+    """The content of result.json."""
+    curve = run.resolved.curve
+    verdicts = tuple(
+        Verdict(
+            d.prime, d.id, d.verdict, d.reason, d.primes,  # type: ignore[arg-type]
+            curve.format_point(d.points[0]) if d.points else "", d.given, d.sole, d.hint,
+        )
+        for d in run.decisions
+    )
+    local = tuple(
+        LocalGroup(r.prime, r.points, r.order, r.invariants) for r in run.investigation.usable
+    )
+    survivors = None
+    if run.outlook is not None:
+        relation = run.outlook.outcome.relation
+        vectors = tuple(s.vector for s in run.outlook.vectors[:1000])
+        value = run.outlook.barrier.value if run.outlook.barrier else None
+        survivors = Survivors(relation.index, relation.count, vectors, value)
+    points = tuple(curve.format_point(p) for p in rational_points(run))
+    return Result(
+        run.resolved.case.name, run.resolved.case.sha256, verdicts, tuple(premises_of(run)), local, survivors, points,
+        statement(run),
+    )
+
+
+def trace_lines(run: Run) -> str:
+    """A plain trace of the run as JSON lines: header, local groups, plan, fates."""
+    curve = run.resolved.curve
+    lines: list[object] = [{
+        "record": "header", "program": f"residue-sieve {__version__}", "curve": {"f": curve.f, "h": curve.h},
+        "generators": [divisor_document(curve, d) for d in run.investigation.generators],
+        "torsion_orders": run.investigation.orders,
+        "candidate_files": [{"prime": f.prime, "sha256": f.sha256, "source": f.source} for f in run.files],
+    }]
+    for record in run.investigation.usable:
+        lines.append({
+            "record": "local", "prime": record.prime, "points": record.points, "structure": record.invariants,
+            "images": run.investigation.images(record), "certified": record.reason,
+        })
+    for record in run.investigation.skipped:
+        lines.append({"record": "skipped", "prime": record.prime, "reason": record.skipped})
+    for step in run.steps:
+        lines.append({
+            "record": "step", "kind": step.kind, "condition": step.name, "exponents": step.exponents,
+            "predicted": float(f"{step.predicted:.6g}"), "actual": step.actual, "index": str(step.index),
+        })
+    for d in run.decisions:
+        lines.append({"record": "fate", "prime": d.prime, "id": d.id, "verdict": d.verdict, "primes": d.primes, "reason": d.reason})
+    return "".join(json.dumps(line, separators=(",", ":")) + "\n" for line in lines)
+
+
+def write_files(run: Run, directory: str | Path) -> Result:
+    """Write result.json, proof.jsonl and report.txt into the directory (made if needed)."""
+    path = make_directory(directory)
+    result = result_of(run)
+    write_whole(path / "proof.jsonl", trace_lines(run))
+    write_whole(path / "report.txt", report_text(run_summary(run, result)))
+    write_result(path / "result.json", result)
+    return result
+
+
+def run_summary(run: Run, result: Result) -> dict[str, object]:
+    """What the report prints, as plain data."""
+    curve = run.resolved.curve
+    relation = run.outlook.outcome.relation if run.outlook else None
+    return {
+        "result": result,
+        "curve": curve,
+        "case": run.resolved.case,
+        "generators": run.investigation.generators,
+        "orders": run.investigation.orders,
+        "coordinates": run.investigation.coordinates,
+        "base": run.resolved.base,
+        "lists": [(f.prime, len(f.candidates), f.complete, f.source, f.precision) for f in run.files],
+        "skipped": [(r.prime, r.skipped) for r in run.investigation.skipped],
+        "ells": run.ells,
+        "plan": [str(s) for s in run.outlook.outcome.plan.steps] if run.outlook else [],
+        "largest": run.outlook.outcome.largest if run.outlook else 0,
+        "relation_sources": relation.sources if relation else (),
+        "found": [curve.format_point(p) for p in run.found_points],
+        "stopped": run.stopped,
+        "images": {r.prime: run.investigation.images(r) for r in run.investigation.usable},
+    }
+
+
+__all__ = ["Run", "execute", "json_text", "result_of", "statement", "write_files"]

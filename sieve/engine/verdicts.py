@@ -1,0 +1,212 @@
+"""From candidate lists and an investigation to a verdict for every candidate."""
+
+from __future__ import annotations
+
+from collections.abc import Collection, Sequence
+from dataclasses import dataclass, field
+
+from sieve.curves.divisors import Point
+from sieve.engine.fates import Fate, decide
+from sieve.engine.investigation import Investigation
+from sieve.engine.plan import Outcome, Reporter, sieve_classes
+from sieve.engine.recognise import matching_points, reconstruct
+from sieve.engine.relation import Relation, relation_from_condition
+from sieve.engine.survivors import Barrier, Survivor, barrier, short_vectors
+from sieve.errors import Inconsistent
+from sieve.local.chabauty import ChabautyPlace, LocatedCandidate
+
+
+@dataclass
+class CandidateList:
+    """The candidates at one Chabauty prime; `complete` claims that every rational point is near one of them."""
+
+    place: ChabautyPlace
+    candidates: list[LocatedCandidate]
+    complete: bool
+    source: str
+    name: str
+
+
+@dataclass(frozen=True)
+class Decision:
+    """The verdict on one candidate: "eliminated", "rational" or "open".
+
+    `primes` responsible (residue characteristics, in order); `points`: the rational points it stands for; `given`: all of
+    them are known points of the case; `sole`: no second rational point can hide there; `fate`: what the sieve found.
+    """
+
+    prime: int
+    id: str
+    verdict: str
+    reason: str
+    primes: tuple[int, ...] = ()
+    points: tuple[Point, ...] = ()
+    given: bool = False
+    sole: bool = False
+    hint: str = ""
+    fate: Fate | None = None
+
+
+@dataclass
+class Outlook:
+    """The classes of L that survive all conditions, without candidates."""
+
+    outcome: Outcome
+    vectors: list[Survivor]
+    barrier: Barrier | None
+    empty: bool = field(default=False)
+
+
+def match_rational(
+    investigation: Investigation, lists: Sequence[CandidateList], found: Sequence[Point] = ()
+) -> dict[tuple[int, str], tuple[Point, ...]]:
+    """The rational points behind the candidates, by (list number, id).
+
+    Arguments: `found`, rational points that are not among the known ones.  Raises `Inconsistent` when a list that claims to be
+    complete misses a rational point, naming the point.
+    """
+    problem = investigation.problem
+    points: dict[Point, object] = {}
+    for point in [*problem.known_points, *found]:
+        points[point] = investigation.coordinates.get(point)
+    matched: dict[tuple[int, str], tuple[Point, ...]] = {}
+    for number, listing in enumerate(lists):
+        covered: set[Point] = set()
+        for candidate in listing.candidates:
+            here = matching_points(listing.place, candidate, points, investigation.orders)  # type: ignore[arg-type]
+            here = here or reconstruct(listing.place, candidate)
+            if here:
+                matched[number, candidate.id] = here
+                covered |= set(here)
+        if listing.complete:
+            unlocated = any(c.kind == "coefficients" for c in listing.candidates)
+            for point in points:
+                if point in covered or (unlocated and investigation.coordinates.get(point) is None):
+                    continue
+                shown = problem.curve.format_point(point)
+                raise Inconsistent(
+                    f"{listing.name} claims to be complete, but no candidate is near the rational point {shown}", shown
+                )
+    return matched
+
+
+def candidate_relations(
+    investigation: Investigation, lists: Sequence[CandidateList], ells: Sequence[int]
+) -> tuple[list[Relation], list[Relation], dict[str, int]]:
+    """Labelled relations, unlabelled relations of complete lists, and the list number of every labelled one."""
+    labelled: list[Relation] = []
+    lists_of: dict[str, int] = {}
+    for number, listing in enumerate(lists):
+        conditions = listing.place.conditions(
+            listing.candidates, investigation.problem.rank, investigation.orders, listing.complete
+        )
+        for condition in conditions:
+            relation = relation_from_condition(condition, ells)
+            labelled.append(relation)
+            lists_of[condition.name] = number
+    return labelled, [], lists_of
+
+
+def prime_of(name: str) -> int:
+    """The residue characteristic in a condition's name ("v = 59", "p = 7, part 2")."""
+    return int(name.split("=")[1].split(",")[0])
+
+
+def decide_candidates(
+    investigation: Investigation,
+    lists: Sequence[CandidateList],
+    matched: dict[tuple[int, str], tuple[Point, ...]],
+    ells: Sequence[int],
+    bound: int | None,
+    primes: Collection[int] | None = None,
+    report: Reporter | None = None,
+) -> dict[tuple[int, str], Decision]:
+    """A decision for every candidate, by (list number, id), with the auxiliary primes below `bound` (among `primes`)."""
+    labelled, extra, lists_of = candidate_relations(investigation, lists, ells)
+    rational = [
+        (relation.name, label)
+        for relation in labelled
+        for label in {*relation.labels, *relation.outside}
+        if (lists_of[relation.name], label) in matched
+    ]
+    auxiliary = [*investigation.relations(ells, bound, primes), *extra]
+    out: dict[tuple[int, str], Decision] = {}
+    known = set(investigation.problem.known_points)
+    for number, listing in enumerate(lists):
+        for candidate in listing.candidates:
+            points = matched.get((number, candidate.id))
+            if points:
+                out[number, candidate.id] = _rational(listing, candidate, points, known)
+    for fate in decide(labelled, auxiliary, rational, report=report):
+        number = lists_of[fate.condition]
+        out[number, fate.label] = _from_fate(lists[number].place.prime, fate)
+    return out
+
+
+def _rational(
+    listing: CandidateList, candidate: LocatedCandidate, points: tuple[Point, ...], known: set[Point]
+) -> Decision:
+    curve = listing.place.curve
+    notes = []
+    if len(points) > 1:
+        notes.append("it cannot be told apart from " + ", ".join(curve.format_point(p) for p in points[1:]) + " at its precision")
+    if candidate.multiplicity > 1:
+        notes.append(f"multiplicity {candidate.multiplicity}: the disc may hide a second rational point")
+    if candidate.kind == "disc" and candidate.at_most != 1:
+        notes.append("a whole residue disc without the bound at_most = 1 may hold other rational points")
+    sole = not notes or (candidate.at_most == 1 and len(points) == 1)
+    return Decision(
+        listing.place.prime, candidate.id, "rational", "; ".join(notes), points=points,
+        given=all(p in known for p in points), sole=sole,
+    )
+
+
+def _from_fate(p: int, fate: Fate) -> Decision:
+    primes = tuple(dict.fromkeys(prime_of(name) for name in fate.conditions))
+    if fate.kind == "image":
+        reason = f"its class modulo {p} and its {p}-adic integrals are not in the image of J(Q)"
+        return Decision(p, fate.label, "eliminated", reason, (), fate=fate)
+    if fate.kind == "single":
+        reason = f"no point of X modulo {primes[0]} has a class compatible with it"
+        return Decision(p, fate.label, "eliminated", reason, primes, fate=fate)
+    if fate.kind == "several":
+        reason = "no class of the group is compatible with it and with the points modulo " + ", ".join(map(str, primes))
+        return Decision(p, fate.label, "eliminated", reason, primes, fate=fate)
+    hint = "add auxiliary primes (a larger --bound)"
+    if fate.kind == "shared":
+        parts = " * ".join(f"{ell}^{e}" for ell, e in fate.exponents)
+        reason = (
+            "in the part of the group that the auxiliary primes see (exponent " + parts + ") it has the same class as "
+            "the rational candidate" + ("s " if len(fate.same_as) > 1 else " ") + ", ".join(fate.same_as)
+        )
+        hint = f"auxiliary primes whose group has a higher power of {p}, or candidates with more digits"
+    elif fate.kind == "unseen":
+        reason = "no auxiliary prime sees any part of its group"
+    elif fate.exhausted:
+        reason = f"{fate.classes} classes modulo a subgroup of index {fate.index} satisfy every condition"
+    else:
+        reason = f"a size limit stopped the sieve with {fate.classes} classes modulo a subgroup of index {fate.index}"
+        hint = "fewer, better auxiliary primes (--primes)"
+    return Decision(p, fate.label, "open", reason, primes, hint=hint, fate=fate)
+
+
+def surviving_classes(
+    investigation: Investigation, ells: Sequence[int], bound: int | None,
+    primes: Collection[int] | None = None, report: Reporter | None = None,
+) -> Outlook:
+    """The classes of L that satisfy all conditions of the auxiliary primes below `bound` (among `primes`), and the barrier.
+
+    Raises `Inconsistent` when a known point is excluded.
+    """
+    relations = investigation.relations(ells, bound, primes)
+    outcome = sieve_classes(relations, report=report)
+    relation = outcome.relation
+    known = [
+        c.vector for c in investigation.coordinates.values() if c.denominator == 1
+    ]
+    outside = [c for c in investigation.coordinates.values() if c.denominator > 1]
+    vectors = short_vectors(relation, investigation.orders) if relation.count <= 5000 else []
+    found: Barrier | None = None
+    if relation.count and relation.count <= 5000 and not outside:
+        found = barrier(relation, known, investigation.orders)
+    return Outlook(outcome, vectors, found, relation.count == 0)
