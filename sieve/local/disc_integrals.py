@@ -1,0 +1,125 @@
+"""Integrals of the regular differentials inside residue discs, to points and summed over zeros of sections.
+
+Why every digit that is returned holds: see `sieve.exact.series` for sums over roots.  A parameter known
+modulo p^n, n >= 1, gives integrals modulo p^n: between t and t + d, v(d) >= n, the integral is the sum of d^j
+c_{j-1}(t) / j with Taylor coefficients c_{j-1}(t) in Z_p, and j n - v_p(j) >= n because v_p(j) <= j - 1.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from flint import fmpz_mat, fmpz_mod_poly
+
+from sieve.curves.discs import ResidueDisc
+from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.hyperelliptic_mod import ReducedHyperelliptic
+from sieve.errors import InternalError
+from sieve.exact.padic_linear import PadicVector
+from sieve.exact.series import (
+    coefficients,
+    distinguished_polynomial,
+    floor_log,
+    integral_length,
+    integral_terms,
+    polynomial,
+    power_sums,
+)
+from sieve.local.supported_sections import Scheme, SupportedSection
+
+
+class DiscIntegrals:
+    """The residue discs of a curve at a prime of good reduction, with integrals inside them.
+
+    Arguments: `curve`; `reduced`, its reduction, whose numbering of points is that of the discs.
+
+    >>> curve = HyperellipticCurve([1, -4, 2, -2, 1, 2, 1])
+    >>> integrals = DiscIntegrals(curve, curve.modulo(7))
+    >>> integrals.to_parameter(0, 7, 3).numerators
+    (28, 98)
+    """
+
+    def __init__(self, curve: HyperellipticCurve, reduced: ReducedHyperelliptic) -> None:
+        self.curve, self.reduced, self.prime, self.genus = curve, reduced, reduced.prime, curve.genus
+        self.discs = [
+            ResidueDisc(curve.f, curve.h, curve.genus, reduced.prime, point, number)
+            for number, point in enumerate(reduced.points)
+        ]
+        self.partner = [int(j) for j in reduced.partner]
+        #: the first disc of every pair of conjugate discs
+        self.leaders = [i for i, j in enumerate(self.partner) if i < j]
+        #: the discs that the involution maps to themselves
+        self.ramified = [i for i, j in enumerate(self.partner) if i == j]
+
+    def working(self, roots: int, precision: int) -> tuple[int, int]:
+        """(length, exponent) for sums over `roots` zeros modulo p^precision: terms, working precision."""
+        length = integral_length(self.prime, roots, precision)
+        return length, precision + floor_log(max(1, length), self.prime)
+
+    def to_parameter(self, number: int, t: int, precision: int) -> PadicVector:
+        """The integrals from the centre of a disc to the parameter t (p | t), modulo p^precision."""
+        return self.over_roots(number, [-t, 1], precision)
+
+    def over_roots(self, number: int, monic: Sequence[int], precision: int) -> PadicVector:
+        """The integrals from the centre of a disc summed over the roots of a distinguished polynomial.
+
+        Arguments: coefficients low degree first, known modulo p^exponent, see `working`; precision >= 1.
+        Returns the sum modulo p^precision; it need not be integral when there are p roots or more.
+        """
+        roots = len(monic) - 1
+        if not any(monic[:-1]):
+            return PadicVector.zero(self.prime, self.genus, precision)
+        if any(c % self.prime for c in monic[:-1]):
+            raise InternalError("integrals over points outside the disc")
+        length, exponent = self.working(roots, precision)
+        if length == 0:
+            return PadicVector.zero(self.prime, self.genus, precision)
+        modulus, shift = self.prime**exponent, exponent - precision
+        sums = power_sums(monic, length, modulus)
+        values = []
+        for form in self.discs[number].expansion(exponent, length).forms:
+            terms = integral_terms(form, length, self.prime, exponent, shift)
+            values.append(sum(a * b for a, b in zip(terms, sums, strict=True)) % modulus)
+        return PadicVector.of(self.prime, values, shift, precision)
+
+    def over_zeros(self, section: SupportedSection, scheme: Scheme, precision: int) -> PadicVector:
+        """The integrals from the centres summed over the zeros outside the scheme of a section lifted to Z_p.
+
+        Arguments: `scheme` over Z/p^N with N >= `working(largest contact order, precision)`.
+        """
+        total = PadicVector.zero(self.prime, self.genus, precision)
+        for number, order in section.contacts:
+            _, exponent = self.working(order, precision)
+            even, odd = section.through(scheme.reduced(self.prime**exponent))
+            series = self.discs[number].restrict(even, odd, section.multiple, exponent, order * exponent)
+            monic = distinguished_polynomial(series, self.prime, exponent)
+            if monic.degree() != order:
+                raise InternalError(f"{monic.degree()} zeros in a disc where {order} were prescribed")
+            total = total + self.over_roots(number, coefficients(monic, order + 1), precision)
+        return total
+
+    def over_scheme(self, number: int, u: fmpz_mod_poly, w: fmpz_mod_poly, precision: int) -> PadicVector:
+        """The integrals from the centre of an affine disc summed over a scheme (u, w) that lies in it.
+
+        u and w modulo p^exponent, see `working` for deg u roots.
+        """
+        disc, degree = self.discs[number], int(u.degree())
+        _, exponent = self.working(degree, precision)
+        scheme = Scheme(u, w).reduced(self.prime**exponent)
+        u, w = scheme.u, scheme.w
+        a0, b0 = disc.centre(exponent)
+        if disc.ramified:
+            monic = _characteristic_polynomial(w - b0, u)
+        else:
+            monic = u.compose(polynomial([a0, 1], self.prime**exponent))
+        return self.over_roots(number, coefficients(monic, degree + 1), precision)
+
+
+def _characteristic_polynomial(value: fmpz_mod_poly, u: fmpz_mod_poly) -> fmpz_mod_poly:
+    """The monic polynomial whose roots are value(x), x the roots of u."""
+    n = int(u.degree())
+    modulus, rows, power = int(u.modulus()), [], value % u
+    for _ in range(n):
+        rows.append(coefficients(power, n))
+        power = power * polynomial([0, 1], modulus) % u
+    return polynomial([int(c) for c in fmpz_mat(rows).charpoly().coeffs()], modulus)
