@@ -25,7 +25,7 @@ INTERRUPTED = 130
 class _Group(click.Group):
     """Click's own usage errors in the one-line form of the interface."""
 
-    def main(self, *args: Any, **kwargs: Any) -> Any:  # noqa: D102
+    def main(self, *args: Any, **kwargs: Any) -> Any:
         kwargs["standalone_mode"] = False
         try:
             code = super().main(*args, **kwargs)
@@ -57,7 +57,8 @@ def _guard(case: str, work: Callable[[], int]) -> int:
     except SieveError as error:
         _fail(f"{case}: {error}")
     except OSError as error:
-        _fail(f"{error.filename or case}: {error.strerror or error}, expected a readable file and a writable directory")
+        what = f"{error.filename or case}: {error.strerror or error}"
+        _fail(f"{what}, expected a readable file and a writable directory")
     return BAD_INPUT
 
 
@@ -72,10 +73,14 @@ def main() -> None:
 
 def _common(command: Callable[..., Any]) -> Callable[..., Any]:
     for option in (
-        click.option("--json", "as_json", is_flag=True, help="One JSON document on standard output, nothing else."),
+        click.option(
+            "--json", "as_json", is_flag=True, help="One JSON document on standard output, nothing else."
+        ),
         click.option("-v", "--verbose", is_flag=True, help="Say what is being done, on standard error."),
         click.option("--jobs", type=click.IntRange(0, 256), default=0, help="Processes (0: all cores)."),
-        click.option("--store", type=click.Path(dir_okay=False), help="File that keeps local data between runs."),
+        click.option(
+            "--store", type=click.Path(dir_okay=False), help="File that keeps local data between runs."
+        ),
     ):
         command = option(command)
     return command
@@ -91,17 +96,28 @@ def _bound(value: int | None, option: str = "--bound") -> int | None:
 @click.argument("case")
 @click.option("-c", "--candidates", multiple=True, help="A candidate file (once for each Chabauty prime).")
 @click.option("-o", "--output", help="Directory for result.json, proof.jsonl, report.txt (default NAME.out).")
-@click.option("--bound", type=int, help="Use auxiliary primes below this (default: grows until all is decided).")
+@click.option(
+    "--bound", type=int, help="Use auxiliary primes below this (default: grows until all is decided)."
+)
 @click.option("--primes", help="Use exactly these auxiliary primes, separated by commas.")
 @click.option("--time", "seconds", type=float, help="Start no new local data after this many seconds.")
 @_common
 def run(
-    case: str, candidates: tuple[str, ...], output: str | None, bound: int | None, primes: str | None,
-    seconds: float | None, as_json: bool, verbose: bool, jobs: int, store: str | None,
+    case: str,
+    candidates: tuple[str, ...],
+    output: str | None,
+    bound: int | None,
+    primes: str | None,
+    seconds: float | None,
+    as_json: bool,
+    verbose: bool,
+    jobs: int,
+    store: str | None,
 ) -> int:
     """Decide the candidates of CASE, or, without candidates, whether X(Q) is empty.
 
-    Exit code 0: every candidate is decided (without candidates: X(Q) is proved empty); 1: something stays open.
+    Exit code 0: every candidate is decided (without candidates: X(Q) is proved empty); 1: something stays
+    open.
     """
     progress = Progress(verbose)
 
@@ -117,7 +133,13 @@ def run(
         path = Path(store) if store else run_command.default_store(directory)
         with Store(path) as kept, workers(jobs) as executor:
             done = run_command.execute(
-                case, candidates, bound=limit, primes=wanted, seconds=seconds, store=kept, executor=executor,
+                case,
+                candidates,
+                bound=limit,
+                primes=wanted,
+                seconds=seconds,
+                store=kept,
+                executor=executor,
                 progress=progress,
             )
         result = run_command.write_files(done, directory)
@@ -138,7 +160,13 @@ def run(
 @click.option("--padic", multiple=True, help="P:N, coefficients of the known points at P with N digits.")
 @_common
 def inspect(
-    case: str, bound: int | None, primes: str | None, padic: tuple[str, ...], as_json: bool, verbose: bool, jobs: int,
+    case: str,
+    bound: int | None,
+    primes: str | None,
+    padic: tuple[str, ...],
+    as_json: bool,
+    verbose: bool,
+    jobs: int,
     store: str | None,
 ) -> int:
     """Check CASE: groups J(F_v), torsion, independence, saturation, coefficients of the known points."""
@@ -151,7 +179,13 @@ def inspect(
         try:
             with workers(jobs) as executor:
                 done = inspect_command.execute(
-                    case, bound=limit, primes=wanted, padic=padic, store=kept, executor=executor, progress=progress
+                    case,
+                    bound=limit,
+                    primes=wanted,
+                    padic=padic,
+                    store=kept,
+                    executor=executor,
+                    progress=progress,
                 )
         finally:
             if kept is not None:

@@ -23,8 +23,17 @@ def problem_of(resolved: ResolvedCase) -> Problem:
     """The mathematical problem behind a case."""
     case = resolved.case
     return Problem(
-        case.name, resolved.curve, resolved.base, resolved.generators, resolved.torsion, resolved.known_points,
-        case.rank, case.rank_source, case.index_prime_to, case.index_source, case.generators_from is not None,
+        case.name,
+        resolved.curve,
+        resolved.base,
+        resolved.generators,
+        resolved.torsion,
+        resolved.known_points,
+        case.rank,
+        case.rank_source,
+        case.index_prime_to,
+        case.index_source,
+        case.generators_from is not None,
     )
 
 
@@ -96,7 +105,7 @@ class StoredInvestigation:
     block: int = field(default=32)
 
     def gather(self, primes: Sequence[int]) -> bool:
-        """Add the primes, from the store where possible; records computed are saved at once, block by block."""
+        """Add the primes, from the store where possible; records computed are saved at once, by blocks."""
         inner = self.investigation
         key = ""
         if self.store is not None:

@@ -46,8 +46,14 @@ def parse_padic_option(text: str) -> tuple[int, int]:
 
 
 def execute(
-    case_path: str, *, bound: int | None = None, primes: Sequence[int] | None = None, padic: Sequence[str] = (),
-    store: Store | None = None, executor: Executor | None = None, progress: Progress | None = None,
+    case_path: str,
+    *,
+    bound: int | None = None,
+    primes: Sequence[int] | None = None,
+    padic: Sequence[str] = (),
+    store: Store | None = None,
+    executor: Executor | None = None,
+    progress: Progress | None = None,
 ) -> Inspection:
     """Compute everything that `sieve inspect` shows."""
     wanted_padic = [parse_padic_option(text) for text in padic]
@@ -60,7 +66,9 @@ def execute(
     places = []
     for p, n in wanted_padic:
         if not resolved.curve.is_smooth(p):
-            raise InputError("--padic", "", f"{p}, where the curve is not smooth", "a prime of good reduction")
+            raise InputError(
+                "--padic", "", f"{p}, where the curve is not smooth", "a prime of good reduction"
+            )
         places.append((p, n, chabauty_place(investigation, p, n, "--padic")))
     return Inspection(resolved, investigation, shown, places)
 
@@ -77,18 +85,36 @@ def document(inspection: Inspection) -> dict[str, Any]:
     for v in inspection.primes:
         record = investigation.records[v]
         if record.usable:
-            primes.append({
-                "prime": v, "points": record.points, "order": str(record.order),
-                "structure": [str(d) for d in record.invariants], "certified": True, "reason": record.reason,
-            })
+            primes.append(
+                {
+                    "prime": v,
+                    "points": record.points,
+                    "order": str(record.order),
+                    "structure": [str(d) for d in record.invariants],
+                    "certified": True,
+                    "reason": record.reason,
+                }
+            )
         elif curve.is_smooth(v):
-            primes.append({"prime": v, "points": record.points, "order": None, "structure": None, "certified": False, "reason": record.skipped})
+            primes.append(
+                {
+                    "prime": v,
+                    "points": record.points,
+                    "order": None,
+                    "structure": None,
+                    "certified": False,
+                    "reason": record.skipped,
+                }
+            )
     known = []
     for point, found in investigation.coordinates.items():
-        known.append({
-            "point": curve.format_point(point), "coefficients": [str(c) for c in found.coefficients],
-            "torsion": list(found.torsion),
-        })
+        known.append(
+            {
+                "point": curve.format_point(point),
+                "coefficients": [str(c) for c in found.coefficients],
+                "torsion": list(found.torsion),
+            }
+        )
     return {
         "genus": curve.genus,
         "equation": equation_text(curve),
@@ -102,7 +128,8 @@ def document(inspection: Inspection) -> dict[str, Any]:
         "not_saturated_at": [ell for ell in ells if ell not in saturated],
         "saturation": [
             {
-                "prime": ell, "proved": investigation.saturation_at(ell).proved,
+                "prime": ell,
+                "proved": investigation.saturation_at(ell).proved,
                 "reason": investigation.saturation_at(ell).reason,
                 "combination": investigation.saturation_at(ell).combination,
             }
@@ -110,7 +137,17 @@ def document(inspection: Inspection) -> dict[str, Any]:
         ],
         "known_points": known,
         "padic": [_padic_document(inspection, p, n, place) for p, n, place in inspection.padic],
-        "premises": [p.document() for p in hypothesis_premises(investigation, [e for e in ells if investigation.saturation_at(e).proved or e in investigation.problem.index_prime_to])],
+        "premises": [
+            p.document()
+            for p in hypothesis_premises(
+                investigation,
+                [
+                    e
+                    for e in ells
+                    if investigation.saturation_at(e).proved or e in investigation.problem.index_prime_to
+                ],
+            )
+        ],
     }
 
 
@@ -118,15 +155,22 @@ def _padic_document(inspection: Inspection, p: int, n: int, place: ChabautyPlace
     coefficients = []
     for point in inspection.resolved.known_points:
         found = place.coefficients_of_point(point)
-        coefficients.append({
-            "point": inspection.resolved.curve.format_point(point),
-            "coefficients": None if found is None else [str(c) for c in found],
-        })
+        coefficients.append(
+            {
+                "point": inspection.resolved.curve.format_point(point),
+                "coefficients": None if found is None else [str(c) for c in found],
+            }
+        )
     return {
-        "prime": p, "precision": min([log.precision for log in place.logs] or [n]),
+        "prime": p,
+        "precision": min([log.precision for log in place.logs] or [n]),
         "group": [str(d) for d in place.group.invariants],
         "coefficients": coefficients,
     }
+
+
+def _proved(value: bool) -> str:
+    return "proved" if value else "NOT proved"
 
 
 def text(inspection: Inspection) -> str:
@@ -136,17 +180,23 @@ def text(inspection: Inspection) -> str:
     lines = [
         f"Case {inspection.resolved.case.name}: {data['equation']}, genus {data['genus']}",
         f"Bad primes of this model: {', '.join(map(str, data['bad_primes'])) or 'none'}",
-        f"Torsion: order {data['torsion']['order']}, {'proved' if data['torsion']['proved'] else 'NOT proved'}",
+        f"Torsion: order {data['torsion']['order']}, " + _proved(data["torsion"]["proved"]),
     ]
     for i, divisor in enumerate(investigation.generators):
         name = f"D{i + 1}" if i < investigation.problem.rank else f"T{i + 1 - investigation.problem.rank}"
-        tail = "" if i < investigation.problem.rank else f"  (order {investigation.orders[i - investigation.problem.rank]})"
+        tail = (
+            ""
+            if i < investigation.problem.rank
+            else f"  (order {investigation.orders[i - investigation.problem.rank]})"
+        )
         lines.append(f"  {name} = {divisor_text(curve, divisor)}{tail}")
-    lines.append(f"Independent: {'proved' if data['independent'] else 'NOT proved'}")
+    lines.append(f"Independent: {_proved(data['independent'])}")
     lines.append("Saturated at l = " + (", ".join(map(str, data["saturated_at"])) or "none"))
     for row in data["saturation"]:
         if not row["proved"]:
-            combination = "" if row["combination"] is None else f" ({', '.join(map(str, row['combination']))})"
+            combination = (
+                "" if row["combination"] is None else f" ({', '.join(map(str, row['combination']))})"
+            )
             lines.append(f"  not proved at {row['prime']}: {row['reason']}{combination}")
     lines.append("")
     lines.append(f"{'v':>6} {'#X(F_v)':>8} {'#J(F_v)':>14}  J(F_v)")
@@ -162,8 +212,11 @@ def text(inspection: Inspection) -> str:
             tail = f"  torsion {row['torsion']}" if row["torsion"] else ""
             lines.append(f"  {row['point']}: ({', '.join(row['coefficients'])}){tail}")
     for row in data["padic"]:
-        lines += ["", f"p = {row['prime']}: J(F_p) = {structure_text([int(d) for d in row['group']])}, {row['precision']} digits known"]
+        group = structure_text([int(d) for d in row["group"]])
+        lines += ["", f"p = {row['prime']}: J(F_p) = {group}, {row['precision']} digits known"]
         for entry in row["coefficients"]:
-            shown = "dependent logarithms" if entry["coefficients"] is None else "; ".join(entry["coefficients"])
+            shown = (
+                "dependent logarithms" if entry["coefficients"] is None else "; ".join(entry["coefficients"])
+            )
             lines.append(f"  {entry['point']}: {shown}")
     return "\n".join(lines) + "\n"

@@ -19,23 +19,44 @@ def hypothesis_premises(investigation: Investigation, ells: list[int]) -> list[P
     for t in investigation.orders:
         order *= t
     if investigation.torsion_proved():
-        out.append(Premise("torsion", "proved", f"J(Q) has {order} torsion points", "", _torsion_primes(investigation)))
+        out.append(
+            Premise(
+                "torsion", "proved", f"J(Q) has {order} torsion points", "", _torsion_primes(investigation)
+            )
+        )
     for ell in ells:
         saturation = investigation.saturation_at(ell)
         if saturation.proved:
-            out.append(Premise(
-                f"saturated at {ell}", "proved", f"{ell} does not divide the index [J(Q) : G]", "", saturation.primes
-            ))
+            out.append(
+                Premise(
+                    f"saturated at {ell}",
+                    "proved",
+                    f"{ell} does not divide the index [J(Q) : G]",
+                    "",
+                    saturation.primes,
+                )
+            )
         elif ell in problem.index_prime_to:
-            out.append(Premise(
-                f"saturated at {ell}", "assumed", f"{ell} does not divide the index [J(Q) : G]", problem.index_source
-            ))
+            out.append(
+                Premise(
+                    f"saturated at {ell}",
+                    "assumed",
+                    f"{ell} does not divide the index [J(Q) : G]",
+                    problem.index_source,
+                )
+            )
     proved = [ell for ell in ells if investigation.saturation_at(ell).proved]
     if proved and problem.rank:
-        out.insert(1, Premise(
-            "independence", "proved", "the free generators are independent", "",
-            investigation.saturation_at(proved[-1]).primes,
-        ))
+        out.insert(
+            1,
+            Premise(
+                "independence",
+                "proved",
+                "the free generators are independent",
+                "",
+                investigation.saturation_at(proved[-1]).primes,
+            ),
+        )
     return out
 
 
@@ -63,14 +84,19 @@ def premises_of(run: Run) -> list[Premise]:
     for file in run.files:
         statement = (
             f"every rational point of X is near one of the {len(file.candidates)} candidates at {file.prime}"
-            if file.complete else f"the {len(file.candidates)} candidates at {file.prime} are as stated"
+            if file.complete
+            else f"the {len(file.candidates)} candidates at {file.prime} are as stated"
         )
         if file.complete:
             out.append(Premise(f"complete at {file.prime}", "assumed", statement, file.source))
         for candidate in file.candidates:
             if candidate.at_most is not None:
-                out.append(Premise(
-                    f"bound in {candidate.id} at {file.prime}", "assumed",
-                    f"at most {candidate.at_most} rational points are near {candidate.id}", file.source,
-                ))
+                out.append(
+                    Premise(
+                        f"bound in {candidate.id} at {file.prime}",
+                        "assumed",
+                        f"at most {candidate.at_most} rational points are near {candidate.id}",
+                        file.source,
+                    )
+                )
     return out

@@ -26,17 +26,32 @@ from sieve.engine.verdicts import (
 )
 from sieve.errors import BadReduction, InputError, PrecisionLost, Uncertified
 from sieve.exact.primes import primes_below
-from sieve.files.candidates import CandidateFile, check_candidates, disc_residues, load_candidates, model_coordinates
+from sieve.files.candidates import (
+    CandidateFile,
+    check_candidates,
+    disc_residues,
+    load_candidates,
+    model_coordinates,
+)
 from sieve.files.case import load_case
 from sieve.files.notation_out import divisor_document
 from sieve.files.resolve import ResolvedCase, read_case
-from sieve.files.result import LocalGroup, Result, Survivors, Verdict, json_text, make_directory, write_result, write_whole
+from sieve.files.result import (
+    LocalGroup,
+    Result,
+    Survivors,
+    Verdict,
+    json_text,
+    make_directory,
+    write_result,
+    write_whole,
+)
 from sieve.files.store import Store
 from sieve.local.chabauty import ChabautyPlace, LocatedCandidate
 from sieve.report.text import report_text
 
 SEARCH_HEIGHT = 200
-"""Rational points up to this height of x are looked for, to recognise candidates that the case does not list."""
+"""Rational points up to this height of x are looked for, to recognise candidates not listed in the case."""
 
 
 def default_stages(genus: int) -> list[int]:
@@ -88,20 +103,38 @@ def locate(place: ChabautyPlace, file: CandidateFile) -> list[LocatedCandidate]:
                 disc, parameter, digits = place.integrals.parameter_of_padic(x, y, z)
             except ValueError as error:
                 raise c.origin.at("point", ".").error(str(error), "a p-adic point of the curve") from None
-            out.append(LocatedCandidate(
-                c.id, "point", disc, parameter, digits, (x, y, z), multiplicity=c.multiplicity, at_most=c.at_most
-            ))
+            out.append(
+                LocatedCandidate(
+                    c.id,
+                    "point",
+                    disc,
+                    parameter,
+                    digits,
+                    (x, y, z),
+                    multiplicity=c.multiplicity,
+                    at_most=c.at_most,
+                )
+            )
             continue
         disc_number = None
         if c.disc is not None:
             disc_number = place.group.curve.index_of(*disc_residues(place.curve, c))
         if c.kind == "disc":
-            out.append(LocatedCandidate(c.id, "disc", disc_number, multiplicity=c.multiplicity, at_most=c.at_most))
+            out.append(
+                LocatedCandidate(c.id, "disc", disc_number, multiplicity=c.multiplicity, at_most=c.at_most)
+            )
         else:
-            out.append(LocatedCandidate(
-                c.id, "coefficients", disc_number, coefficients=c.coefficients, torsion=c.torsion,
-                multiplicity=c.multiplicity, at_most=c.at_most,
-            ))
+            out.append(
+                LocatedCandidate(
+                    c.id,
+                    "coefficients",
+                    disc_number,
+                    coefficients=c.coefficients,
+                    torsion=c.torsion,
+                    multiplicity=c.multiplicity,
+                    at_most=c.at_most,
+                )
+            )
     return out
 
 
@@ -118,8 +151,14 @@ def chabauty_place(investigation: Investigation, p: int, digits: int, name: str)
 
 
 def execute(
-    case_path: str, candidate_paths: Sequence[str], *, bound: int | None = None, primes: Sequence[int] | None = None,
-    seconds: float | None = None, store: Store | None = None, executor: Executor | None = None,
+    case_path: str,
+    candidate_paths: Sequence[str],
+    *,
+    bound: int | None = None,
+    primes: Sequence[int] | None = None,
+    seconds: float | None = None,
+    store: Store | None = None,
+    executor: Executor | None = None,
     progress: Progress | None = None,
 ) -> Run:
     """Everything `sieve run` computes; writes nothing but the store."""
@@ -190,19 +229,26 @@ def statement(run: Run) -> str:
             return "X(Q) is empty."
         count = run.outlook.outcome.relation.count if run.outlook else 0
         index = run.outlook.outcome.relation.index if run.outlook else 1
-        return f"Every rational point of X has one of {count} classes modulo a subgroup of index {index} of the known group."
+        where = f"modulo a subgroup of index {index} of the known group"
+        return f"Every rational point of X has one of {count} classes {where}."
     eliminated = sum(d.verdict == "eliminated" for d in run.decisions)
     left = [d for d in run.decisions if d.verdict == "open"]
     points = rational_points(run)
     shown = ", ".join(curve.format_point(p) for p in points)
     complete = [listing for listing in run.lists if listing.complete]
     decided = [
-        listing for listing in complete
-        if all(d.verdict != "open" and (d.verdict != "rational" or d.sole) for d in run.decisions if d.prime == listing.place.prime)
+        listing
+        for listing in complete
+        if all(
+            d.verdict != "open" and (d.verdict != "rational" or d.sole)
+            for d in run.decisions
+            if d.prime == listing.place.prime
+        )
     ]
     if decided:
         p = decided[0].place.prime
-        return f"X(Q) has exactly {len(points)} points: {shown}. (The {p}-adic list is complete and every candidate in it is decided.)"
+        why = f"(The {p}-adic list is complete and every candidate in it is decided.)"
+        return f"X(Q) has exactly {len(points)} points: {shown}. {why}"
     text = f"{eliminated} candidates are proved not to be rational."
     if left:
         text += f" {len(left)} stay open."
@@ -224,14 +270,19 @@ def result_of(run: Run) -> Result:
     curve = run.resolved.curve
     verdicts = tuple(
         Verdict(
-            d.prime, d.id, d.verdict, d.reason, d.primes,  # type: ignore[arg-type]
-            curve.format_point(d.points[0]) if d.points else "", d.given, d.sole, d.hint,
+            d.prime,
+            d.id,
+            d.verdict,
+            d.reason,
+            d.primes,
+            curve.format_point(d.points[0]) if d.points else "",
+            d.given,
+            d.sole,
+            d.hint,
         )
         for d in run.decisions
     )
-    local = tuple(
-        LocalGroup(r.prime, r.points, r.order, r.invariants) for r in run.investigation.usable
-    )
+    local = tuple(LocalGroup(r.prime, r.points, r.order, r.invariants) for r in run.investigation.usable)
     survivors = None
     if run.outlook is not None:
         relation = run.outlook.outcome.relation
@@ -240,7 +291,13 @@ def result_of(run: Run) -> Result:
         survivors = Survivors(relation.index, relation.count, vectors, value)
     points = tuple(curve.format_point(p) for p in rational_points(run))
     return Result(
-        run.resolved.case.name, run.resolved.case.sha256, verdicts, tuple(premises_of(run)), local, survivors, points,
+        run.resolved.case.name,
+        run.resolved.case.sha256,
+        verdicts,
+        tuple(premises_of(run)),
+        local,
+        survivors,
+        points,
         statement(run),
     )
 
@@ -248,26 +305,54 @@ def result_of(run: Run) -> Result:
 def trace_lines(run: Run) -> str:
     """A plain trace of the run as JSON lines: header, local groups, plan, fates."""
     curve = run.resolved.curve
-    lines: list[object] = [{
-        "record": "header", "program": f"residue-sieve {__version__}", "curve": {"f": curve.f, "h": curve.h},
-        "generators": [divisor_document(curve, d) for d in run.investigation.generators],
-        "torsion_orders": run.investigation.orders,
-        "candidate_files": [{"prime": f.prime, "sha256": f.sha256, "source": f.source} for f in run.files],
-    }]
+    lines: list[object] = [
+        {
+            "record": "header",
+            "program": f"residue-sieve {__version__}",
+            "curve": {"f": curve.f, "h": curve.h},
+            "generators": [divisor_document(curve, d) for d in run.investigation.generators],
+            "torsion_orders": run.investigation.orders,
+            "candidate_files": [
+                {"prime": f.prime, "sha256": f.sha256, "source": f.source} for f in run.files
+            ],
+        }
+    ]
     for record in run.investigation.usable:
-        lines.append({
-            "record": "local", "prime": record.prime, "points": record.points, "structure": record.invariants,
-            "images": run.investigation.images(record), "certified": record.reason,
-        })
+        lines.append(
+            {
+                "record": "local",
+                "prime": record.prime,
+                "points": record.points,
+                "structure": record.invariants,
+                "images": run.investigation.images(record),
+                "certified": record.reason,
+            }
+        )
     for record in run.investigation.skipped:
         lines.append({"record": "skipped", "prime": record.prime, "reason": record.skipped})
     for step in run.steps:
-        lines.append({
-            "record": "step", "kind": step.kind, "condition": step.name, "exponents": step.exponents,
-            "predicted": float(f"{step.predicted:.6g}"), "actual": step.actual, "index": str(step.index),
-        })
+        lines.append(
+            {
+                "record": "step",
+                "kind": step.kind,
+                "condition": step.name,
+                "exponents": step.exponents,
+                "predicted": float(f"{step.predicted:.6g}"),
+                "actual": step.actual,
+                "index": str(step.index),
+            }
+        )
     for d in run.decisions:
-        lines.append({"record": "fate", "prime": d.prime, "id": d.id, "verdict": d.verdict, "primes": d.primes, "reason": d.reason})
+        lines.append(
+            {
+                "record": "fate",
+                "prime": d.prime,
+                "id": d.id,
+                "verdict": d.verdict,
+                "primes": d.primes,
+                "reason": d.reason,
+            }
+        )
     return "".join(json.dumps(line, separators=(",", ":")) + "\n" for line in lines)
 
 

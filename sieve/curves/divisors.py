@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 
 Point = tuple[int, int, int]
-"""A rational point in weighted coordinates (X : Y : Z), X and Z coprime, the first nonzero of Z, X positive."""
+"""A rational point, weighted coordinates (X : Y : Z), X and Z coprime, the first nonzero of Z, X positive."""
 
 
 @dataclass(frozen=True, order=True)
@@ -26,8 +26,8 @@ class RationalPlace:
 class MumfordPlace:
     """The effective divisor u(x) = 0, y = w(x) in its Mumford representation.
 
-    Coefficients low degree first; u monic of degree >= 1, deg w < deg u, u divides w^2 + h w - f.  It need not be
-    irreducible; on a smooth curve its degree is deg u.
+    Coefficients low degree first; u monic of degree >= 1, deg w < deg u, u divides w^2 + h w - f.  It need
+    not be irreducible; on a smooth curve its degree is deg u.
     """
 
     u: tuple[Fraction, ...]

@@ -45,7 +45,8 @@ class HyperellipticCurve:
     y is (model y) / y_scale, so that points can be read and printed in the user's coordinates.
     Raises `SingularCurve` if 4 f + h^2 is not squarefree, `ValueError` if the genus is below 2.
 
-    Coordinates are weighted (X : Y : Z) with weights 1, g+1, 1; at infinity (1 : s : 0) with s^2 + h_{g+1} s = f_{2g+2}.
+    Coordinates are weighted (X : Y : Z) with weights 1, g+1, 1; at infinity (1 : s : 0) with s^2 + h_{g+1}
+    s = f_{2g+2}.
 
     >>> curve = HyperellipticCurve([1, -2, 1, 2, 2, 4, 1], [])
     >>> curve.genus, curve.contains((1, 1, 0)), curve.contains((0, -1, 1))
@@ -71,11 +72,13 @@ class HyperellipticCurve:
         self.square_form: Coefficients = tuple(int(c) for c in square.coeffs())
 
     @staticmethod
-    def from_rational(f: Sequence[Fraction], h: Sequence[Fraction] = (), y_scale: Fraction = Fraction(1)) -> HyperellipticCurve:
-        """The integral model of a curve with rational coefficients: y is replaced by d y, d as small as possible.
+    def from_rational(
+        f: Sequence[Fraction], h: Sequence[Fraction] = (), y_scale: Fraction = Fraction(1)
+    ) -> HyperellipticCurve:
+        """The integral model of a curve with rational coefficients: y becomes d y, d as small as possible.
 
-        Arguments: coefficients low degree first of an equation in which the user's y has already been multiplied by
-        `y_scale`.  Returns the curve with the total scale recorded in `y_scale`.
+        Arguments: coefficients low degree first of an equation in which the user's y has already been
+        multiplied by `y_scale`.  Returns the curve with the total scale recorded in `y_scale`.
         """
         d = lcm(1, *[c.denominator for c in h])
         for c in f:
@@ -166,10 +169,12 @@ class HyperellipticCurve:
     def closed_point(
         self, modulus: Sequence[Fraction], x: Sequence[Fraction], y: Sequence[Fraction], z: Sequence[Fraction]
     ) -> Place:
-        """The divisor of all conjugates of (x(t) : y(t) : z(t)), t a root of the squarefree `modulus` (model coordinates).
+        """The divisor of all conjugates of (x(t) : y(t) : z(t)), t a root of `modulus` (model coordinates).
 
-        Raises `ValueError` when the point is not on the curve or when z is a zero divisor but not zero modulo `modulus`.
+        Raises `ValueError` when the point is not on the curve or when z is a zero divisor but not zero
+        modulo `modulus`.
         """
+
         def poly(c: Sequence[Fraction]) -> flint.fmpq_poly:
             return flint.fmpq_poly([flint.fmpq(Fraction(a).numerator, Fraction(a).denominator) for a in c])
 
@@ -249,9 +254,9 @@ class HyperellipticCurve:
     def two_torsion_dimension(self) -> int | None:
         """dim J(Q)[2] over F_2, from the factors of 4 f + h^2, or None where these do not tell.
 
-        J[2] is the group of subsets of even size of the 2 g + 2 branch points modulo complements.  An invariant class
-        is an invariant subset, or one that is exchanged with its complement; the latter has g + 1 points, so g must be
-        odd and no factor of odd degree may exist (Mumford 1984, chapter IIIa).
+        J[2] is the group of subsets of even size of the 2 g + 2 branch points modulo complements.  An
+        invariant class is an invariant subset, or one that is exchanged with its complement; the latter has
+        g + 1 points, so g must be odd and no factor of odd degree may exist (Mumford 1984, chapter IIIa).
         """
         degrees = [int(q.degree()) for q, e in flint.fmpz_poly(list(self.square_form)).factor()[1]]
         if sum(degrees) == 2 * self.genus + 1:

@@ -1,9 +1,9 @@
 """y^2 + h(x) y = f(x) over a prime field: points, sections y = c(x) and the divisors they cut.
 
-A section of multiple m is a function y - c(x) with deg c <= m and m >= g + 1; its zeros have degree 2 m and the
-class m U, where U is the class of a fibre of x.  The norm c^2 + h c - f, read as a form of degree 2 m, carries the
-zeros with their multiplicities: at every place above a factor q of the norm at most one of the two conjugate
-points is a zero, and the order of y - c there equals the order of q in the norm.
+A section of multiple m is a function y - c(x) with deg c <= m and m >= g + 1; its zeros have degree 2 m and
+the class m U, where U is the class of a fibre of x.  The norm c^2 + h c - f, read as a form of degree 2 m,
+carries the zeros with their multiplicities: at every place above a factor q of the norm at most one of the
+two conjugate points is a zero, and the order of y - c there equals the order of q in the norm.
 """
 
 from __future__ import annotations
@@ -40,11 +40,14 @@ def smooth_modulo(f: Sequence[int], h: Sequence[int], genus: int, v: int) -> boo
     Odd v: 4 f + h^2 as a form of degree 2 g + 2 has no repeated root.  v = 2: a singular point has h = 0 and
     h' y = f', so h and h'^2 f - f'^2 must have no common root, in both charts.
     """
+
     def poly(c: Sequence[int]) -> flint.nmod_poly:
         return flint.nmod_poly([a % v for a in c], v)
 
     if v != 2:
-        square = poly([int(c) for c in (flint.fmpz_poly(list(h)) ** 2 + 4 * flint.fmpz_poly(list(f))).coeffs()])
+        square = poly(
+            [int(c) for c in (flint.fmpz_poly(list(h)) ** 2 + 4 * flint.fmpz_poly(list(f))).coeffs()]
+        )
         return square.degree() >= 2 * genus + 1 and square.gcd(square.derivative()).degree() == 0
     full_f = list(f) + [0] * (2 * genus + 3 - len(f))
     full_h = list(h) + [0] * (genus + 2 - len(h))
@@ -60,9 +63,9 @@ def smooth_modulo(f: Sequence[int], h: Sequence[int], genus: int, v: int) -> boo
 class ReducedHyperelliptic:
     """A smooth curve y^2 + h y = f over F_v with all its F_v-points (v < 2^30).
 
-    Points are numbered: affine ones by x then y, then the points at infinity by s.  `orbit`, `sign`, `fibre` give
-    for every point P its class as sign * (class of the orbit's first point) + fibre * U: conjugate points share an
-    orbit, since P + (its conjugate) is a fibre.
+    Points are numbered: affine ones by x then y, then the points at infinity by s.  `orbit`, `sign`,
+    `fibre` give for every point P its class as sign * (class of the orbit's first point) + fibre * U:
+    conjugate points share an orbit, since P + (its conjugate) is a fibre.
     """
 
     unit_degree = 2
@@ -90,7 +93,9 @@ class ReducedHyperelliptic:
         fx, hx = self._evaluate(self.f, x), self._evaluate(self.h, x)
         lead_f, lead_h = self.f[2 * g + 2], self.h[g + 1]
         if v == 2:
-            pairs = [(a, b) for a in range(2) for b in range(2) if (b * b + int(hx[a]) * b - int(fx[a])) % 2 == 0]
+            pairs = [
+                (a, b) for a in range(2) for b in range(2) if (b * b + int(hx[a]) * b - int(fx[a])) % 2 == 0
+            ]
             self.x = np.array([a for a, _ in pairs], dtype=np.int64)
             self.y = np.array([b for _, b in pairs], dtype=np.int64)
             infinite = [s for s in range(2) if (s * s + lead_h * s - lead_f) % 2 == 0]
@@ -113,7 +118,11 @@ class ReducedHyperelliptic:
             self.y = low[order]
             self.y[starts[both] + 1] = high[both]
             r_inf = int(root[(lead_h * lead_h + 4 * lead_f) % v])
-            infinite = [] if r_inf < 0 else sorted({(r_inf - lead_h) * inverse_two % v, (-r_inf - lead_h) * inverse_two % v})
+            infinite = (
+                []
+                if r_inf < 0
+                else sorted({(r_inf - lead_h) * inverse_two % v, (-r_inf - lead_h) * inverse_two % v})
+            )
         self.infinite: list[int] = infinite
         self.affine_count = len(self.x)
         self.count = self.affine_count + len(infinite)
@@ -128,7 +137,10 @@ class ReducedHyperelliptic:
         partner[index[same_next]] = index[same_next] + 1
         partner[index[same_next] + 1] = index[same_next]
         if len(infinite) == 2:
-            partner[self.affine_count], partner[self.affine_count + 1] = self.affine_count + 1, self.affine_count
+            partner[self.affine_count], partner[self.affine_count + 1] = (
+                self.affine_count + 1,
+                self.affine_count,
+            )
         self.partner = partner
         everyone = np.arange(self.count, dtype=np.int64)
         leader = np.minimum(everyone, partner)
@@ -180,16 +192,18 @@ class ReducedHyperelliptic:
 
     def usable(self, choice: IntArray) -> NDArray[np.bool_]:
         """Which rows of `choice` (point numbers, shape (T, g+2)) are affine points with distinct x."""
-        xs = np.sort(np.where(choice < self.affine_count, self.x[np.minimum(choice, self.affine_count - 1)], 0), axis=1)
+        xs = np.sort(
+            np.where(choice < self.affine_count, self.x[np.minimum(choice, self.affine_count - 1)], 0), axis=1
+        )
         affine = (choice < self.affine_count).all(axis=1)
         return affine & (xs[:, 1:] != xs[:, :-1]).all(axis=1)
 
     def residuals(self, choice: IntArray) -> IntArray:
         """The g remaining zeros of the section y = c(x) through given points.
 
-        Arguments: `choice`, int64, shape (T, g+2), point numbers accepted by `usable`; v odd, v < 2^29 / (g + 2).
-        Returns int64, shape (T, g): point numbers (repeated when the contact is higher), or -1 all along a row
-        whose remaining zeros are not all rational (genus >= 3: not all rational and distinct).
+        Arguments: `choice`, int64, shape (T, g+2), point numbers accepted by `usable`; v odd, v < 2^29 / (g
+        + 2). Returns int64, shape (T, g): point numbers (repeated when the contact is higher), or -1 all
+        along a row whose remaining zeros are not all rational (genus >= 3: not all rational and distinct).
         """
         v, g = self.prime, self.genus
         m = g + 2
@@ -204,11 +218,19 @@ class ReducedHyperelliptic:
             newton.append(difference[0])
         c = [newton[m - 1]]
         for k in range(m - 2, -1, -1):
-            c = [(newton[k] - c[0] * x[k]) % v] + [(c[i - 1] - c[i] * x[k]) % v for i in range(1, len(c))] + [c[-1]]
+            c = (
+                [(newton[k] - c[0] * x[k]) % v]
+                + [(c[i - 1] - c[i] * x[k]) % v for i in range(1, len(c))]
+                + [c[-1]]
+            )
         product = [(-x[0]) % v]
         for k in range(1, m):
             low = (-product[0] * x[k]) % v
-            product = [low] + [(product[i - 1] - product[i] * x[k]) % v for i in range(1, k)] + [(product[k - 1] - x[k]) % v]
+            product = (
+                [low]
+                + [(product[i - 1] - product[i] * x[k]) % v for i in range(1, k)]
+                + [(product[k - 1] - x[k]) % v]
+            )
         rest: list[IntArray] = [c[0]] * (g + 1)
         for k in range(g, -1, -1):
             i = m + k
@@ -283,7 +305,7 @@ class ReducedHyperelliptic:
                 value = (value * places + coefficient[part, None]) % v
             zero = value == 0
             at_infinity = (rest[g][part] == 0).astype(np.int64)
-            good = np.flatnonzero((zero.sum(axis=1) + at_infinity == g))
+            good = np.flatnonzero(zero.sum(axis=1) + at_infinity == g)
             for wanted in (0, 1):
                 rows = good[at_infinity[good] == wanted]
                 if len(rows):
@@ -367,10 +389,12 @@ class ReducedHyperelliptic:
         """All w of degree < deg u with w^2 + h w = f modulo the irreducible u."""
         modulus = flint.fmpz_mod_poly_ctx(self.prime)([int(a) for a in u.coeffs()])
         field = flint.fq_default_ctx(modulus=modulus) if u.degree() > 1 else flint.fq_default_ctx(self.prime)
-        def element(p: flint.nmod_poly) -> flint.fq_default:
-            return field([int(a) for a in (p % u).coeffs()])
 
-        quadratic = flint.fq_default_poly_ctx(field)([-element(self._fp), element(self._hp), field(1)])
+        def element(p: flint.nmod_poly) -> flint.fq_default:
+            return field(flint.fmpz_poly([int(a) for a in (p % u).coeffs()]))
+
+        w = flint.fq_default_poly_ctx(field).gen()
+        quadratic = w * w + w * element(self._hp) - element(self._fp)
         out = []
         for root, _ in quadratic.roots():
             coefficients = [int(a) for a in root.to_list()]
@@ -399,8 +423,10 @@ class ReducedHyperelliptic:
             self._collect(factor, w, int(multiplicity), points, places)
         return LocalDivisor(0, tuple(sorted(points)), tuple(sorted(places)))
 
-    def substitute(self, place: HigherPlace, rng: np.random.Generator) -> tuple[flint.nmod_poly, LocalDivisor] | None:
-        """A section through a place of degree >= 2 and its whole divisor, other zeros of lower degree or random.
+    def substitute(
+        self, place: HigherPlace, rng: np.random.Generator
+    ) -> tuple[flint.nmod_poly, LocalDivisor] | None:
+        """A section through a place of degree >= 2 and its whole divisor.
 
         Returns (c, divisor of y - c), the place included in the divisor; None when no suitable points exist.
         """
@@ -421,7 +447,10 @@ class ReducedHyperelliptic:
             if not missing:
                 break
             chosen[missing[int(rng.integers(len(missing)))]] = int(rng.integers(self.prime))
-        values = [(a, (b - int(w(a))) * pow(int(u(a)), -1, self.prime) % self.prime) for a, b in sorted(chosen.items())]
+        values = [
+            (a, (b - int(w(a))) * pow(int(u(a)), -1, self.prime) % self.prime)
+            for a, b in sorted(chosen.items())
+        ]
         c = w + u * self.interpolate(values)
         return c, self.section_divisor(c)
 
@@ -453,7 +482,7 @@ class ReducedHyperelliptic:
 
 
 def _inverse_table(v: int) -> IntArray:
-    """Inverses of 1 .. v-1 modulo the prime v, by powers of a generator-free recursion: exponentiation, vectorised."""
+    """Inverses of 1 .. v-1 modulo the prime v, as powers with exponent v - 2, vectorised."""
     base = np.arange(1, v, dtype=np.int64)
     result = np.ones_like(base)
     exponent = v - 2

@@ -32,10 +32,11 @@ def _form(coefficients: tuple[int, ...], degree: int, a: int, b: int) -> int:
 
 
 def search_points(curve: HyperellipticCurve, height: int) -> list[Point]:
-    """All rational points with x = a/b, |a|, b <= height, and those at infinity; sorted by height of x, then value.
+    """All rational points with x = a/b, |a|, b <= height, and those at infinity; by height of x, then value.
 
-    Arguments: `height` >= 1, at most 10^6.  Residues of 4 f + h^2 modulo five small moduli sift the x-coordinates
-    (int64, all products below 2^20); what is left is tested exactly.  Cost about 2 height^2 residue evaluations.
+    Arguments: `height` >= 1, at most 10^6.  Residues of 4 f + h^2 modulo five small moduli sift the
+    x-coordinates (int64, all products below 2^20); what is left is tested exactly.  Cost about 2 height^2
+    residue evaluations.
     """
     degree = 2 * curve.genus + 2
     tables = [(m, _square_table(m), [c % m for c in curve.square_form]) for m in _MODULI]

@@ -1,8 +1,8 @@
 """Coordinates of known points in the given generators, and generators from known points.
 
-The combinations of given divisor classes that vanish in many J(F_v) form a lattice of enormous index in which the
-true relations stand out as very short vectors.  Nothing found here is a premise of a verdict: coordinates serve
-as checks of the data, and generators found this way are divisors like any others.
+The combinations of given divisor classes that vanish in many J(F_v) form a lattice of enormous index in
+which the true relations stand out as very short vectors.  Nothing found here is a premise of a verdict:
+coordinates serve as checks of the data, and generators found this way are divisors like any others.
 """
 
 from __future__ import annotations
@@ -21,11 +21,14 @@ SEPARATION = 1000
 """How many times shorter than a vector of the lattice should be by chance a relation must be."""
 
 
-def vanishing_lattice(size: int, functionals: Sequence[tuple[int, Sequence[int]]]) -> tuple[list[list[int]], bool]:
+def vanishing_lattice(
+    size: int, functionals: Sequence[tuple[int, Sequence[int]]]
+) -> tuple[list[list[int]], bool]:
     """The integer vectors of length `size` on which all functionals vanish, as an LLL-reduced basis.
 
     Arguments: pairs (modulus, coefficients).  The second value says that the later half of the functionals
-    (at least 8) cut nothing off any more: then the group in question is finite and the lattice is all relations.
+    (at least 8) cut nothing off any more: then the group in question is finite and the lattice is all
+    relations.
     """
     basis = [[int(i == j) for j in range(size)] for i in range(size)]
     last_cut = 0
@@ -61,7 +64,7 @@ def _lll(rows: Sequence[Sequence[int]]) -> list[list[int]]:
 
 
 def true_relations(basis: Sequence[Sequence[int]], settled: bool) -> list[list[int]]:
-    """The reduced basis vectors that are far shorter than chance allows: those before the first gap in length.
+    """The reduced basis vectors far shorter than chance allows: those before the first gap in length.
 
     A gap is a factor `SEPARATION`; before the first vector a length of 1 counts.  All of them when `settled`.
     """
@@ -74,13 +77,13 @@ def true_relations(basis: Sequence[Sequence[int]], settled: bool) -> list[list[i
         if length > SEPARATION * previous:
             return [list(r) for r in ordered[:k]]
         previous = length
-    # no gap: everything is short, or there are too few functionals; the caller asked for more primes than that
+    # no gap: everything is short, or there are too few functionals
     return []
 
 
 @dataclass(frozen=True)
 class PointCoordinates:
-    """denominator * [P - B] = sum free[i] D_i + sum torsion[j] T_j; the denominator is 1 for points of the group."""
+    """denominator * [P - B] = sum free[i] D_i + sum torsion[j] T_j; denominator 1 for points of the group."""
 
     free: tuple[int, ...]
     torsion: tuple[int, ...]
@@ -97,7 +100,9 @@ class PointCoordinates:
         return self.free + self.torsion
 
 
-def generator_relations(rank: int, orders: Sequence[int], functionals: Sequence[tuple[int, Sequence[int]]]) -> None:
+def generator_relations(
+    rank: int, orders: Sequence[int], functionals: Sequence[tuple[int, Sequence[int]]]
+) -> None:
     """Check that the generators satisfy no relation but the claimed orders.
 
     Raises `Inconsistent` naming the relation: dependent generators, or a torsion order that is wrong.
@@ -114,25 +119,23 @@ def generator_relations(rank: int, orders: Sequence[int], functionals: Sequence[
             text = (free + (" + " + tail if tail else "")).replace("+ -", "- ")
             raise Inconsistent(f"the generators are dependent: {text} = 0 in every group J(F_v) tried", text)
     for j, order in enumerate(orders):
-        vector = [0] * size
-        vector[rank + j] = order
-        for modulus, coefficients in functionals:
-            if order * coefficients[rank + j] % modulus:
-                raise Inconsistent(
-                    f"torsion generator no. {j + 1} does not have order {order}: {order} times it is not zero in a group J(F_v)",
-                    f"torsion generator no. {j + 1}",
-                )
+        name = f"torsion generator no. {j + 1}"
+        for modulus, values in functionals:
+            if order * values[rank + j] % modulus:
+                what = f"{order} times it is not zero in a group J(F_v)"
+                raise Inconsistent(f"{name} does not have order {order}: {what}", name)
     if orders:
         found = hermite([row[rank:] for row in relations]) if relations else []
         volume = 1
-        for i, row in enumerate(found):
-            volume *= row[i] if i < len(row) else 1
+        for i, line in enumerate(found):
+            volume *= line[i] if i < len(line) else 1
         claimed = 1
         for order in orders:
             claimed *= order
         if len(found) < len(orders) or volume != claimed:
+            order_found = volume if len(found) == len(orders) else "unknown"
             raise Inconsistent(
-                f"the torsion generators generate a group of order {volume if len(found) == len(orders) else 'unknown'}, "
+                f"the torsion generators generate a group of order {order_found}, "
                 f"their claimed orders give {claimed}",
                 "torsion",
             )
@@ -141,7 +144,7 @@ def generator_relations(rank: int, orders: Sequence[int], functionals: Sequence[
 def point_coordinates(
     rank: int, orders: Sequence[int], functionals: Sequence[tuple[int, Sequence[int]]]
 ) -> PointCoordinates | None:
-    """The coordinates of a class from its images: the last coefficient of every functional is the image of the class.
+    """The coordinates of a class; its image is the last coefficient of every functional.
 
     Arguments: functionals on r + s + 1 coordinates.  Returns None when no relation of small height with the
     generators exists.
@@ -158,15 +161,17 @@ def point_coordinates(
     vector = [-a for a in lead[1:]]
     torsion = [a % t for a, t in zip(vector[rank:], orders, strict=True)]
     free = vector[:rank]
-    return PointCoordinates(tuple(free), tuple(torsion) if denominator == 1 else tuple(vector[rank:]), denominator)
+    return PointCoordinates(
+        tuple(free), tuple(torsion) if denominator == 1 else tuple(vector[rank:]), denominator
+    )
 
 
 @dataclass(frozen=True)
 class PointBasis:
     """A basis of the group generated by given classes.
 
-    `free` and `torsion`: generators as integer combinations of the classes; `orders` of the torsion generators;
-    `coordinates`: for every class its free and torsion coordinates.
+    `free` and `torsion`: generators as integer combinations of the classes; `orders` of the torsion
+    generators; `coordinates`: for every class its free and torsion coordinates.
     """
 
     free: tuple[tuple[int, ...], ...]
@@ -178,8 +183,8 @@ class PointBasis:
 def basis_of_classes(size: int, functionals: Sequence[tuple[int, Sequence[int]]]) -> PointBasis:
     """A basis of the group generated by `size` classes, from their images in many J(F_v).
 
-    The quotient of Z^size by the relations splits into a free part and torsion (Smith form); the free coordinates
-    are made small over all classes together by lattice reduction.
+    The quotient of Z^size by the relations splits into a free part and torsion (Smith form); the free
+    coordinates are made small over all classes together by lattice reduction.
     """
     basis, settled = vanishing_lattice(size, functionals)
     relations = true_relations(basis, settled)
@@ -203,22 +208,27 @@ def basis_of_classes(size: int, functionals: Sequence[tuple[int, Sequence[int]]]
         for j in range(size)
     )
     return PointBasis(
-        tuple(tuple(g) for g in generators[: len(free)]), tuple(tuple(g) for g in generators[len(free) :]),
-        tuple(orders), coordinates,
+        tuple(tuple(g) for g in generators[: len(free)]),
+        tuple(tuple(g) for g in generators[len(free) :]),
+        tuple(orders),
+        coordinates,
     )
 
 
 def _smith(relations: Sequence[Sequence[int]], size: int) -> tuple[list[int], list[list[int]]]:
     """Diagonal and right transform of a full-rank k x size matrix: relations * V = U * diag.
 
-    Returns (d, V') where the class of e_j has coordinate V'[j][i] modulo d_i for i < k, and V'[j][i] in Z for i >= k.
+    Returns (d, V') where the class of e_j has coordinate V'[j][i] modulo d_i for i < k, and V'[j][i] in Z
+    for i >= k.
     """
     rows = [list(row) for row in relations]
     k = len(rows)
     right = [[int(i == j) for j in range(size)] for i in range(size)]
     for step in range(k):
         while True:
-            pivot = min((abs(rows[i][j]), i, j) for i in range(step, k) for j in range(step, size) if rows[i][j])
+            pivot = min(
+                (abs(rows[i][j]), i, j) for i in range(step, k) for j in range(step, size) if rows[i][j]
+            )
             _, i, j = pivot
             rows[step], rows[i] = rows[i], rows[step]
             for row in (*rows, *right):
@@ -244,7 +254,7 @@ def _smith(relations: Sequence[Sequence[int]], size: int) -> tuple[list[int], li
 def _preimage(
     free: Sequence[Sequence[int]], torsion: Sequence[Sequence[int]], orders: Sequence[int], which: int
 ) -> list[int]:
-    """A short integer vector x with (free, torsion mod orders) coordinates equal to the unit vector `which`."""
+    """A short integer vector with (free, torsion mod orders) coordinates equal to the unit vector `which`."""
     size = len(free[0]) if free else len(torsion[0])
     rows = list(free) + list(torsion)
     count = len(rows)
@@ -275,6 +285,12 @@ def common_denominator(points: Sequence[PointCoordinates]) -> int:
 
 
 __all__ = [
-    "PointBasis", "PointCoordinates", "basis_of_classes", "common_denominator", "generator_relations",
-    "point_coordinates", "true_relations", "vanishing_lattice",
+    "PointBasis",
+    "PointCoordinates",
+    "basis_of_classes",
+    "common_denominator",
+    "generator_relations",
+    "point_coordinates",
+    "true_relations",
+    "vanishing_lattice",
 ]

@@ -1,10 +1,11 @@
 """What must hold for a proof: torsion, independence, saturation (design of every verdict).
 
-L = Z^r (+) T maps to J(Q).  For a prime l the following proves that Z_l (x) L -> Z_l (x) J(Q) is onto: the rank of J(Q)
-is at most r (a premise), dim J(Q)[l] <= dim T[l], and L/lL -> (+)_v J(F_v)/l is injective for some good primes v.
-For then J(Q)/l has dimension r + dim J(Q)[l] <= dim L/lL, and L/lL injects into it, so L -> J(Q)/l is onto; Nakayama's
-lemma does the rest.  In particular the generators are independent and the l-part of the torsion is that of T.
-(The method is common practice; see Siksek 1995 for elliptic curves, Flynn-Smart 1997 for genus 2.)
+L = Z^r (+) T maps to J(Q).  For a prime l the following proves that Z_l (x) L -> Z_l (x) J(Q) is onto: the
+rank of J(Q) is at most r (a premise), dim J(Q)[l] <= dim T[l], and L/lL -> (+)_v J(F_v)/l is injective for
+some good primes v. For then J(Q)/l has dimension r + dim J(Q)[l] <= dim L/lL, and L/lL injects into it, so
+L -> J(Q)/l is onto; Nakayama's lemma does the rest.  In particular the generators are independent and the
+l-part of the torsion is that of T. (The method is common practice; see Siksek 1995 for elliptic curves,
+Flynn-Smart 1997 for genus 2.)
 """
 
 from __future__ import annotations
@@ -20,8 +21,9 @@ from sieve.local.records import LocalRecord
 class Saturation:
     """The outcome at one prime l.
 
-    `proved`; `primes`, auxiliary primes whose groups suffice; when not proved `reason`, and `combination`, coefficients
-    modulo l on the generators of L of an element that looks divisible by l at every prime tried (or None).
+    `proved`; `primes`, auxiliary primes whose groups suffice; when not proved `reason`, and `combination`,
+    coefficients modulo l on the generators of L of an element that looks divisible by l at every prime
+    tried (or None).
     """
 
     ell: int
@@ -43,8 +45,8 @@ class TorsionBound:
 def torsion_dimension(ell: int, records: Sequence[LocalRecord], exact_two: int | None = None) -> TorsionBound:
     """The best bound for dim J(Q)[l] from reduction.
 
-    J(Q)[l] injects into J(F_v) for good v not equal to l, and for v = l odd (Katz 1981, appendix).  `exact_two` is
-    dim J(Q)[2] where it is known from the factors of 4 f + h^2.
+    J(Q)[l] injects into J(F_v) for good v not equal to l, and for v = l odd (Katz 1981, appendix).
+    `exact_two` is dim J(Q)[2] where it is known from the factors of 4 f + h^2.
     """
     best: TorsionBound | None = None
     if ell == 2 and exact_two is not None:
@@ -61,7 +63,10 @@ def torsion_dimension(ell: int, records: Sequence[LocalRecord], exact_two: int |
 
 
 def torsion_order_bound(ell: int, records: Sequence[LocalRecord]) -> int:
-    """An upper bound for the exponent of l in #J(Q)_tors: componentwise minimum of the l-parts (0 when unknown primes)."""
+    """An upper bound for the exponent of l in #J(Q)_tors: the componentwise minimum of the l-parts.
+
+    0 when there is no record to tell.
+    """
     best: list[int] | None = None
     for record in records:
         if not record.usable or record.points == 0 or (ell == 2 and record.prime == 2):
@@ -74,7 +79,9 @@ def torsion_order_bound(ell: int, records: Sequence[LocalRecord]) -> int:
     return sum(best) if best else 0
 
 
-def _columns(record: LocalRecord, images: Sequence[Sequence[int]], ell: int, rows: Sequence[int]) -> list[list[int]]:
+def _columns(
+    record: LocalRecord, images: Sequence[Sequence[int]], ell: int, rows: Sequence[int]
+) -> list[list[int]]:
     """The maps L -> Z/l through the invariant factors divisible by l, one list (over `rows`) for each."""
     return [[images[i][j] % ell for i in rows] for j, d in enumerate(record.invariants) if d % ell == 0]
 
@@ -117,26 +124,34 @@ class _Echelon:
 
 
 def saturation(
-    ell: int, rank: int, torsion: Sequence[int], records: Sequence[LocalRecord],
-    images: Sequence[Sequence[Sequence[int]]], exact_two: int | None = None,
+    ell: int,
+    rank: int,
+    torsion: Sequence[int],
+    records: Sequence[LocalRecord],
+    images: Sequence[Sequence[Sequence[int]]],
+    exact_two: int | None = None,
 ) -> Saturation:
     """Is the image of L saturated at l in J(Q), and L/lL injective?
 
-    Arguments: `rank` r, `torsion` orders t_1 .., usable `records` and, for each, the images of the r + s generators.
-    Returns a `Saturation`; never raises.
+    Arguments: `rank` r, `torsion` orders t_1 .., usable `records` and, for each, the images of the r + s
+    generators. Returns a `Saturation`; never raises.
     """
     rows = list(range(rank)) + [rank + j for j, t in enumerate(torsion) if t % ell == 0]
     bound = torsion_dimension(ell, records, exact_two)
     claimed = len(rows) - rank
     if bound.dimension > claimed:
-        return Saturation(ell, False, reason=f"J(Q)[{ell}] may have dimension {bound.dimension}, the torsion given has {claimed}")
+        return Saturation(
+            ell,
+            False,
+            reason=f"J(Q)[{ell}] may have dimension {bound.dimension}, the torsion given has {claimed}",
+        )
     echelon = _Echelon(ell)
     used: set[int] = set(bound.primes)
     for record, image in zip(records, images, strict=True):
         if len(echelon.rows) == len(rows):
             break
         if record.usable and record.points:
-            if any([echelon.add(column) for column in _columns(record, image, ell, rows)]):
+            if sum(echelon.add(column) for column in _columns(record, image, ell, rows)):
                 used.add(record.prime)
     if len(echelon.rows) == len(rows):
         return Saturation(ell, True, tuple(sorted(used)))
@@ -145,6 +160,8 @@ def saturation(
     for i, value in zip(rows, vector, strict=True):
         combination[i] = value if value <= ell // 2 else value - ell
     return Saturation(
-        ell, False, reason=f"an element of the group looks divisible by {ell} at every prime tried",
+        ell,
+        False,
+        reason=f"an element of the group looks divisible by {ell} at every prime tried",
         combination=tuple(combination),
     )

@@ -32,12 +32,14 @@ Progress = Callable[[str, int], None]
 class Investigation:
     """Everything the engine knows of a problem so far.
 
-    Use: `gather(primes)` adds auxiliary primes; `establish()` fixes the generators in use and checks the data, once;
-    then `generators`, `orders`, `coordinates`, `saturation_at`, `relations` answer.  All methods raise `Inconsistent` when the
-    data contradict each other, naming the witness.
+    Use: `gather(primes)` adds auxiliary primes; `establish()` fixes the generators in use and checks the
+    data, once; then `generators`, `orders`, `coordinates`, `saturation_at`, `relations` answer.  All
+    methods raise `Inconsistent` when the data contradict each other, naming the witness.
     """
 
-    def __init__(self, problem: Problem, executor: Executor | None = None, progress: Progress | None = None) -> None:
+    def __init__(
+        self, problem: Problem, executor: Executor | None = None, progress: Progress | None = None
+    ) -> None:
         self.problem = problem
         self.executor = executor
         self.progress = progress
@@ -60,7 +62,7 @@ class Investigation:
         self._saturation.clear()
 
     def gather(self, primes: Iterable[int], save: Callable[[LocalRecord], None] | None = None) -> None:
-        """Add the records of the given primes (those not known yet), in increasing order; `save` sees each new one."""
+        """Add the records of the given primes not known yet, by prime; `save` sees each new one."""
         missing = sorted(v for v in set(primes) if v not in self.records)
         if not missing:
             return
@@ -127,10 +129,11 @@ class Investigation:
         return out
 
     def establish(self, gather: Callable[[list[int]], object] | None = None) -> None:
-        """Fix the generators in use, check relations and orders, and compute the coordinates of the known points.
+        """Fix the generators in use, check relations and orders, compute the coordinates of the known points.
 
-        `gather` replaces the method of that name (a store may stand behind it).  Raises `Inconsistent`: dependent generators, wrong torsion orders, a rank that does not match the known points, a
-        known point that is no combination of the generators.
+        `gather` replaces the method of that name (a store may stand behind it).  Raises `Inconsistent`:
+        dependent generators, wrong torsion orders, a rank that does not match the known points, a known
+        point that is no combination of the generators.
         """
         problem = self.problem
         gather = gather or self.gather
@@ -154,7 +157,8 @@ class Investigation:
             if found is None:
                 raise Inconsistent(
                     f"the known point {shown} is no combination of small height of the generators "
-                    "(wrong generators, rank or base)", shown
+                    "(wrong generators, rank or base)",
+                    shown,
                 )
             self.coordinates[point] = found
 
@@ -165,14 +169,16 @@ class Investigation:
         for j, (order, _) in enumerate(problem.torsion):
             if any(order * values[j] % d for d, values in functionals):
                 raise Inconsistent(
-                    f"torsion generator no. {j + 1} does not have order {order}", f"torsion generator no. {j + 1}"
+                    f"torsion generator no. {j + 1} does not have order {order}",
+                    f"torsion generator no. {j + 1}",
                 )
         # the difference of the base point with itself is zero and takes no part
         basis = basis_of_classes(count, functionals)
         if len(basis.free) != problem.rank:
             raise Inconsistent(
-                f"the differences of the known points generate a group of rank {len(basis.free)}, the case claims rank "
-                f"{problem.rank}", "known_points"
+                f"the differences of the known points generate a group of rank {len(basis.free)}, "
+                f"the case claims rank {problem.rank}",
+                "known_points",
             )
         self.rows = [list(row) for row in (*basis.free, *basis.torsion)]
         self.orders = basis.orders
@@ -188,10 +194,19 @@ class Investigation:
         records = self.usable
         if denominators:
             shown = self.problem.curve.format_point(denominators[0])
-            found = Saturation(ell, False, reason=f"{ell} divides the index: the coefficients of {shown} have this denominator")
+            found = Saturation(
+                ell,
+                False,
+                reason=f"{ell} divides the index: the coefficients of {shown} have this denominator",
+            )
         else:
             found = saturation(
-                ell, self.problem.rank, self.orders, records, [self.images(r) for r in records], self._exact_two
+                ell,
+                self.problem.rank,
+                self.orders,
+                records,
+                [self.images(r) for r in records],
+                self._exact_two,
             )
         self._saturation[ell] = (len(records), found)
         return found
@@ -207,12 +222,13 @@ class Investigation:
     def allowed_ells(self, extra: Iterable[int] = ()) -> list[int]:
         """The primes l whose parts may be used: proved saturated, or stated by the user."""
         return [
-            ell for ell in self.relevant_ells(extra)
+            ell
+            for ell in self.relevant_ells(extra)
             if ell in self.problem.index_prime_to or self.saturation_at(ell).proved
         ]
 
     def torsion_proved(self) -> bool:
-        """Whether the torsion of J(Q) is proved to be what the generators say, at every prime that could matter."""
+        """Whether the torsion of J(Q) is proved to be what the generators say, at every prime."""
         order = 1
         for t in self.orders:
             order *= t
@@ -244,7 +260,7 @@ class Investigation:
     def relations(
         self, ells: Sequence[int], bound: int | None = None, primes: Collection[int] | None = None
     ) -> list[Relation]:
-        """The relations of the usable primes (below `bound`, among `primes`), restricted to the l-parts given."""
+        """The relations of the usable primes (below `bound`, among `primes`), restricted to these l-parts."""
         out = []
         for record in self.usable:
             if (bound is None or record.prime < bound) and (primes is None or record.prime in primes):

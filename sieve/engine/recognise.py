@@ -1,4 +1,4 @@
-"""Which candidates are rational points: comparison with known points, rational reconstruction, exact check."""
+"""Which candidates are rational points: known points, rational reconstruction, exact check."""
 
 from __future__ import annotations
 
@@ -20,13 +20,15 @@ class Match:
 
 
 def matching_points(
-    place: ChabautyPlace, candidate: LocatedCandidate, points: Mapping[Point, PointCoordinates | None],
+    place: ChabautyPlace,
+    candidate: LocatedCandidate,
+    points: Mapping[Point, PointCoordinates | None],
     orders: Sequence[int],
 ) -> tuple[Point, ...]:
     """The rational points (keys of `points`) that agree with the candidate to all its digits.
 
-    Kind "point": same disc and parameter modulo p^digits; "disc": same disc; "coefficients": coordinates of the point,
-    where known with denominator prime to p, agree (and torsion, and disc, where given).
+    Kind "point": same disc and parameter modulo p^digits; "disc": same disc; "coefficients": coordinates of
+    the point, where known with denominator prime to p, agree (and torsion, and disc, where given).
     """
     p = place.prime
     out = []
@@ -37,10 +39,17 @@ def matching_points(
                 continue
             if candidate.disc is not None and candidate.disc != disc:
                 continue
-            if not all(c.agrees(f) for c, f in zip(candidate.coefficients, coordinates.coefficients, strict=True)):
+            if not all(
+                c.agrees(f) for c, f in zip(candidate.coefficients, coordinates.coefficients, strict=True)
+            ):
                 continue
-            if candidate.torsion and coordinates.denominator == 1 and any(
-                (a - b) % t for a, b, t in zip(candidate.torsion, coordinates.torsion, orders, strict=True)
+            if (
+                candidate.torsion
+                and coordinates.denominator == 1
+                and any(
+                    (a - b) % t
+                    for a, b, t in zip(candidate.torsion, coordinates.torsion, orders, strict=True)
+                )
             ):
                 continue
             out.append(point)
@@ -55,7 +64,7 @@ def matching_points(
 
 
 def reconstruct(place: ChabautyPlace, candidate: LocatedCandidate) -> tuple[Point, ...]:
-    """Rational points found by rational reconstruction of the candidate's x-coordinate, verified on the curve.
+    """Rational points from rational reconstruction of the candidate's x-coordinate, verified on the curve.
 
     Only points that agree with the candidate to all its digits are returned.
     """
@@ -74,7 +83,7 @@ def reconstruct(place: ChabautyPlace, candidate: LocatedCandidate) -> tuple[Poin
         value = None if ratio is None else ratio.rational_reconstruction()
         if value is not None:
             points = list(points_over(place.curve, value))
-    return matching_points(place, candidate, {point: None for point in points}, ())
+    return matching_points(place, candidate, dict.fromkeys(points), ())
 
 
 def _ratio(a: PadicNumber, b: PadicNumber) -> PadicNumber | None:

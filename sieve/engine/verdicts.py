@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Collection, Sequence
 from dataclasses import dataclass, field
+from typing import Literal
 
 from sieve.curves.divisors import Point
 from sieve.engine.fates import Fate, decide
@@ -15,10 +16,12 @@ from sieve.engine.survivors import Barrier, Survivor, barrier, short_vectors
 from sieve.errors import Inconsistent
 from sieve.local.chabauty import ChabautyPlace, LocatedCandidate
 
+VerdictKind = Literal["eliminated", "rational", "open"]
+
 
 @dataclass
 class CandidateList:
-    """The candidates at one Chabauty prime; `complete` claims that every rational point is near one of them."""
+    """The candidates at one Chabauty prime; `complete`: every rational point is claimed to be near one."""
 
     place: ChabautyPlace
     candidates: list[LocatedCandidate]
@@ -31,13 +34,14 @@ class CandidateList:
 class Decision:
     """The verdict on one candidate: "eliminated", "rational" or "open".
 
-    `primes` responsible (residue characteristics, in order); `points`: the rational points it stands for; `given`: all of
-    them are known points of the case; `sole`: no second rational point can hide there; `fate`: what the sieve found.
+    `primes` responsible (residue characteristics, in order); `points`: the rational points it stands for;
+    `given`: all of them are known points of the case; `sole`: no second rational point can hide there;
+    `fate`: what the sieve found.
     """
 
     prime: int
     id: str
-    verdict: str
+    verdict: VerdictKind
     reason: str
     primes: tuple[int, ...] = ()
     points: tuple[Point, ...] = ()
@@ -62,8 +66,8 @@ def match_rational(
 ) -> dict[tuple[int, str], tuple[Point, ...]]:
     """The rational points behind the candidates, by (list number, id).
 
-    Arguments: `found`, rational points that are not among the known ones.  Raises `Inconsistent` when a list that claims to be
-    complete misses a rational point, naming the point.
+    Arguments: `found`, rational points that are not among the known ones.  Raises `Inconsistent` when a
+    list that claims to be complete misses a rational point, naming the point.
     """
     problem = investigation.problem
     points: dict[Point, object] = {}
@@ -84,16 +88,15 @@ def match_rational(
                 if point in covered or (unlocated and investigation.coordinates.get(point) is None):
                     continue
                 shown = problem.curve.format_point(point)
-                raise Inconsistent(
-                    f"{listing.name} claims to be complete, but no candidate is near the rational point {shown}", shown
-                )
+                what = f"no candidate is near the rational point {shown}"
+                raise Inconsistent(f"{listing.name} claims to be complete, but {what}", shown)
     return matched
 
 
 def candidate_relations(
     investigation: Investigation, lists: Sequence[CandidateList], ells: Sequence[int]
 ) -> tuple[list[Relation], list[Relation], dict[str, int]]:
-    """Labelled relations, unlabelled relations of complete lists, and the list number of every labelled one."""
+    """Labelled relations, unlabelled ones of complete lists, and the list number of every labelled one."""
     labelled: list[Relation] = []
     lists_of: dict[str, int] = {}
     for number, listing in enumerate(lists):
@@ -121,7 +124,10 @@ def decide_candidates(
     primes: Collection[int] | None = None,
     report: Reporter | None = None,
 ) -> dict[tuple[int, str], Decision]:
-    """A decision for every candidate, by (list number, id), with the auxiliary primes below `bound` (among `primes`)."""
+    """A decision for every candidate, by (list number, id).
+
+    Auxiliary primes: those below `bound` (among `primes`).
+    """
     labelled, extra, lists_of = candidate_relations(investigation, lists, ells)
     rational = [
         (relation.name, label)
@@ -149,15 +155,24 @@ def _rational(
     curve = listing.place.curve
     notes = []
     if len(points) > 1:
-        notes.append("it cannot be told apart from " + ", ".join(curve.format_point(p) for p in points[1:]) + " at its precision")
+        notes.append(
+            "it cannot be told apart from "
+            + ", ".join(curve.format_point(p) for p in points[1:])
+            + " at its precision"
+        )
     if candidate.multiplicity > 1:
         notes.append(f"multiplicity {candidate.multiplicity}: the disc may hide a second rational point")
     if candidate.kind == "disc" and candidate.at_most != 1:
         notes.append("a whole residue disc without the bound at_most = 1 may hold other rational points")
     sole = not notes or (candidate.at_most == 1 and len(points) == 1)
     return Decision(
-        listing.place.prime, candidate.id, "rational", "; ".join(notes), points=points,
-        given=all(p in known for p in points), sole=sole,
+        listing.place.prime,
+        candidate.id,
+        "rational",
+        "; ".join(notes),
+        points=points,
+        given=all(p in known for p in points),
+        sole=sole,
     )
 
 
@@ -170,13 +185,17 @@ def _from_fate(p: int, fate: Fate) -> Decision:
         reason = f"no point of X modulo {primes[0]} has a class compatible with it"
         return Decision(p, fate.label, "eliminated", reason, primes, fate=fate)
     if fate.kind == "several":
-        reason = "no class of the group is compatible with it and with the points modulo " + ", ".join(map(str, primes))
+        reason = "no class of the group is compatible with it and with the points modulo " + ", ".join(
+            map(str, primes)
+        )
         return Decision(p, fate.label, "eliminated", reason, primes, fate=fate)
     hint = "add auxiliary primes (a larger --bound)"
     if fate.kind == "shared":
         parts = " * ".join(f"{ell}^{e}" for ell, e in fate.exponents)
         reason = (
-            "in the part of the group that the auxiliary primes see (exponent " + parts + ") it has the same class as "
+            "in the part of the group that the auxiliary primes see (exponent "
+            + parts
+            + ") it has the same class as "
             "the rational candidate" + ("s " if len(fate.same_as) > 1 else " ") + ", ".join(fate.same_as)
         )
         hint = f"auxiliary primes whose group has a higher power of {p}, or candidates with more digits"
@@ -185,25 +204,27 @@ def _from_fate(p: int, fate: Fate) -> Decision:
     elif fate.exhausted:
         reason = f"{fate.classes} classes modulo a subgroup of index {fate.index} satisfy every condition"
     else:
-        reason = f"a size limit stopped the sieve with {fate.classes} classes modulo a subgroup of index {fate.index}"
+        left = f"{fate.classes} classes modulo a subgroup of index {fate.index}"
+        reason = f"a size limit stopped the sieve with {left}"
         hint = "fewer, better auxiliary primes (--primes)"
     return Decision(p, fate.label, "open", reason, primes, hint=hint, fate=fate)
 
 
 def surviving_classes(
-    investigation: Investigation, ells: Sequence[int], bound: int | None,
-    primes: Collection[int] | None = None, report: Reporter | None = None,
+    investigation: Investigation,
+    ells: Sequence[int],
+    bound: int | None,
+    primes: Collection[int] | None = None,
+    report: Reporter | None = None,
 ) -> Outlook:
-    """The classes of L that satisfy all conditions of the auxiliary primes below `bound` (among `primes`), and the barrier.
+    """The classes of L that satisfy the auxiliary conditions below `bound` (among `primes`), and the barrier.
 
     Raises `Inconsistent` when a known point is excluded.
     """
     relations = investigation.relations(ells, bound, primes)
     outcome = sieve_classes(relations, report=report)
     relation = outcome.relation
-    known = [
-        c.vector for c in investigation.coordinates.values() if c.denominator == 1
-    ]
+    known = [c.vector for c in investigation.coordinates.values() if c.denominator == 1]
     outside = [c for c in investigation.coordinates.values() if c.denominator > 1]
     vectors = short_vectors(relation, investigation.orders) if relation.count <= 5000 else []
     found: Barrier | None = None

@@ -13,8 +13,9 @@ import flint
 class FiniteQuotient:
     """Z^n modulo a lattice of full rank, with coordinates.
 
-    `invariants` are the invariant factors > 1, each dividing the next; `coordinates[j]` is the class of the j-th
-    basis vector of Z^n in the product of Z/invariants[i]; `lattice` is the Hermite form of the relations.
+    `invariants` are the invariant factors > 1, each dividing the next; `coordinates[j]` is the class of the
+    j-th basis vector of Z^n in the product of Z/invariants[i]; `lattice` is the Hermite form of the
+    relations.
 
     >>> q = quotient_by(2, [[2, 0], [0, 4], [1, 2]])
     >>> q.invariants, q.order
@@ -108,9 +109,10 @@ def quotient_by(n: int, relations: Sequence[Sequence[int]]) -> FiniteQuotient | 
         if j in place:
             coordinates.append(tuple(small[place[j]][i] for i in keep))
         else:
+            row = rows[j]
             coordinates.append(
                 tuple(
-                    -sum(rows[j][column] * small[k][i] for column, k in place.items()) % diagonal[i] for i in keep
+                    -sum(row[column] * small[k][i] for column, k in place.items()) % diagonal[i] for i in keep
                 )
             )
     return FiniteQuotient(invariants, tuple(coordinates), prod(pivots))

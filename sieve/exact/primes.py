@@ -6,7 +6,7 @@ import flint
 
 
 def is_prime(n: int) -> bool:
-    """Is n a prime?  Proved for n < 2^64 (FLINT's test is deterministic there); a strong probable prime beyond."""
+    """Is n a prime?  Proved for n < 2^64 (FLINT's test is deterministic there); a probable prime beyond."""
     return n > 1 and bool(flint.fmpz(n).is_prime())
 
 

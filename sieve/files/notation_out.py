@@ -19,7 +19,12 @@ def divisor_document(curve: HyperellipticCurve, divisor: Divisor) -> list[list[A
             out.append([multiplicity, curve.format_point(place.point)])
         elif isinstance(place, MumfordPlace):
             w = [c / curve.y_scale for c in place.w]
-            out.append([multiplicity, {"mumford": [format_univariate(list(place.u), "x"), format_univariate(w, "x")]}])
+            out.append(
+                [
+                    multiplicity,
+                    {"mumford": [format_univariate(list(place.u), "x"), format_univariate(w, "x")]},
+                ]
+            )
         elif isinstance(place, FibrePlace):
             out.append([multiplicity, {"fibres": place.count}])
     return out

@@ -1,7 +1,7 @@
 """The store: local data in one SQLite file, shared by runs, safe against being killed.
 
-Write-ahead logging makes a record either whole or absent; a file that is not a store of this version is refused and left
-untouched.
+Write-ahead logging makes a record either whole or absent; a file that is not a store of this version is
+refused and left untouched.
 """
 
 from __future__ import annotations
@@ -43,7 +43,9 @@ class Store:
         if exists:
             with open(self.path, "rb") as stream:
                 if stream.read(16) != b"SQLite format 3\x00":
-                    raise InputError(str(path), "", "a file of another format", "a store written by this program")
+                    raise InputError(
+                        str(path), "", "a file of another format", "a store written by this program"
+                    )
         try:
             self.connection = sqlite3.connect(self.path, timeout=60)
             if exists:
@@ -52,30 +54,40 @@ class Store:
             self.connection.execute("PRAGMA synchronous=NORMAL")
             with self.connection:
                 self.connection.execute("CREATE TABLE IF NOT EXISTS about (key TEXT PRIMARY KEY, value TEXT)")
+                columns = "problem TEXT, prime INTEGER, record TEXT, digest TEXT"
                 self.connection.execute(
-                    "CREATE TABLE IF NOT EXISTS local (problem TEXT, prime INTEGER, record TEXT, digest TEXT, "
-                    "PRIMARY KEY (problem, prime))"
+                    f"CREATE TABLE IF NOT EXISTS local ({columns}, PRIMARY KEY (problem, prime))"
                 )
                 self.connection.execute(
                     "INSERT OR IGNORE INTO about VALUES ('kind', ?), ('schema', ?)", (_MAGIC, str(SCHEMA))
                 )
         except sqlite3.Error as error:
-            raise InputError(str(path), "", f"an unreadable store ({error})", "a store written by this program") from None
+            raise InputError(
+                str(path), "", f"an unreadable store ({error})", "a store written by this program"
+            ) from None
 
     def _check(self) -> None:
-        tables = {row[0] for row in self.connection.execute("SELECT name FROM sqlite_master WHERE type = 'table'")}
+        tables = {
+            row[0] for row in self.connection.execute("SELECT name FROM sqlite_master WHERE type = 'table'")
+        }
         if "about" not in tables:
             # an empty database left by a kill during creation is fine
             if tables:
-                raise InputError(str(self.path), "", "a database of another program", "a store written by this program")
+                raise InputError(
+                    str(self.path), "", "a database of another program", "a store written by this program"
+                )
             return
         about = dict(self.connection.execute("SELECT key, value FROM about").fetchall())
         if about and about.get("kind") != _MAGIC:
-            raise InputError(str(self.path), "", "a database of another program", "a store written by this program")
+            raise InputError(
+                str(self.path), "", "a database of another program", "a store written by this program"
+            )
         if about and about.get("schema") != str(SCHEMA):
             raise InputError(str(self.path), "schema", f"version {about.get('schema')}", f"version {SCHEMA}")
         if self.connection.execute("PRAGMA quick_check").fetchone()[0] != "ok":
-            raise InputError(str(self.path), "", "a damaged store", "an intact one (delete it to start afresh)")
+            raise InputError(
+                str(self.path), "", "a damaged store", "an intact one (delete it to start afresh)"
+            )
 
     def __enter__(self) -> Store:
         return self
@@ -96,7 +108,9 @@ class Store:
         ):
             if prime in wanted:
                 if hashlib.sha256(text.encode()).hexdigest() != digest:
-                    raise InputError(str(self.path), f"v = {prime}", "a damaged record", "the record that was written")
+                    raise InputError(
+                        str(self.path), f"v = {prime}", "a damaged record", "the record that was written"
+                    )
                 out[prime] = _decode(text)
         return out
 
@@ -113,9 +127,14 @@ class Store:
 def _encode(record: LocalRecord) -> str:
     return json.dumps(
         {
-            "prime": record.prime, "points": record.points, "order": record.order,
-            "invariants": record.invariants, "images": record.images, "allowed": record.allowed.tolist(),
-            "reason": record.reason, "skipped": record.skipped,
+            "prime": record.prime,
+            "points": record.points,
+            "order": record.order,
+            "invariants": record.invariants,
+            "images": record.images,
+            "allowed": record.allowed.tolist(),
+            "reason": record.reason,
+            "skipped": record.skipped,
         },
         separators=(",", ":"),
     )
@@ -125,6 +144,12 @@ def _decode(text: str) -> LocalRecord:
     data = json.loads(text)
     allowed = np.array(data["allowed"], dtype=np.int64).reshape(len(data["allowed"]), len(data["invariants"]))
     return LocalRecord(
-        data["prime"], data["points"], data["order"], tuple(data["invariants"]),
-        tuple(tuple(row) for row in data["images"]), allowed, data["reason"], data["skipped"],
+        data["prime"],
+        data["points"],
+        data["order"],
+        tuple(data["invariants"]),
+        tuple(tuple(row) for row in data["images"]),
+        allowed,
+        data["reason"],
+        data["skipped"],
     )

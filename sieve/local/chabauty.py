@@ -1,8 +1,8 @@
 """Conditions from the candidates at a Chabauty prime p.
 
-A p-adic point z has a class in J(F_p) and a vector of abelian integrals Log(z - B) in Q_p^g; both together are the
-image of iota(z) under a homomorphism defined on J(Q).  Modulo p^n it is a condition like any other, whose allowed
-classes carry the labels of the candidates.
+A p-adic point z has a class in J(F_p) and a vector of abelian integrals Log(z - B) in Q_p^g; both together
+are the image of iota(z) under a homomorphism defined on J(Q).  Modulo p^n it is a condition like any other,
+whose allowed classes carry the labels of the candidates.
 """
 
 from __future__ import annotations
@@ -26,10 +26,11 @@ from sieve.local.records import divisor_log
 class LocatedCandidate:
     """A candidate in terms of the curve.
 
-    Fields: `kind` ("point", "disc", "coefficients"); `disc`, the number of its residue disc (None when unknown);
-    `parameter` modulo p^`digits`, the local parameter in the disc (kind "point"; for a whole disc the digits are 1 and the
-    parameter is 0); `coordinates` as p-adic numbers in the model (kind "point"); `coefficients` and `torsion`
-    (kind "coefficients"; torsion empty when not given); `multiplicity`; `at_most`.
+    Fields: `kind` ("point", "disc", "coefficients"); `disc`, the number of its residue disc (None when
+    unknown); `parameter` modulo p^`digits`, the local parameter in the disc (kind "point"; for a whole disc
+    the digits are 1 and the parameter is 0); `coordinates` as p-adic numbers in the model (kind "point");
+    `coefficients` and `torsion` (kind "coefficients"; torsion empty when not given); `multiplicity`;
+    `at_most`.
     """
 
     id: str
@@ -55,8 +56,9 @@ def useful_digits(p: int) -> int:
 class ChabautyPlace:
     """The homomorphism L -> J(F_p) x Q_p^g at a prime p of good reduction.
 
-    Arguments: `digits` wanted in the integrals (relative to the candidates); `base`, `generators` as divisors.  Raises
-    `Uncertified` (the group J(F_p)), `BadReduction` (a divisor does not reduce), `PrecisionLost`.
+    Arguments: `digits` wanted in the integrals (relative to the candidates); `base`, `generators` as
+    divisors.  Raises `Uncertified` (the group J(F_p)), `BadReduction` (a divisor does not reduce),
+    `PrecisionLost`.
     """
 
     def __init__(self, curve: HyperellipticCurve, p: int, digits: int) -> None:
@@ -78,7 +80,8 @@ class ChabautyPlace:
         """The class of P - B in J(F_p) for P in the disc."""
         invariants = self.group.invariants
         return tuple(
-            (int(a) - b) % d for a, b, d in zip(self.group.point_logs[disc], self.base_class, invariants, strict=True)
+            (int(a) - b) % d
+            for a, b, d in zip(self.group.point_logs[disc], self.base_class, invariants, strict=True)
         )
 
     def coefficients_of_point(self, point: Point) -> list[PadicNumber] | None:
@@ -102,8 +105,10 @@ class ChabautyPlace:
         for candidate in candidates:
             if candidate.kind == "coefficients":
                 key: tuple[object, ...] = (
-                    "c", tuple(min(c.precision, useful_digits(self.prime)) for c in candidate.coefficients),
-                    bool(candidate.torsion), candidate.disc is not None,
+                    "c",
+                    tuple(min(c.precision, useful_digits(self.prime)) for c in candidate.coefficients),
+                    bool(candidate.torsion),
+                    candidate.disc is not None,
                 )
             else:
                 key = ("p", min(candidate.digits, useful_digits(self.prime)))
@@ -144,7 +149,12 @@ class ChabautyPlace:
         return _labelled(name, p, moduli, images, rows, [c.id for c in candidates], complete)
 
     def _from_coefficients(
-        self, name: str, candidates: Sequence[LocatedCandidate], rank: int, orders: Sequence[int], complete: bool
+        self,
+        name: str,
+        candidates: Sequence[LocatedCandidate],
+        rank: int,
+        orders: Sequence[int],
+        complete: bool,
     ) -> Condition:
         p = self.prime
         first = candidates[0]
@@ -174,26 +184,37 @@ def _scaled(vector: PadicVector, shift: int, modulus: int) -> tuple[int, ...]:
 
 
 def _labelled(
-    name: str, p: int, moduli: tuple[int, ...], images: Sequence[tuple[int, ...]], rows: Sequence[tuple[int, ...]],
-    ids: Sequence[str], complete: bool,
+    name: str,
+    p: int,
+    moduli: tuple[int, ...],
+    images: Sequence[tuple[int, ...]],
+    rows: Sequence[tuple[int, ...]],
+    ids: Sequence[str],
+    complete: bool,
 ) -> Condition:
     labels: dict[tuple[int, ...], list[str]] = {}
     for row, name_of in zip(rows, ids, strict=True):
         labels.setdefault(row, []).append(name_of)
     ordered = sorted(labels)
     allowed = np.array(ordered, dtype=np.int64).reshape(len(ordered), len(moduli))
-    return Condition(name, p, moduli, tuple(images), allowed, tuple(tuple(sorted(labels[r])) for r in ordered), complete)
+    return Condition(
+        name, p, moduli, tuple(images), allowed, tuple(tuple(sorted(labels[r])) for r in ordered), complete
+    )
 
 
-def _solve(p: int, columns: Sequence[Sequence[PadicNumber]], target: Sequence[PadicNumber]) -> list[PadicNumber] | None:
-    """Solve sum x_i columns[i] = target over Q_p, pivots of least valuation; None without a unique solution."""
+def _solve(
+    p: int, columns: Sequence[Sequence[PadicNumber]], target: Sequence[PadicNumber]
+) -> list[PadicNumber] | None:
+    """Solve sum x_i columns[i] = target over Q_p, pivots of least valuation; None if not unique."""
     count, height = len(columns), len(target)
     rows = [[columns[i][k] for i in range(count)] + [target[k]] for k in range(height)]
     pivots: list[int] = []
     for step in range(count):
         found = [
             (rows[k][j].valuation, k, j)
-            for k in range(step, height) for j in range(count) if j not in pivots and not rows[k][j].is_zero
+            for k in range(step, height)
+            for j in range(count)
+            if j not in pivots and not rows[k][j].is_zero
         ]
         if not found:
             return None

@@ -18,8 +18,8 @@ class Condition:
 
     Fields: `name` (as reports print it, "v = 59"); `prime` (residue characteristic); `moduli` (A is the
     product of Z/m for these m > 1, m < 2^62, not necessarily prime powers); `images` (one row for each
-    generator of L, entries reduced); `allowed` (int64, shape (count, len(moduli)), distinct rows, count may be 0);
-    `labels` (for candidates: the ids that share each allowed row; None for auxiliary primes);
+    generator of L, entries reduced); `allowed` (int64, shape (count, len(moduli)), distinct rows, count may
+    be 0); `labels` (for candidates: the ids that share each allowed row; None for auxiliary primes);
     `complete` (labelled conditions only: every rational point lies in one of the classes).
     """
 

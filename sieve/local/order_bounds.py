@@ -25,8 +25,8 @@ def _sqrt_bounds(n: int) -> tuple[Fraction, Fraction]:
 def order_lower_bound(v: int, genus: int, points: int) -> int:
     """A lower bound for #J(F_v) from #X(F_v) = `points`.
 
-    The product is log-concave on the polytope |x_i| <= 2 sqrt(v), sum x_i = v + 1 - points, so its minimum is at a vertex:
-    all x_i but one are at an end of the interval.  Rounding is outward; at least 1.
+    The product is log-concave on the polytope |x_i| <= 2 sqrt(v), sum x_i = v + 1 - points, so its minimum
+    is at a vertex: all x_i but one are at an end of the interval.  Rounding is outward; at least 1.
     """
     low, high = _sqrt_bounds(4 * v)
     q, total = v + 1, v + 1 - points
@@ -86,7 +86,9 @@ def extension_count(curve: ReducedHyperelliptic, degree: int) -> int:
         fx, hx = evaluate(curve.f), evaluate(curve.h)
         affine = 0
         for y_code in range(size):
-            y = np.repeat(np.array([[y_code // v**i % v] for i in range(degree)], dtype=np.int64), size, axis=1)
+            y = np.repeat(
+                np.array([[y_code // v**i % v] for i in range(degree)], dtype=np.int64), size, axis=1
+            )
             value = (multiply(y, y) + multiply(hx, y) - fx) % v
             affine += int((value == 0).all(axis=0).sum())
         infinite = _leading_roots(lead_f, lead_h, v, degree)

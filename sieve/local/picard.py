@@ -1,13 +1,14 @@
 """Certified Picard groups of curves over prime fields, from sections of a linear system.
 
-Pic(X/F_v) modulo the class of one rational point P0 is Pic^0 = J(F_v): the class of D stands for D - deg(D) P0.
-Factor base = some rational points; every section whose zeros are known is a relation.  Sections with one unknown
-zero define it as a short combination of the base; the others close the lattice.
+Pic(X/F_v) modulo the class of one rational point P0 is Pic^0 = J(F_v): the class of D stands for D - deg(D)
+P0. Factor base = some rational points; every section whose zeros are known is a relation.  Sections with
+one unknown zero define it as a short combination of the base; the others close the lattice.
 
 The group is proved complete by two facts.  Generation: if N_e = #X(F_{v^e}) > (2g-2) v^{e/2}, the places of
-degree dividing e generate Pic^0 (a nontrivial character constant on them would have a character sum N_e, but its
-L-polynomial has degree 2g-2 and inverse roots of size sqrt v; Weil 1948).  Index: the relations found span a lattice
-whose index is a multiple of #J(F_v), and it is below twice a lower bound for #J(F_v), or equal to the exact order.
+degree dividing e generate Pic^0 (a nontrivial character constant on them would have a character sum N_e,
+but its L-polynomial has degree 2g-2 and inverse roots of size sqrt v; Weil 1948).  Index: the relations
+found span a lattice whose index is a multiple of #J(F_v), and it is below twice a lower bound for #J(F_v),
+or equal to the exact order.
 """
 
 from __future__ import annotations
@@ -35,9 +36,9 @@ EXTENSION_LIMIT = 200_000
 class PicardGroup:
     """J(F_v) with the classes of all rational points.
 
-    `invariants`: invariant factors > 1, each dividing the next.  `point_logs`: int64, shape (N, len(invariants)), the class
-    of P - P0 for every point in the curve's numbering.  `unit_log`: the class of U (the fibre or section class).
-    `reason` says how completeness was proved.
+    `invariants`: invariant factors > 1, each dividing the next.  `point_logs`: int64, shape (N,
+    len(invariants)), the class of P - P0 for every point in the curve's numbering.  `unit_log`: the class
+    of U (the fibre or section class). `reason` says how completeness was proved.
     """
 
     curve: ReducedHyperelliptic
@@ -108,7 +109,9 @@ class PicardGroup:
                 return divisor
             if all(p in self.higher_logs or self.curve.higher_partner(p) in self.higher_logs for p in rest):
                 return divisor
-        raise Uncertified(self.prime, "no section through a generator's closed point has rational remaining zeros")
+        raise Uncertified(
+            self.prime, "no section through a generator's closed point has rational remaining zeros"
+        )
 
 
 def picard_group(curve: ReducedHyperelliptic) -> PicardGroup:
@@ -147,7 +150,6 @@ class _Definitions:
         self.short[base] = True
         # rounds of (orbit, sign, unit coefficient, other orbits, their signs), for the logarithms
         self.rounds: list[tuple[IntArray, IntArray, IntArray, IntArray, IntArray]] = []
-
 
     def lengthen(self) -> None:
         """Write every known orbit as a combination of the base, the later rounds (longer ones) too."""
@@ -227,7 +229,7 @@ def _batch_size(curve: ReducedHyperelliptic, state: _Definitions, attempt: int) 
 
 
 def _use(curve: ReducedHyperelliptic, state: _Definitions, divisors: IntArray, chosen: int) -> list[IntArray]:
-    """Define unknown orbits from sections with one unknown zero; return closing relations among short ones."""
+    """Define unknown orbits from sections with one unknown zero; return closing relations of short ones."""
     orbit, sign, fibre = curve.orbit[divisors], curve.sign[divisors], curve.fibre[divisors]
     unknown = ~state.known[orbit]
     missing = unknown.sum(axis=1)
@@ -292,7 +294,9 @@ def _close(
     return None
 
 
-def _finish(curve: ReducedHyperelliptic, state: _Definitions, group: FiniteQuotient, sections: int) -> PicardGroup:
+def _finish(
+    curve: ReducedHyperelliptic, state: _Definitions, group: FiniteQuotient, sections: int
+) -> PicardGroup:
     invariants = group.invariants
     moduli = np.array(invariants, dtype=np.int64)
     logs = np.zeros((curve.orbit_count, len(invariants)), dtype=np.int64)
@@ -308,8 +312,13 @@ def _finish(curve: ReducedHyperelliptic, state: _Definitions, group: FiniteQuoti
         logs[target] = (own_sign[:, None] * value) % moduli
     point_logs = (curve.sign[:, None] * logs[curve.orbit] + curve.fibre[:, None] * unit_row) % moduli
     return PicardGroup(
-        curve, invariants, group.order, point_logs, unit,
-        "rational points generate (N > (2g-2) sqrt v); index below twice the Weil bound", sections_used=sections,
+        curve,
+        invariants,
+        group.order,
+        point_logs,
+        unit,
+        "rational points generate (N > (2g-2) sqrt v); index below twice the Weil bound",
+        sections_used=sections,
     )
 
 
@@ -337,7 +346,9 @@ def _from_exact_sections(curve: ReducedHyperelliptic, generated: bool) -> Picard
     lower, exact = order_lower_bound(v, g, curve.count), False
     if order_upper_exceeds(v, g, curve.count, 2 * lower):
         if v**g > EXTENSION_LIMIT:
-            raise Uncertified(v, "the Weil bound is not sharp enough and the extension fields are too large to count")
+            raise Uncertified(
+                v, "the Weil bound is not sharp enough and the extension fields are too large to count"
+            )
         counts += [extension_count(curve, e) for e in range(2, g + 1)]
         lower, exact = exact_order(curve, counts), True
     wanted = [higher_degree] if higher_degree > 1 or v > 23 else [1, 2]
@@ -352,7 +363,7 @@ def _from_exact_sections(curve: ReducedHyperelliptic, generated: bool) -> Picard
 def _close_exactly(
     curve: ReducedHyperelliptic, higher_degree: int, lower: int, exact: bool, reason: str, limit: int
 ) -> PicardGroup | None:
-    """The group on the factor base of all places of degree 1 and `higher_degree`; None after `limit` sections."""
+    """The group on the base of all places of degree 1 and `higher_degree`; None after `limit` sections."""
     v, g = curve.prime, curve.genus
     places: list[HigherPlace] = curve.places_of_degree(higher_degree) if higher_degree > 1 else []
     column = {place: 1 + curve.orbit_count + i for i, place in enumerate(places)}
@@ -395,12 +406,19 @@ def _close_exactly(
         return None
     logs = [group.coordinates[0]] + [tuple([0] * len(group.invariants))] + list(group.coordinates[1:])
     moduli = np.array(group.invariants, dtype=np.int64)
-    orbit_logs = np.array(logs[1 : 1 + curve.orbit_count], dtype=np.int64).reshape(curve.orbit_count, len(moduli))
+    orbit_logs = np.array(logs[1 : 1 + curve.orbit_count], dtype=np.int64).reshape(
+        curve.orbit_count, len(moduli)
+    )
     unit = np.array(logs[0], dtype=np.int64)
     point_logs = (curve.sign[:, None] * orbit_logs[curve.orbit] + curve.fibre[:, None] * unit) % moduli
     result = PicardGroup(
-        curve, group.invariants, group.order, point_logs, logs[0],
-        reason + ("; index equals the order from point counts" if exact else "; index below twice the Weil bound"),
+        curve,
+        group.invariants,
+        group.order,
+        point_logs,
+        logs[0],
+        reason
+        + ("; index equals the order from point counts" if exact else "; index below twice the Weil bound"),
         sections_used=tries,
     )
     for place, position in column.items():
@@ -409,7 +427,7 @@ def _close_exactly(
 
 
 def order_upper_exceeds(v: int, genus: int, points: int, bound: int) -> bool:
-    """Can #J(F_v) reach `bound`?  Uses prod (v + 1 - x_i) <= ((v + 1) - mean x)^g (arithmetic-geometric mean)."""
+    """Can #J(F_v) reach `bound`?  By prod (v + 1 - x_i) <= ((v + 1) - mean x)^g."""
     total = genus * (v + 1) - (v + 1 - points)
     return total**genus >= bound * genus**genus
 

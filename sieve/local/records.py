@@ -24,10 +24,11 @@ from sieve.local.picard import PicardGroup, picard_group
 class LocalRecord:
     """What is known at the good prime `prime`, or why nothing is.
 
-    Fields: `points`, #X(F_v) (-1 when not counted); `order`, `invariants` of J(F_v); `images`, one row for every divisor of
-    degree 0 that was asked for, in the product of Z/invariants[i]; `allowed`, int64, shape (count, len(invariants)), the
-    classes of P - B for P in X(F_v), distinct and sorted; `reason`, how completeness was proved; `skipped`, when
-    not empty, says why the prime is not used, and then the other fields are empty.
+    Fields: `points`, #X(F_v) (-1 when not counted); `order`, `invariants` of J(F_v); `images`, one row for
+    every divisor of degree 0 that was asked for, in the product of Z/invariants[i]; `allowed`, int64, shape
+    (count, len(invariants)), the classes of P - B for P in X(F_v), distinct and sorted; `reason`, how
+    completeness was proved; `skipped`, when not empty, says why the prime is not used, and then the other
+    fields are empty.
     """
 
     prime: int
@@ -65,24 +66,30 @@ def divisor_log(group: PicardGroup, divisor: Divisor) -> tuple[int, ...]:
     return tuple(total)
 
 
-def local_record(curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor], v: int) -> LocalRecord:
+def local_record(
+    curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor], v: int
+) -> LocalRecord:
     """The record at the prime v.
 
-    Arguments: `base` of degree 1, `divisors` of degree 0, v a prime below 2^20.  Never raises for a prime that cannot
-    be used: the record says why.  A prime without points gives a record with no allowed class.
+    Arguments: `base` of degree 1, `divisors` of degree 0, v a prime below 2^20.  Never raises for a prime
+    that cannot be used: the record says why.  A prime without points gives a record with no allowed class.
     """
     try:
         reduced = curve.modulo(v)
         if reduced.count == 0:
-            images = tuple(() for _ in divisors)
-            return LocalRecord(v, 0, 1, (), images, np.zeros((0, 0), dtype=np.int64), "X has no point modulo v")
+            nothing = np.zeros((0, 0), dtype=np.int64)
+            return LocalRecord(v, 0, 1, (), ((),) * len(divisors), nothing, "X has no point modulo v")
         group = picard_group(reduced)
         images = tuple(divisor_log(group, divisor) for divisor in divisors)
         origin = np.array(divisor_log(group, base), dtype=np.int64)
     except (BadReduction, Uncertified) as error:
         return _skip(v, error.reason)
     moduli = np.array(group.invariants, dtype=np.int64)
-    allowed = np.unique((group.point_logs - origin) % moduli, axis=0) if len(moduli) else np.zeros((1, 0), dtype=np.int64)
+    allowed = (
+        np.unique((group.point_logs - origin) % moduli, axis=0)
+        if len(moduli)
+        else np.zeros((1, 0), dtype=np.int64)
+    )
     return LocalRecord(v, reduced.count, group.order, group.invariants, images, allowed, group.reason)
 
 

@@ -10,7 +10,11 @@ from sieve.files.result import Result, Verdict
 
 
 def _table(header: Sequence[str], rows: Sequence[Sequence[str]], right: Sequence[bool]) -> list[str]:
-    widths = [max(len(header[i]), *(len(row[i]) for row in rows)) if rows else len(header[i]) for i in range(len(header))]
+    widths = [
+        max(len(header[i]), *(len(row[i]) for row in rows)) if rows else len(header[i])
+        for i in range(len(header))
+    ]
+
     def line(cells: Sequence[str]) -> str:
         parts = [c.rjust(w) if r else c.ljust(w) for c, w, r in zip(cells, widths, right, strict=True)]
         return "  " + "  ".join(parts).rstrip()
@@ -32,7 +36,8 @@ def _wrap(text: str, width: int = 96, indent: str = "  ") -> list[str]:
 def report_text(summary: dict[str, Any]) -> str:
     """The whole report.
 
-    Arguments: the plain data collected by the run command (result, curve, generators, coordinates, lists, plan, ..).
+    Arguments: the plain data collected by the run command (result, curve, generators, coordinates, lists,
+    plan, ..).
     """
     result: Result = summary["result"]
     curve, case = summary["curve"], summary["case"]
@@ -56,7 +61,12 @@ def report_text(summary: dict[str, Any]) -> str:
         for point, found in summary["coordinates"].items():
             coefficients = ", ".join(str(c) for c in found.coefficients)
             torsion = ", ".join(map(str, found.torsion))
-            rows.append([curve.format_point(point), f"({coefficients})" + (f" + torsion ({torsion})" if torsion else "")])
+            rows.append(
+                [
+                    curve.format_point(point),
+                    f"({coefficients})" + (f" + torsion ({torsion})" if torsion else ""),
+                ]
+            )
         lines += _table(["P", "[P - B]"], rows, [False, False])
     lines += ["", "Premises", "--------"]
     for premise in result.premises:
@@ -64,7 +74,10 @@ def report_text(summary: dict[str, Any]) -> str:
             lines += _wrap(f"[assumed] {premise.statement or premise.id}. Source: {premise.source}")
         else:
             primes = ", ".join(map(str, premise.primes))
-            lines += _wrap(f"[proved] {premise.statement or premise.id}" + (f" (reduction at v = {primes})" if primes else ""))
+            lines += _wrap(
+                f"[proved] {premise.statement or premise.id}"
+                + (f" (reduction at v = {primes})" if primes else "")
+            )
     if summary["lists"]:
         lines += ["", "Candidates", "----------"]
         for p, count, complete, source, precision in summary["lists"]:
@@ -72,30 +85,47 @@ def report_text(summary: dict[str, Any]) -> str:
             lines += _wrap(f"p = {p}: {kind} of {count} candidates, {precision} digits. Source: {source}")
         lines += _verdict_lines(result.verdicts)
     lines += ["", "Auxiliary primes", "----------------"]
-    used = sorted({v for verdict in result.verdicts for v in verdict.primes} | set(_source_primes(summary["relation_sources"])))
+    used = sorted(
+        {v for verdict in result.verdicts for v in verdict.primes}
+        | set(_source_primes(summary["relation_sources"]))
+    )
     groups = {g.prime: g for g in result.local}
     rows = [
-        [str(v), str(groups[v].points), structure_text(groups[v].structure), _images(summary["images"].get(v, ()))]
-        for v in used if v in groups
+        [
+            str(v),
+            str(groups[v].points),
+            structure_text(groups[v].structure),
+            _images(summary["images"].get(v, ())),
+        ]
+        for v in used
+        if v in groups
     ]
-    usable = f"{len(result.local)} primes are usable; those that some verdict or the surviving classes rest on:"
-    lines += [f"  {usable}"] + _table(["v", "#X(F_v)", "J(F_v)", "images of the generators"], rows, [True, True, False, False])
+    usable = (
+        f"{len(result.local)} primes are usable; those that some verdict or the surviving classes rest on:"
+    )
+    lines += [f"  {usable}"] + _table(
+        ["v", "#X(F_v)", "J(F_v)", "images of the generators"], rows, [True, True, False, False]
+    )
     if summary["skipped"]:
         lines += _wrap("Not used: " + "; ".join(f"v = {v} ({reason})" for v, reason in summary["skipped"]))
     survivors = result.survivors
     if survivors is not None:
         lines += ["", "Surviving classes without candidates", "------------------------------------"]
-        lines.append(f"  {survivors.count} classes modulo a subgroup of index {survivors.quotient}; largest set met: {summary['largest']}")
+        where = f"modulo a subgroup of index {survivors.quotient}"
+        lines.append(f"  {survivors.count} classes {where}; largest set met: {summary['largest']}")
         for step in summary["plan"]:
             lines.append(f"    {step}")
         if survivors.vectors:
             shown = survivors.vectors[:40]
-            lines.append("  shortest vectors: " + ", ".join("(" + ", ".join(map(str, v)) + ")" for v in shown))
+            lines.append(
+                "  shortest vectors: " + ", ".join("(" + ", ".join(map(str, v)) + ")" for v in shown)
+            )
             if len(survivors.vectors) > len(shown):
                 lines.append(f"  and {survivors.count - len(shown)} more")
         if survivors.barrier is not None:
             lines += _wrap(
-                f"Barrier: the coefficient vector of any other rational point has Euclidean norm at least {survivors.barrier}."
+                "Barrier: the coefficient vector of any other rational point has Euclidean norm at least "
+                f"{survivors.barrier}."
             )
     return "\n".join(lines) + "\n"
 
