@@ -91,7 +91,7 @@ class DiscIntegrals:
         for number, order in section.contacts:
             _, exponent = self.working(order, precision)
             even, odd = section.through(scheme.reduced(self.prime**exponent))
-            series = self.discs[number].restrict(even, odd, section.multiple, exponent, order * exponent)
+            series = self.discs[number].restrict(even, odd, section.multiple, exponent, order * exponent + 1)
             monic = distinguished_polynomial(series, self.prime, exponent)
             if monic.degree() != order:
                 raise InternalError(f"{monic.degree()} zeros in a disc where {order} were prescribed")

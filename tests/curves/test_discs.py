@@ -1,0 +1,116 @@
+"""Residue discs: centres, parameters and expansions satisfy the equations that define them."""
+
+from __future__ import annotations
+
+import pytest
+
+from sieve.curves.discs import ResidueDisc
+from sieve.errors import InternalError
+from sieve.exact.series import coefficients, evaluate_at, polynomial
+
+# (f, h, genus, p): even and odd degree, h zero and not, p = 2, rational and ramified points at infinity
+CURVES = [
+    ([1, -4, 2, -2, 1, 2, 1], [], 2, 3),
+    ([1, -4, 2, -2, 1, 2, 1], [], 2, 13),
+    ([0, 60, -112, 65, -14, 1], [], 2, 7),
+    ([0, -1, -1, 3, 1, -3, 1], [1], 2, 2),
+    ([6, 9, 0, -5, -1, 1], [1, 1, 0, 1], 2, 2),
+    ([0, -1, 0, 4, -4, 1], [1], 2, 2),
+    ([4, 8, 1, 3, 7, -2, 2, 1], [], 3, 5),
+]
+
+
+def points(f: list[int], h: list[int], genus: int, p: int) -> list[tuple[int, int, int]]:
+    """All points modulo p, by trying every pair."""
+
+    def on(x: int, y: int, z: int) -> bool:
+        hx = sum(c * x**i * z ** (genus + 1 - i) for i, c in enumerate(h))
+        fx = sum(c * x**i * z ** (2 * genus + 2 - i) for i, c in enumerate(f))
+        return (y * y + hx * y - fx) % p == 0
+
+    affine = [(x, y, 1) for x in range(p) for y in range(p) if on(x, y, 1)]
+    return affine + [(1, y, 0) for y in range(p) if on(1, y, 0)]
+
+
+def discs(f: list[int], h: list[int], genus: int, p: int) -> list[ResidueDisc]:
+    return [ResidueDisc(f, h, genus, p, point, i) for i, point in enumerate(points(f, h, genus, p))]
+
+
+@pytest.mark.parametrize("curve", CURVES)
+def test_expansions_satisfy_the_equation(curve: tuple[list[int], list[int], int, int]) -> None:
+    p = curve[3]
+    for disc in discs(*curve):
+        series = disc.expansion(9, 25)
+        value = series.b.mul_low(series.b + evaluate_at(disc.h, series.a, 25), 25)
+        assert value == evaluate_at(disc.f, series.a, 25)
+        assert (int(series.a[0]), int(series.b[0])) == disc.centre(9)
+        assert (int(series.a[0]) % p, int(series.b[0]) % p) == disc.residue
+        parameter = series.b if disc.ramified else series.a
+        assert coefficients(parameter, 25)[1:] == [1] + [0] * 23
+
+
+@pytest.mark.parametrize("curve", CURVES)
+def test_differentials_are_the_given_ones(curve: tuple[list[int], list[int], int, int]) -> None:
+    """(2b + h) times the form is a^i da/dt; at infinity x^j dx/(2y+h) = -a^(g-1-j) da/(2b+h)."""
+    genus, p = curve[2], curve[3]
+    for disc in discs(*curve):
+        series = disc.expansion(8, 20)
+        slope = 2 * series.b + evaluate_at(disc.h, series.a, 20)
+        da = series.a.derivative()
+        power = polynomial([1], p**8)
+        forms = [-form for form in series.forms[::-1]] if disc.at_infinity else series.forms
+        assert len(forms) == genus
+        for form in forms:
+            assert form.mul_low(slope, 19) == power.mul_low(da, 19)
+            power = power * series.a
+
+
+@pytest.mark.parametrize("curve", CURVES)
+def test_conjugate_discs_have_conjugate_centres(curve: tuple[list[int], list[int], int, int]) -> None:
+    p = curve[3]
+    by_residue = {(disc.at_infinity, disc.residue): disc for disc in discs(*curve)}
+    for (at_infinity, (a, b)), disc in by_residue.items():
+        ha = sum(c * a**i for i, c in enumerate(disc.h))
+        partner = by_residue[at_infinity, (a, (-b - ha) % p)]
+        a0, b0 = disc.centre(12)
+        value = sum(c * a0**i for i, c in enumerate(disc.h))
+        if not disc.ramified:
+            assert partner.centre(12) == (a0, (-b0 - value) % p**12)
+        else:
+            assert partner is disc
+            if p > 2:
+                assert (2 * b0 + value) % p**12 == 0
+
+
+@pytest.mark.parametrize("curve", CURVES)
+def test_points_of_a_disc(curve: tuple[list[int], list[int], int, int]) -> None:
+    p = curve[3]
+    for disc in discs(*curve):
+        series = disc.expansion(7, 8)
+        for t in (0, p, 5 * p, p**3):
+            a, b = disc.coordinates(t, 7)
+            assert disc.equation(a, b, p**7) == 0
+            assert (a - int(series.a(t))) % p**7 == 0 and (b - int(series.b(t))) % p**7 == 0
+            assert disc.parameter(a, b, 7) == t
+            x, y, z = disc.weighted(a, b)
+            assert (x % p, y % p, z % p) == disc.point
+        assert disc.centre(3) == tuple(c % p**3 for c in disc.centre(10))
+
+
+def test_sections_restrict_to_their_values() -> None:
+    """x^3 + 2 x + (x - 1) y, a section of multiple 4, at a point of every disc."""
+    f, h, genus, p = [1, -4, 2, -2, 1, 2, 1], [0, 1], 2, 7
+    for disc in discs(f, h, genus, p):
+        series = disc.restrict([0, 2, 0, 1], [-1, 1], 4, 6, 10)
+        a, b = disc.coordinates(3 * p, 6)
+        if disc.at_infinity:
+            # a = 1/x, y = b/a^3, divided by x^4
+            expected = a + 2 * a**3 + (1 - a) * b
+        else:
+            expected = a**3 + 2 * a + (a - 1) * b
+        assert (int(series(3 * p)) - expected) % p**6 == 0
+
+
+def test_the_numbering_of_discs_is_checked() -> None:
+    with pytest.raises(InternalError):
+        ResidueDisc([1, 0, 0, 0, 0, 1], [], 2, 7, (0, 3, 1), 0)
