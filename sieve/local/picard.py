@@ -21,12 +21,16 @@ from numpy.typing import NDArray
 from sieve.curves.hyperelliptic_mod import HigherPlace, LocalDivisor, ReducedHyperelliptic
 from sieve.errors import InternalError, Uncertified
 from sieve.exact.abelian import FiniteQuotient, quotient_by
+from sieve.local.exact_sections import close_lattice
 from sieve.local.order_bounds import exact_order, extension_count, order_lower_bound
 
 IntArray = NDArray[np.int64]
 
 FAST_FROM = {2: 30, 3: 30}
 """From this v on, sections through distinct points are used alone (by genus; 4 and up: 60)."""
+
+SECTION_LIMIT = 60_000
+"""Sections tried at a small prime before it is given up."""
 
 EXTENSION_LIMIT = 200_000
 """Largest v^e for which #X(F_{v^e}) is counted."""
@@ -351,102 +355,29 @@ def _from_exact_sections(curve: ReducedHyperelliptic, generated: bool) -> Picard
             )
         counts += [extension_count(curve, e) for e in range(2, g + 1)]
         lower, exact = exact_order(curve, counts), True
-    wanted = [higher_degree] if higher_degree > 1 or v > 23 else [1, 2]
-    for degree in wanted:
-        limit = 60_000 if degree == wanted[-1] else 1_500
-        result = _close_exactly(curve, degree, lower, exact, reason, limit)
-        if result is not None:
-            return result
-    raise Uncertified(v, "sections of low degree do not close the relation lattice")
-
-
-def _close_exactly(
-    curve: ReducedHyperelliptic, higher_degree: int, lower: int, exact: bool, reason: str, limit: int
-) -> PicardGroup | None:
-    """The group on the base of all places of degree 1 and `higher_degree`; None after `limit` sections."""
-    v, g = curve.prime, curve.genus
-    places: list[HigherPlace] = curve.places_of_degree(higher_degree) if higher_degree > 1 else []
-    column = {place: 1 + curve.orbit_count + i for i, place in enumerate(places)}
-    width = 1 + curve.orbit_count + len(places)
-    base_column = 1  # orbit 0 holds P0
-    relations: list[list[int]] = []
-    for orbit in curve.ramified.tolist():
-        row = [0] * width
-        row[0], row[1 + orbit] = -1, 2
-        relations.append(row)
-    for place in places:
-        if curve.higher_partner(place) == place:
-            row = [0] * width
-            row[0], row[column[place]] = -(len(place[0]) - 1), 2
-            relations.append(row)
-    rng = np.random.default_rng([v, g])
-    group: FiniteQuotient | None = None
-    tried_with, tries = 0, 0
-    seen: set[tuple[int, ...]] = set()
-    while tries < limit:
-        tries += 1
-        c = curve.random_section(rng, extra=0 if tries < 400 else tries % 5)
-        row_or_none = _exact_row(curve, curve.section_divisor(c), column, width)
-        if row_or_none is not None and tuple(row_or_none) not in seen:
-            seen.add(tuple(row_or_none))
-            relations.append(row_or_none)
-        fresh = len(relations) - tried_with
-        # where few sections split, look again after a while even with few new relations
-        enough = max(10, width // 4) if tried_with or places else 1
-        if len(relations) < width - 1 or fresh < (enough if tries % 400 else 1):
-            continue
-        tried_with = len(relations)
-        group = quotient_by(width - 1, [r[:base_column] + r[base_column + 1 :] for r in relations])
-        if group is not None and group.order < lower:
-            raise InternalError(f"v = {v}: index {group.order} below the bound {lower} for #J")
-        if group is not None and (group.order == lower if exact else group.order < 2 * lower):
-            break
-        group = None
-    if group is None:
-        return None
-    logs = [group.coordinates[0]] + [tuple([0] * len(group.invariants))] + list(group.coordinates[1:])
-    moduli = np.array(group.invariants, dtype=np.int64)
-    orbit_logs = np.array(logs[1 : 1 + curve.orbit_count], dtype=np.int64).reshape(
-        curve.orbit_count, len(moduli)
-    )
-    unit = np.array(logs[0], dtype=np.int64)
+    places = curve.places_of_degree(higher_degree) if higher_degree > 1 else []
+    closed = close_lattice(curve, places, lower, exact, SECTION_LIMIT)
+    if closed is None:
+        raise Uncertified(v, "sections of low degree do not close the relation lattice")
+    moduli = np.array(closed.invariants, dtype=np.int64)
+    orbit_logs = np.array([closed.logs[i] for i in range(curve.orbit_count)], dtype=np.int64)
+    orbit_logs = orbit_logs.reshape(curve.orbit_count, len(moduli))
+    unit = np.array(closed.unit, dtype=np.int64)
     point_logs = (curve.sign[:, None] * orbit_logs[curve.orbit] + curve.fibre[:, None] * unit) % moduli
-    result = PicardGroup(
+    how = "index equals the order from point counts" if exact else "index below twice the Weil bound"
+    return PicardGroup(
         curve,
-        group.invariants,
-        group.order,
+        closed.invariants,
+        closed.order,
         point_logs,
-        logs[0],
-        reason
-        + ("; index equals the order from point counts" if exact else "; index below twice the Weil bound"),
-        sections_used=tries,
+        closed.unit,
+        f"{reason}; {how}",
+        {key: log for key, log in closed.logs.items() if not isinstance(key, int)},
+        closed.sections,
     )
-    for place, position in column.items():
-        result.higher_logs[place] = logs[position]
-    return result
 
 
 def order_upper_exceeds(v: int, genus: int, points: int, bound: int) -> bool:
     """Can #J(F_v) reach `bound`?  By prod (v + 1 - x_i) <= ((v + 1) - mean x)^g."""
     total = genus * (v + 1) - (v + 1 - points)
     return total**genus >= bound * genus**genus
-
-
-def _exact_row(
-    curve: ReducedHyperelliptic, divisor: LocalDivisor, column: dict[HigherPlace, int], width: int
-) -> list[int] | None:
-    row = [0] * width
-    row[0] = -divisor.units
-    for index, multiplicity in divisor.points:
-        row[1 + int(curve.orbit[index])] += multiplicity * int(curve.sign[index])
-        row[0] += multiplicity * int(curve.fibre[index])
-    for place, multiplicity in divisor.places:
-        if place in column:
-            row[column[place]] += multiplicity
-            continue
-        partner = curve.higher_partner(place)
-        if partner not in column:
-            return None
-        row[column[partner]] -= multiplicity
-        row[0] += multiplicity * (len(place[0]) - 1)
-    return row
