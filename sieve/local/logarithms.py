@@ -10,6 +10,7 @@ from __future__ import annotations
 
 from fractions import Fraction
 
+from sieve.curves.discs import ResidueDisc
 from sieve.curves.divisors import Divisor, FibrePlace, MumfordPlace, Place, Point, RationalPlace
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.errors import InternalError, PrecisionLost
@@ -52,6 +53,11 @@ class PadicIntegrals:
         self._places: dict[Place, PadicVector] = {}
 
     # ---- discs and parameters ---------------------------------------------------------------------------
+
+    @property
+    def discs(self) -> list[ResidueDisc]:
+        """The residue discs, by number."""
+        return self._discs.discs
 
     def disc_of(self, point: Point) -> int:
         """The number of the residue disc of a rational point (weighted integer coordinates)."""
