@@ -19,7 +19,7 @@ from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.errors import InputError
 from sieve.local.records import LocalRecord
 
-SCHEMA = 1
+SCHEMA = 2
 _MAGIC = "residue-sieve local data"
 
 
@@ -135,6 +135,7 @@ def _encode(record: LocalRecord) -> str:
             "allowed": record.allowed.tolist(),
             "reason": record.reason,
             "skipped": record.skipped,
+            "expressible": record.expressible,
         },
         separators=(",", ":"),
     )
@@ -152,4 +153,5 @@ def _decode(text: str) -> LocalRecord:
         allowed,
         data["reason"],
         data["skipped"],
+        data["expressible"],
     )

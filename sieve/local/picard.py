@@ -42,7 +42,8 @@ class PicardGroup:
 
     `invariants`: invariant factors > 1, each dividing the next.  `point_logs`: int64, shape (N,
     len(invariants)), the class of P - P0 for every point in the curve's numbering.  `unit_log`: the class
-    of U (the fibre or section class). `reason` says how completeness was proved.
+    of U (the fibre or section class). `reason` says how completeness was proved; `rational_generation`, whether
+    rational points alone are known to generate.
     """
 
     curve: ReducedHyperelliptic
@@ -53,6 +54,7 @@ class PicardGroup:
     reason: str
     higher_logs: dict[HigherPlace, tuple[int, ...]] = field(default_factory=dict)
     sections_used: int = 0
+    rational_generation: bool = True
 
     @property
     def prime(self) -> int:
@@ -374,6 +376,7 @@ def _from_exact_sections(curve: ReducedHyperelliptic, generated: bool) -> Picard
         f"{reason}; {how}",
         {key: log for key, log in closed.logs.items() if not isinstance(key, int)},
         closed.sections,
+        generated,
     )
 
 

@@ -13,11 +13,12 @@ from functools import partial
 import numpy as np
 from numpy.typing import NDArray
 
-from sieve.curves.divisors import Divisor
+from sieve.curves.divisors import Divisor, MumfordPlace
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.errors import BadReduction, SieveError, Uncertified
 from sieve.local.condition import Condition
-from sieve.local.picard import PicardGroup, picard_group
+from sieve.local.picard import FAST_FROM, PicardGroup, picard_group
+from sieve.local.rational_sections import present, section_through
 
 
 @dataclass(frozen=True, eq=False)
@@ -28,7 +29,7 @@ class LocalRecord:
     every divisor of degree 0 that was asked for, in the product of Z/invariants[i]; `allowed`, int64, shape
     (count, len(invariants)), the classes of P - B for P in X(F_v), distinct and sorted; `reason`, how
     completeness was proved; `skipped`, when not empty, says why the prime is not used, and then the other
-    fields are empty.
+    fields are empty; `expressible`, whether sections with rational zeros prove all this, as proof logs need.
     """
 
     prime: int
@@ -39,6 +40,7 @@ class LocalRecord:
     allowed: NDArray[np.int64]
     reason: str
     skipped: str = ""
+    expressible: bool = True
 
     @property
     def usable(self) -> bool:
@@ -66,6 +68,19 @@ def divisor_log(group: PicardGroup, divisor: Divisor) -> tuple[int, ...]:
     return tuple(total)
 
 
+def expressible(group: PicardGroup, base: Divisor, divisors: Sequence[Divisor]) -> bool:
+    """Whether the group and the classes of the divisors can be shown by sections with rational zeros."""
+    places = dict.fromkeys(place for d in (base, *divisors) for _, place in d.terms)
+    if not all(
+        section_through(group.curve, place) for place in places if isinstance(place, MumfordPlace)
+    ):
+        return False
+    v, g = group.prime, group.curve.genus
+    if v >= FAST_FROM.get(g, 60) and not group.higher_logs:
+        return group.rational_generation
+    return present(group) is not None
+
+
 def local_record(
     curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor], v: int
 ) -> LocalRecord:
@@ -80,6 +95,7 @@ def local_record(
             nothing = np.zeros((0, 0), dtype=np.int64)
             return LocalRecord(v, 0, 1, (), ((),) * len(divisors), nothing, "X has no point modulo v")
         group = picard_group(reduced)
+        shown = expressible(group, base, divisors)
         images = tuple(divisor_log(group, divisor) for divisor in divisors)
         origin = np.array(divisor_log(group, base), dtype=np.int64)
     except (BadReduction, Uncertified) as error:
@@ -90,7 +106,9 @@ def local_record(
         if len(moduli)
         else np.zeros((1, 0), dtype=np.int64)
     )
-    return LocalRecord(v, reduced.count, group.order, group.invariants, images, allowed, group.reason)
+    return LocalRecord(
+        v, reduced.count, group.order, group.invariants, images, allowed, group.reason, expressible=shown
+    )
 
 
 def _guarded(curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor], v: int) -> LocalRecord:
