@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from flint import fmpz_mat, fmpz_mod_poly
+from flint import fmpz_mod_poly
 
 from sieve.curves.discs import ResidueDisc
 from sieve.curves.hyperelliptic import HyperellipticCurve
@@ -108,18 +108,11 @@ class DiscIntegrals:
         scheme = Scheme(u, w).reduced(self.prime**exponent)
         u, w = scheme.u, scheme.w
         a0, b0 = disc.centre(exponent)
-        if disc.ramified:
-            monic = _characteristic_polynomial(w - b0, u)
-        else:
+        if not disc.ramified:
             monic = u.compose(polynomial([a0, 1], self.prime**exponent))
-        return self.over_roots(number, coefficients(monic, degree + 1), precision)
+            return self.over_roots(number, coefficients(monic, degree + 1), precision)
+        # u^2 divides the norm of y - w, so two points over a ramified one would be a singular point
+        if degree > 1:
+            raise InternalError("a divisor lies twice over a ramified point")
+        return self.to_parameter(number, int(w(-u[0])) - b0, precision)
 
-
-def _characteristic_polynomial(value: fmpz_mod_poly, u: fmpz_mod_poly) -> fmpz_mod_poly:
-    """The monic polynomial whose roots are value(x), x the roots of u."""
-    n = int(u.degree())
-    modulus, rows, power = int(u.modulus()), [], value % u
-    for _ in range(n):
-        rows.append(coefficients(power, n))
-        power = power * polynomial([0, 1], modulus) % u
-    return polynomial([int(c) for c in fmpz_mat(rows).charpoly().coeffs()], modulus)

@@ -48,8 +48,8 @@ class PadicIntegrals:
             raise InternalError(f"{digits} digits of integrals were asked for")
         self.curve, self.prime, self.digits, self.genus = curve, prime, digits, curve.genus
         self.group = picard_group(curve.modulo(prime)) if group is None else group
-        self._discs = DiscIntegrals(curve, self.group.curve)
-        self._centres = centre_logarithms(self._discs, self.group, digits)
+        self._inside = DiscIntegrals(curve, self.group.curve)
+        self._centres = centre_logarithms(self._inside, self.group, digits)
         self._places: dict[Place, PadicVector] = {}
 
     # ---- discs and parameters ---------------------------------------------------------------------------
@@ -57,7 +57,7 @@ class PadicIntegrals:
     @property
     def discs(self) -> list[ResidueDisc]:
         """The residue discs, by number."""
-        return self._discs.discs
+        return self._inside.discs
 
     def disc_of(self, point: Point) -> int:
         """The number of the residue disc of a rational point (weighted integer coordinates)."""
@@ -69,7 +69,7 @@ class PadicIntegrals:
 
     def point_at(self, disc: int, t: int, exponent: int | None = None) -> tuple[int, int, int]:
         """The weighted coordinates of the point with parameter t, p | t, modulo p^exponent (or `digits`)."""
-        chart = self._discs.discs[disc]
+        chart = self.discs[disc]
         if t % self.prime:
             raise InternalError(f"the parameter {t} is outside the disc")
         return chart.weighted(*chart.coordinates(t, self.digits if exponent is None else exponent))
@@ -77,7 +77,7 @@ class PadicIntegrals:
     def parameter_of_point(self, point: Point, exponent: int | None = None) -> tuple[int, int]:
         """(t, n): the parameter modulo p^n of a rational point, n = exponent (default: `digits`)."""
         n = self.digits if exponent is None else exponent
-        chart = self._discs.discs[self.disc_of(point)]
+        chart = self.discs[self.disc_of(point)]
         x, y, z = point
         modulus = self.prime**n
         scale = pow(x if chart.at_infinity else z, -1, modulus)
@@ -113,7 +113,7 @@ class PadicIntegrals:
         if (bi * bi + bi * hi - fi) % modulus:
             raise ValueError(f"not on the curve modulo {p}^{n}")
         disc = self.group.curve.index_of(*((1, bi, 0) if at_infinity else (ai, bi, 1)))
-        chart = self._discs.discs[disc]
+        chart = self.discs[disc]
         # the parameter is one of the two coordinates, and may be known better than the other
         known = b.precision if chart.ramified else a.precision
         coordinate = (b if chart.ramified else a).residue(known)
@@ -126,7 +126,7 @@ class PadicIntegrals:
         if precision < 1:
             raise PrecisionLost(self.prime, precision, 1, "the parameter of a point")
         known = min(precision, self._centres.precision)
-        inside = self._discs.to_parameter(disc, t, known)
+        inside = self._inside.to_parameter(disc, t, known)
         return self._centres.logs[disc] + inside
 
     def log_point(self, point: Point) -> PadicVector:
@@ -141,7 +141,7 @@ class PadicIntegrals:
             if isinstance(place, RationalPlace):
                 known = self.log_point(place.point)
             elif isinstance(place, MumfordPlace):
-                known = scheme_logarithm(self._discs, self._centres, self.group, place)
+                known = scheme_logarithm(self._inside, self._centres, self.group, place)
             else:
                 known = PadicVector.zero(self.prime, self.genus, self._centres.precision)
             self._places[place] = known
