@@ -122,7 +122,8 @@ def _right_side(
 
 
 def _surplus(unused: list[list[int]], rows: list[list[int]], count: int) -> list[list[int]]:
-    """Relations to check: those not used, then the shortest sums of two."""
+    """Relations to check: those not used, then the shortest sums of two short ones."""
+    rows = sorted(rows, key=lambda row: (max(map(abs, row)), sum(map(abs, row)), row))[: 2 * SURPLUS]
     sums = [
         [a + s * b for a, b in zip(x, y, strict=True)]
         for i, x in enumerate(rows) for y in rows[: i + 1] for s in (1, -1)
