@@ -11,11 +11,12 @@ from typing import Any
 import click
 
 from sieve import __version__
+from sieve.commands import candidates as candidates_command
 from sieve.commands import inspect as inspect_command
 from sieve.commands import run as run_command
 from sieve.commands.common import Progress, parse_primes, workers
 from sieve.errors import Inconsistent, InputError, SieveError
-from sieve.files.result import json_text
+from sieve.files.result import json_text, write_whole
 from sieve.files.store import Store
 
 BAD_INPUT = 2
@@ -195,6 +196,43 @@ def inspect(
             click.echo(json_text(inspect_command.document(done)), nl=False)
         else:
             click.echo(inspect_command.text(done), nl=False)
+        return 0
+
+    return _guard(case, work)
+
+
+@main.command("candidates", epilog="Example: sieve candidates case.toml --prime 7 --precision 12 -o c7.json")
+@click.argument("case")
+@click.option("--prime", type=int, help="The odd prime (default: the best of several).")
+@click.option("--precision", type=int, help="Digits of every zero (default: enough for the sieve).")
+@click.option("-o", "--output", help="The candidate file to write (default: standard output).")
+@_common
+def candidates(
+    case: str,
+    prime: int | None,
+    precision: int | None,
+    output: str | None,
+    as_json: bool,
+    verbose: bool,
+    jobs: int,
+    store: str | None,
+) -> int:
+    """Linear Chabauty for CASE, whose rank must be below the genus: writes a complete candidate file."""
+    progress = Progress(verbose)
+
+    def work() -> int:
+        with workers(jobs) as executor:
+            done = candidates_command.execute(
+                case, prime=prime, precision=precision, executor=executor, progress=progress
+            )
+        progress.close()
+        file = json_text(candidates_command.candidate_document(done))
+        if output is not None:
+            write_whole(output, file)
+        if as_json:
+            click.echo(json_text(candidates_command.document(done)), nl=False)
+        else:
+            click.echo(file if output is None else candidates_command.text(done), nl=False)
         return 0
 
     return _guard(case, work)
