@@ -57,8 +57,8 @@ def matching_points(
             if candidate.kind == "disc":
                 out.append(point)
                 continue
-            parameter, digits = place.integrals.parameter_of_point(point)
-            if (parameter - candidate.parameter) % p ** min(digits, candidate.digits) == 0:
+            parameter, digits = place.integrals.parameter_of_point(point, candidate.digits)
+            if (parameter - candidate.parameter) % p**digits == 0:
                 out.append(point)
     return tuple(sorted(out))
 
