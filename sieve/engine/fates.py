@@ -19,6 +19,9 @@ from sieve.exact.primary import Characters
 
 Exponents = tuple[tuple[int, int], ...]
 
+SHARE = 8
+"""Labels that a run together leaves open are tried one by one if it came this close to the largest size."""
+
 
 @dataclass(frozen=True)
 class Use:
@@ -236,52 +239,64 @@ def _decide_one(relation: Relation, pool: Sequence[Relation], known: set[str], c
         found[label] = Fate(name, label, "single", (use,), exponents=seen)
 
     todo = [label for label in todo if label not in found]
-    _together(view, known_view, known, todo, pool, by_name, found, cap, max_joins, width, report)
-    for label in [label for label in todo if label not in found]:
-        found[label] = _one(view, label, pool, by_name, cap, max_joins, width, report)
+    known_state = _Known(known_view, known)
+    end: Outcome | None = None
+    for premium in PREMIUMS:
+        todo = [label for label in todo if label not in found]
+        if not todo or (end is not None and _exhausted(end.relation, pool)):
+            break
+        start = view.with_labels(todo)
+        end = _last(sieve_run(pool, start, cap=cap, max_joins=max_joins, width=width, premium=premium,
+                              report=report))
+        uses = _uses(end.plan.steps)
+        known_state.check(uses, by_name, cap)
+        for label in set(todo).difference(end.relation.labels):
+            found[label] = _several(view, label, uses, by_name, cap)
+    todo = [label for label in todo if label not in found]
+    for label in todo:
+        assert end is not None
+        # alone a label has room for more classes
+        alone = _one(view, label, pool, by_name, cap, max_joins, width, report) if (
+            len(todo) > 1 and SHARE * end.relation.count > cap) else None
+        found[label] = alone or _open(view, label, end, pool)
     return [found[label] for label in sorted(found)]
 
 
-def _together(view: Relation, known_view: Relation, known: set[str], todo: Sequence[str],
-              pool: Sequence[Relation], by_name: Mapping[str, Relation], found: dict[str, Fate], cap: int,
-              max_joins: int, width: int, report: Reporter | None) -> None:
-    """Sieve all undecided labels at once; labels that die are entered in `found`."""
-    if not todo:
-        return
-    start = view.with_labels(todo)
-    end = _last(sieve_run(pool, start, cap=cap, max_joins=max_joins, width=width, report=report))
-    uses = _uses(end.plan.steps)
-    # the rational candidates go the same way, as a check on the data
-    state = known_view
-    for use in uses:
-        following = replay(state, [use], by_name, cap)
-        if following is None:
-            break
-        missing = known.intersection(known_view.labels).difference(following.labels)
-        for label in sorted(missing):
-            raise Inconsistent(f"{view.name}: the rational candidate {label} is excluded by "
-                               f"{', '.join(dict.fromkeys(u.name for u in uses))}", label)
-        state = following
-    alive = set(end.relation.labels)
-    for label in todo:
-        if label not in alive:
-            found[label] = _several(view, label, uses, by_name, cap)
+class _Known:
+    """The rational candidates, which go the same way as the others, as a check on the data."""
+
+    def __init__(self, view: Relation, known: set[str]) -> None:
+        self.view, self.known = view, known
+
+    def check(self, uses: Sequence[Use], by_name: Mapping[str, Relation], cap: int) -> None:
+        """Raise `Inconsistent` if the uses exclude one of them."""
+        state = self.view
+        for use in uses:
+            following = replay(state, [use], by_name, cap)
+            if following is None:
+                break
+            missing = self.known.intersection(self.view.labels).difference(following.labels)
+            for label in sorted(missing):
+                raise Inconsistent(f"{self.view.name}: the rational candidate {label} is excluded by "
+                                   f"{', '.join(dict.fromkeys(u.name for u in uses))}", label)
+            state = following
+
+
+def _open(view: Relation, label: str, end: Outcome, pool: Sequence[Relation]) -> Fate:
+    """The fate of a label that a run left over."""
+    left = end.relation.with_labels([label])
+    return Fate(view.name, label, "open", _uses(end.plan.steps), classes=left.count, index=left.index,
+                exponents=_full(view), exhausted=_exhausted(end.relation, pool))
 
 
 def _one(view: Relation, label: str, pool: Sequence[Relation], by_name: Mapping[str, Relation], cap: int,
          max_joins: int, width: int, report: Reporter | None) -> Fate:
-    """Sieve one label by itself, in several ways if limits stop the first."""
-    for premium in PREMIUMS:
-        end = _last(sieve_run(pool, view.with_labels([label]), cap=cap, max_joins=max_joins, width=width,
-                              premium=premium, report=report))
-        exhausted = _exhausted(end.relation, pool)
-        if end.relation.count == 0 or exhausted:
-            break
-    uses = _uses(end.plan.steps)
+    """Sieve one label by itself."""
+    end = _last(sieve_run(pool, view.with_labels([label]), cap=cap, max_joins=max_joins, width=width,
+                          premium=PREMIUMS[0], report=report))
     if end.relation.count == 0:
-        return _several(view, label, uses, by_name, cap)
-    return Fate(view.name, label, "open", uses, classes=end.relation.count, index=end.relation.index,
-                exponents=_full(view), exhausted=exhausted)
+        return _several(view, label, _uses(end.plan.steps), by_name, cap)
+    return _open(view, label, end, pool)
 
 
 def _several(view: Relation, label: str, uses: Sequence[Use], by_name: Mapping[str, Relation],
