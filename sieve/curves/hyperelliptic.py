@@ -267,8 +267,8 @@ class HyperellipticCurve:
         return len(degrees) - 2 if odd else len(degrees) - 1
 
     def difference(self, point: Point, base: Divisor) -> Divisor:
-        """The divisor P - B."""
-        return Divisor.of([(1, RationalPlace(point))]) - base
+        """The divisor deg(B) P - B: P - B for a base divisor of degree 1, 2 P - U for a fibre U."""
+        return Divisor.of([(base.degree, RationalPlace(point))]) - base
 
 
 def _fractions(poly: flint.fmpq_poly) -> tuple[Fraction, ...]:

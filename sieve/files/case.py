@@ -31,6 +31,8 @@ MAX_MULTIPLICITY = 10**6
 MAX_ORDER = 10**9
 _POINT = "a point '(X : Y : Z)' or '(x, y)'"
 _PLACE = "a point, or a table with root_of and point, or a table with mumford"
+HALF_FIBRE = "half a fibre"
+"""The base of a curve without a known divisor of degree 1: [2 P - U] takes the place of [P - B]."""
 
 
 @dataclass(frozen=True)
@@ -60,7 +62,16 @@ class WrittenMumford:
     origin: Origin
 
 
-WrittenPlace = WrittenPoint | WrittenClosedPoint | WrittenMumford
+@dataclass(frozen=True)
+class WrittenFibres:
+    """`count` whole fibres of the map (x, y) -> x; `half`: half of them is meant (as a base)."""
+
+    count: int
+    origin: Origin
+    half: bool = False
+
+
+WrittenPlace = WrittenPoint | WrittenClosedPoint | WrittenMumford | WrittenFibres
 
 
 @dataclass(frozen=True)
@@ -76,9 +87,9 @@ class Case:
     """The content of a case file.
 
     Fields: `equation` (left side minus right side in x, y, z) and its text; `base` (one point is a divisor
-    with one term); `index_prime_to` (sorted primes that do not divide [J(Q) : G] on the user's word);
-    `generators` (as many as the rank, or none); `generators_from` ("known_points" or None);
-    `torsion` (pairs of an order >= 2 and a divisor).
+    with one term, half a fibre is one whole fibre); `index_prime_to` (sorted primes that do not divide
+    [J(Q) : G] on the user's word); `generators` (as many as the rank, or none); `generators_from`
+    ("known_points" or None); `torsion` (pairs of an order >= 2 and a divisor).
     """
 
     path: str
@@ -230,7 +241,11 @@ def check_coordinates(point: ParsedPoint[Any], origin: Origin) -> None:
 def _place(value: object, origin: Origin) -> WrittenPlace:
     if isinstance(value, str):
         return _point(value, origin)
-    table = as_table(value, origin, _PLACE, ["root_of", "point", "mumford"])
+    table = as_table(value, origin, _PLACE, ["root_of", "point", "mumford", "fibres"])
+    if table.has("fibres"):
+        if len(table.data) > 1:
+            raise origin.error("fibres together with other keys", _PLACE)
+        return WrittenFibres(table.integer("fibres", 1, MAX_MULTIPLICITY), origin)
     if table.has("mumford"):
         if len(table.data) > 1:
             raise origin.error("mumford together with other keys", _PLACE)
@@ -270,6 +285,8 @@ def _divisor(value: object, origin: Origin) -> WrittenDivisor:
 
 def _base(jacobian: Table) -> WrittenDivisor:
     value = jacobian.value("base", "a rational point or a divisor of degree 1")
+    if value == HALF_FIBRE:
+        return WrittenDivisor(((1, WrittenFibres(1, jacobian.at("base"), True)),), jacobian.at("base"))
     if isinstance(value, list):
         return _divisor(value, jacobian.at("base"))
     point = _point(value, jacobian.at("base"))

@@ -39,7 +39,8 @@ def divisor_text(curve: HyperellipticCurve, divisor: Divisor) -> str:
         elif "mumford" in place:
             name = "[" + ", ".join(place["mumford"]) + "]"
         else:
-            name = f"({place['fibres']} fibres of x)"
+            count = place["fibres"]
+            name = "(a fibre of x)" if count == 1 else f"({count} fibres of x)"
         sign = "-" if multiplicity < 0 else "+"
         size = "" if abs(multiplicity) == 1 else f"{abs(multiplicity)}*"
         parts.append(f"{sign} {size}{name}")

@@ -9,14 +9,15 @@ from pathlib import Path
 
 import flint
 
-from sieve.curves.divisors import Divisor, Place, Point, RationalPlace
+from sieve.curves.divisors import Divisor, FibrePlace, Place, Point, RationalPlace
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.curves.notation import Origin, Polynomial, dense, format_univariate, quote
 from sieve.files.case import (
     Case,
-    WrittenClosedPoint,
     WrittenDivisor,
+    WrittenFibres,
     WrittenMumford,
+    WrittenPlace,
     WrittenPoint,
     load_case,
 )
@@ -31,8 +32,9 @@ class ResolvedCase:
     """A case whose data are points and divisors of one curve, in the coordinates of its integral model.
 
     Fields: `case` as read; `curve`; `known_points` in the order of the file, repetitions removed; `base` of
-    degree 1, and `base_point` when it is one rational point; `generators` of degree 0, as many as the rank
-    (none when `case.generators_from` is set); `torsion`, pairs (claimed order, divisor of degree 0).
+    degree 1 (a whole fibre for "half a fibre"), and `base_point` when it is one rational point; `generators`
+    of degree 0, as many as the rank (none when `case.generators_from` is set); `torsion`, pairs (claimed
+    order, divisor of degree 0).
     """
 
     case: Case
@@ -55,7 +57,8 @@ def resolve(case: Case) -> ResolvedCase:
     known: dict[Point, None] = {}
     for written in case.known_points:
         known[_rational_point(curve, written)] = None
-    base = _divisor(curve, case.base, 1)
+    halved = any(isinstance(place, WrittenFibres) and place.half for _, place in case.base.terms)
+    base = _divisor(curve, case.base, 2 if halved else 1)
     base_point = None
     if len(base.terms) == 1 and isinstance(base.terms[0][1], RationalPlace):
         base_point = base.terms[0][1].point
@@ -130,9 +133,11 @@ def _rational_point(curve: HyperellipticCurve, written: WrittenPoint) -> Point:
         raise written.origin.error(found, "a point of the curve") from None
 
 
-def _place(curve: HyperellipticCurve, written: WrittenPoint | WrittenClosedPoint | WrittenMumford) -> Place:
+def _place(curve: HyperellipticCurve, written: WrittenPlace) -> Place:
     if isinstance(written, WrittenPoint):
         return RationalPlace(_rational_point(curve, written))
+    if isinstance(written, WrittenFibres):
+        return FibrePlace(written.count)
     if isinstance(written, WrittenMumford):
         if len(written.w) >= max(len(written.u), 1):
             raise written.origin.error("mumford with deg w >= deg u", "deg w < deg u")

@@ -67,8 +67,12 @@ class ChabautyPlace:
         self.group: PicardGroup = picard_group(curve.modulo(p))
         self.integrals = PadicIntegrals(curve, p, min(digits, useful_digits(p)), self.group)
 
+        #: whether the class in J(F_p) is part of the conditions
+        self.reduction = True
+
     def attach(self, base: Divisor, generators: Sequence[Divisor]) -> None:
         """Compute the images of the generators and of the base divisor."""
+        self.degree = base.degree
         self.base_class = divisor_log(self.group, base)
         self.base_log = self.integrals.log_divisor(base)
         self.classes = [divisor_log(self.group, d) for d in generators]
@@ -77,10 +81,10 @@ class ChabautyPlace:
     # ---- coordinates of points ------------------------------------------------------------------------
 
     def class_of_disc(self, disc: int) -> tuple[int, ...]:
-        """The class of P - B in J(F_p) for P in the disc."""
+        """The class of deg(B) P - B in J(F_p) for P in the disc."""
         invariants = self.group.invariants
         return tuple(
-            (int(a) - b) % d
+            (self.degree * int(a) - b) % d
             for a, b, d in zip(self.group.point_logs[disc], self.base_class, invariants, strict=True)
         )
 
@@ -89,7 +93,7 @@ class ChabautyPlace:
 
         Returns None where the logs of the generators are dependent to the known precision or r > g.
         """
-        target = self.integrals.log_point(point) - self.base_log
+        target = self.degree * self.integrals.log_point(point) - self.base_log
         return _solve(self.prime, [log.numbers for log in self.logs], target.numbers)
 
     # ---- conditions -----------------------------------------------------------------------------------
@@ -131,7 +135,7 @@ class ChabautyPlace:
         for c in candidates:
             log = self.integrals.log_parameter(int(c.disc or 0), c.parameter, c.digits)
             known = min(known, log.precision)
-            vectors.append(log - self.base_log)
+            vectors.append(self.degree * log - self.base_log)
         if known < min(digits, 1):
             raise PrecisionLost(p, known, 1, "abelian integrals")
         # multiply by p^shift: every value becomes an integer modulo p^(known + shift)
@@ -142,10 +146,12 @@ class ChabautyPlace:
         q = p**exponent if exponent > 0 else 1
         images, rows = [], []
         for reduced, log in zip(self.classes, self.logs, strict=True):
-            images.append(tuple(reduced) + (_scaled(log, shift, q) if q > 1 else ()))
+            head = tuple(reduced) if self.reduction else ()
+            images.append(head + (_scaled(log, shift, q) if q > 1 else ()))
         for c, vector in zip(candidates, vectors, strict=True):
-            rows.append(self.class_of_disc(int(c.disc or 0)) + (_scaled(vector, shift, q) if q > 1 else ()))
-        moduli = self.group.invariants + ((q,) * g if q > 1 else ())
+            head = self.class_of_disc(int(c.disc or 0)) if self.reduction else ()
+            rows.append(head + (_scaled(vector, shift, q) if q > 1 else ()))
+        moduli = (self.group.invariants if self.reduction else ()) + ((q,) * g if q > 1 else ())
         return _labelled(name, p, moduli, images, rows, [c.id for c in candidates], complete)
 
     def _from_coefficients(
@@ -162,7 +168,7 @@ class ChabautyPlace:
         moduli = [p**e for e in exponents]
         free = [i for i, m in enumerate(moduli) if m > 1]
         torsion = list(range(len(orders))) if first.torsion else []
-        disc = first.disc is not None
+        disc = first.disc is not None and self.reduction
         images = []
         for i in range(rank + len(orders)):
             row = [int(i == j) % moduli[j] for j in free] + [int(i == rank + j) % orders[j] for j in torsion]

@@ -95,10 +95,11 @@ def chabauty_zeros(
 ) -> ChabautyZeros:
     """All common zeros of the integrals of the annihilating differentials, each known modulo p^digits.
 
-    Arguments: `base` of degree 1; `generators`, as many divisors of degree 0 as the rank of J(Q) at most,
-    fewer than the genus; `prime` odd, of good reduction; `digits` >= 1 of the local parameter.  The working
-    precision grows until every zero has its digits; a ball with several zeros is given to `digits` digits, or
-    to fewer when even `LARGEST_FACTOR` times as many computed digits do not decide it.
+    Arguments: `base` of degree 1 (or 2: half of it is meant); `generators`, as many divisors of degree 0 as
+    the rank of J(Q) at most, fewer than the genus; `prime` odd, of good reduction; `digits` >= 1 of the local
+    parameter.  The working precision grows until every zero has its digits; a ball with several zeros is
+    given to `digits` digits, or to fewer when even `LARGEST_FACTOR` times as many computed digits do not
+    decide it.
     Raises `PrecisionLost` when the logarithms of the generators, or all integrals over some disc, vanish to
     that precision; `BadReduction`, `Uncertified`, `Inconsistent`.
     """
@@ -129,7 +130,7 @@ def _at_precision(
     integrals = PadicIntegrals(curve, prime, working, group)
     logs = [integrals.log_divisor(d) for d in generators]
     forms = exact_annihilators(curve, logs, annihilators(logs, prime, curve.genus, working))
-    origin = integrals.log_divisor(base)
+    origin = Fraction(1, base.degree) * integrals.log_divisor(base)
     found, alone = [], []
     for disc in integrals.discs:
         constant = integrals.log_parameter(disc.number, 0, working) - origin

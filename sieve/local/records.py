@@ -86,8 +86,9 @@ def local_record(
 ) -> LocalRecord:
     """The record at the prime v.
 
-    Arguments: `base` of degree 1, `divisors` of degree 0, v a prime below 2^20.  Never raises for a prime
+    Arguments: `base` of degree 1 or 2, `divisors` of degree 0, v a prime below 2^20.  Never raises for a prime
     that cannot be used: the record says why.  A prime without points gives a record with no allowed class.
+    The allowed classes are those of deg(B) P - B.
     """
     try:
         reduced = curve.modulo(v)
@@ -102,7 +103,7 @@ def local_record(
         return _skip(v, error.reason)
     moduli = np.array(group.invariants, dtype=np.int64)
     allowed = (
-        np.unique((group.point_logs - origin) % moduli, axis=0)
+        np.unique((base.degree * group.point_logs - origin) % moduli, axis=0)
         if len(moduli)
         else np.zeros((1, 0), dtype=np.int64)
     )
