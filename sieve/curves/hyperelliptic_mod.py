@@ -467,16 +467,17 @@ class ReducedHyperelliptic:
         """A random c: of degree <= g + 1 + extra, through a random number of rational points."""
         v = self.prime
         size = self.genus + 2 + extra
-        through = int(rng.integers(0, size + 1))
+        # many points on it leave few other zeros; all numbers must occur where points are scarce
+        through = size if rng.random() < 0.6 else int(rng.integers(0, size + 1))
         values: dict[int, int] = {}
         if self.affine_count:
             for i in rng.permutation(self.affine_count)[:through]:
                 values.setdefault(int(self.x[i]), int(self.y[i]))
         c = self.interpolate(sorted(values.items()))
-        vanishing = self._poly([1])
-        for a in values:
-            vanishing = vanishing * self._poly([-a, 1])
         if len(values) < size:
+            vanishing = self._poly([1])
+            for a in values:
+                vanishing = vanishing * self._poly([-a, 1])
             c = c + vanishing * self._poly([int(a) for a in rng.integers(0, v, size - len(values))])
         return c
 

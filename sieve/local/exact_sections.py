@@ -24,7 +24,7 @@ Key = int | HigherPlace
 Combination = dict[int, int]
 """An integer combination: column -> coefficient; column 0 is U, column 1 + i the i-th base element."""
 
-PATIENCE = 150
+PATIENCE = 35
 """Sections without a new definition after which an unknown generator joins the base."""
 
 
