@@ -13,6 +13,7 @@ import click
 from sieve import __version__
 from sieve.commands import candidates as candidates_command
 from sieve.commands import inspect as inspect_command
+from sieve.commands import propose as propose_command
 from sieve.commands import run as run_command
 from sieve.commands.common import Progress, parse_primes, workers
 from sieve.errors import Inconsistent, InputError, SieveError
@@ -102,6 +103,12 @@ def _bound(value: int | None, option: str = "--bound") -> int | None:
 )
 @click.option("--primes", help="Use exactly these auxiliary primes, separated by commas.")
 @click.option("--time", "seconds", type=float, help="Start no new local data after this many seconds.")
+@click.option(
+    "--proof",
+    type=click.Choice(["trimmed", "full"]),
+    default="trimmed",
+    help="Keep in the proof log what the verdicts need, or every usable prime.",
+)
 @_common
 def run(
     case: str,
@@ -110,6 +117,7 @@ def run(
     bound: int | None,
     primes: str | None,
     seconds: float | None,
+    proof: str,
     as_json: bool,
     verbose: bool,
     jobs: int,
@@ -143,7 +151,7 @@ def run(
                 executor=executor,
                 progress=progress,
             )
-        result = run_command.write_files(done, directory)
+        result = run_command.write_files(done, directory, proof == "full")
         progress.close()
         if as_json:
             click.echo(json_text(result.document()), nl=False)
@@ -159,21 +167,34 @@ def run(
 @click.option("--bound", type=int, help="Show auxiliary primes below this.")
 @click.option("--primes", help="Show exactly these auxiliary primes, separated by commas.")
 @click.option("--padic", multiple=True, help="P:N, coefficients of the known points at P with N digits.")
+@click.option("--propose", is_flag=True, help="Print a case file with a base and generators from a search.")
 @_common
 def inspect(
     case: str,
     bound: int | None,
     primes: str | None,
     padic: tuple[str, ...],
+    propose: bool,
     as_json: bool,
     verbose: bool,
     jobs: int,
     store: str | None,
 ) -> int:
-    """Check CASE: groups J(F_v), torsion, independence, saturation, coefficients of the known points."""
+    """Check CASE: groups J(F_v), torsion, independence, saturation, coefficients of the known points.
+
+    With --propose CASE may lack known points, base and generators: they are looked for.
+    """
     progress = Progress(verbose)
 
     def work() -> int:
+        if propose:
+            with workers(jobs) as executor:
+                proposed = propose_command.execute(case, executor)
+            if as_json:
+                click.echo(json_text(propose_command.document(proposed)), nl=False)
+            else:
+                click.echo(propose_command.text(proposed), nl=False)
+            return 0
         wanted = None if primes is None else parse_primes(primes)
         limit = _bound(bound)
         kept = Store(store) if store else None

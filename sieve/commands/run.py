@@ -2,16 +2,15 @@
 
 from __future__ import annotations
 
-import json
 import time
 from collections.abc import Callable, Sequence
 from concurrent.futures import Executor
 from dataclasses import dataclass, field
 from pathlib import Path
 
-from sieve import __version__
 from sieve.commands.common import Progress, StoredInvestigation, problem_of
 from sieve.commands.premises import premises_of
+from sieve.commands.prooflog import proof_of, restrict_to_log
 from sieve.curves.divisors import Point
 from sieve.curves.search import search_points
 from sieve.engine.investigation import FIRST_BOUND, Investigation
@@ -34,7 +33,6 @@ from sieve.files.candidates import (
     model_coordinates,
 )
 from sieve.files.case import load_case
-from sieve.files.notation_out import divisor_document
 from sieve.files.resolve import ResolvedCase, read_case
 from sieve.files.result import (
     LocalGroup,
@@ -48,6 +46,7 @@ from sieve.files.result import (
 )
 from sieve.files.store import Store
 from sieve.local.chabauty import ChabautyPlace, LocatedCandidate
+from sieve.proof.writer import decided_list, points_of
 from sieve.report.text import report_text
 
 SEARCH_HEIGHT = 200
@@ -171,7 +170,7 @@ def execute(
             raise InputError(file.path, "prime", f"a second list for {file.prime}", "one list for each prime")
         if not resolved.curve.is_smooth(file.prime):
             check_candidates(file, resolved.curve, resolved.case.rank, ())
-    investigation = Investigation(problem_of(resolved), executor, progress)
+    investigation = Investigation(problem_of(resolved), executor, progress, expressible=True)
     deadline = None if seconds is None else started + seconds
     stored = StoredInvestigation(investigation, store)
     investigation.establish(stored.gather)
@@ -181,6 +180,7 @@ def execute(
         check_candidates(file, resolved.curve, resolved.case.rank, investigation.orders)
         place = chabauty_place(investigation, file.prime, file.precision, file.path)
         lists.append(CandidateList(place, locate(place, file), file.complete, file.source, file.path))
+        restrict_to_log(investigation, lists[-1])
     known = set(resolved.known_points)
     found = [p for p in search_points(resolved.curve, SEARCH_HEIGHT) if p not in known]
     run = Run(resolved, investigation, lists, files, found)
@@ -235,20 +235,14 @@ def statement(run: Run) -> str:
     left = [d for d in run.decisions if d.verdict == "open"]
     points = rational_points(run)
     shown = ", ".join(curve.format_point(p) for p in points)
-    complete = [listing for listing in run.lists if listing.complete]
-    decided = [
-        listing
-        for listing in complete
-        if all(
-            d.verdict != "open" and (d.verdict != "rational" or d.sole)
-            for d in run.decisions
-            if d.prime == listing.place.prime
-        )
-    ]
-    if decided:
-        p = decided[0].place.prime
-        why = f"(The {p}-adic list is complete and every candidate in it is decided.)"
-        return f"X(Q) has exactly {len(points)} points: {shown}. {why}"
+    decided = decided_list(run.lists, run.decisions)
+    if decided is not None:
+        why = f"(The {decided.place.prime}-adic list is complete and every candidate in it is decided.)"
+        exact = points_of(decided, run.decisions)
+        if not exact:
+            return f"X(Q) is empty. {why}"
+        how_many = f"{len(exact)} point" + ("s" if len(exact) > 1 else "")
+        return f"X(Q) has exactly {how_many}: {', '.join(map(curve.format_point, exact))}. {why}"
     text = f"{eliminated} candidates are proved not to be rational."
     if left:
         text += f" {len(left)} stay open."
@@ -302,66 +296,13 @@ def result_of(run: Run) -> Result:
     )
 
 
-def trace_lines(run: Run) -> str:
-    """A plain trace of the run as JSON lines: header, local groups, plan, fates."""
-    curve = run.resolved.curve
-    lines: list[object] = [
-        {
-            "record": "header",
-            "program": f"residue-sieve {__version__}",
-            "curve": {"f": curve.f, "h": curve.h},
-            "generators": [divisor_document(curve, d) for d in run.investigation.generators],
-            "torsion_orders": run.investigation.orders,
-            "candidate_files": [
-                {"prime": f.prime, "sha256": f.sha256, "source": f.source} for f in run.files
-            ],
-        }
-    ]
-    for record in run.investigation.usable:
-        lines.append(
-            {
-                "record": "local",
-                "prime": record.prime,
-                "points": record.points,
-                "structure": record.invariants,
-                "images": run.investigation.images(record),
-                "certified": record.reason,
-            }
-        )
-    for record in run.investigation.skipped:
-        lines.append({"record": "skipped", "prime": record.prime, "reason": record.skipped})
-    for step in run.steps:
-        lines.append(
-            {
-                "record": "step",
-                "kind": step.kind,
-                "condition": step.name,
-                "exponents": step.exponents,
-                "predicted": float(f"{step.predicted:.6g}"),
-                "actual": step.actual,
-                "index": str(step.index),
-            }
-        )
-    for d in run.decisions:
-        lines.append(
-            {
-                "record": "fate",
-                "prime": d.prime,
-                "id": d.id,
-                "verdict": d.verdict,
-                "primes": d.primes,
-                "reason": d.reason,
-            }
-        )
-    return "".join(json.dumps(line, separators=(",", ":")) + "\n" for line in lines)
-
-
-def write_files(run: Run, directory: str | Path) -> Result:
+def write_files(run: Run, directory: str | Path, full_proof: bool = False) -> Result:
     """Write result.json, proof.jsonl and report.txt into the directory (made if needed)."""
     path = make_directory(directory)
     result = result_of(run)
-    write_whole(path / "proof.jsonl", trace_lines(run))
-    write_whole(path / "report.txt", report_text(run_summary(run, result)))
+    proof = proof_of(run, full_proof)
+    write_whole(path / "proof.jsonl", proof.text)
+    write_whole(path / "report.txt", report_text(run_summary(run, result) | {"proof": proof}))
     write_result(path / "result.json", result)
     return result
 

@@ -123,6 +123,16 @@ class _Echelon:
         return vector
 
 
+def rank_of_columns(ell: int, columns: Sequence[Sequence[int]]) -> int:
+    """The rank over F_l of rows of integers of one length.
+
+    >>> rank_of_columns(3, [[1, 2], [2, 1], [0, 1]])
+    2
+    """
+    echelon = _Echelon(ell)
+    return sum(echelon.add([c % ell for c in column]) for column in columns)
+
+
 def saturation(
     ell: int,
     rank: int,

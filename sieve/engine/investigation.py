@@ -4,7 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Callable, Collection, Iterable, Sequence
 from concurrent.futures import Executor
+from dataclasses import replace
 
+from sieve.curves.branch import branch_factors
 from sieve.curves.divisors import Divisor, Point
 from sieve.engine.coordinates import (
     PointCoordinates,
@@ -33,14 +35,20 @@ class Investigation:
     """Everything the engine knows of a problem so far.
 
     Use: `gather(primes)` adds auxiliary primes; `establish()` fixes the generators in use and checks the
-    data, once; then `generators`, `orders`, `coordinates`, `saturation_at`, `relations` answer.  All
+    data, once; then `generators`, `orders`, `coordinates`, `saturation_at`, `relations` answer.  With
+    `expressible` only primes are used whose data a proof log can express.  All
     methods raise `Inconsistent` when the data contradict each other, naming the witness.
     """
 
     def __init__(
-        self, problem: Problem, executor: Executor | None = None, progress: Progress | None = None
+        self,
+        problem: Problem,
+        executor: Executor | None = None,
+        progress: Progress | None = None,
+        expressible: bool = False,
     ) -> None:
         self.problem = problem
+        self.expressible = expressible
         self.executor = executor
         self.progress = progress
         self.records: dict[int, LocalRecord] = {}
@@ -52,7 +60,9 @@ class Investigation:
         self.orders: tuple[int, ...] = ()
         self.coordinates: dict[Point, PointCoordinates] = {}
         self._saturation: dict[int, tuple[int, Saturation]] = {}
-        self._exact_two = problem.curve.two_torsion_dimension()
+        self.branch = branch_factors(problem.curve.square_form)
+        #: dim J(Q)[2], where factors that are proved irreducible tell it
+        self.exact_two = problem.curve.two_torsion_dimension() if self.branch else None
 
     # ---- local data ---------------------------------------------------------------------------------
 
@@ -80,12 +90,22 @@ class Investigation:
     @property
     def usable(self) -> list[LocalRecord]:
         """The records that give conditions, by prime."""
-        return [self.records[v] for v in sorted(self.records) if self.records[v].usable]
+        return [self.records[v] for v in sorted(self.records) if self._serves(self.records[v])]
+
+    def _serves(self, record: LocalRecord) -> bool:
+        return record.usable and (record.expressible or not self.expressible)
 
     @property
     def skipped(self) -> list[LocalRecord]:
         """The primes that were not used, with their reasons."""
-        return [self.records[v] for v in sorted(self.records) if not self.records[v].usable]
+        out = []
+        for v in sorted(self.records):
+            record = self.records[v]
+            if not record.usable:
+                out.append(record)
+            elif not self._serves(record):
+                out.append(replace(record, skipped="no sections with rational zeros present the group"))
+        return out
 
     def images(self, record: LocalRecord) -> tuple[tuple[int, ...], ...]:
         """The images of the generators of L (free, then torsion) in J(F_v)."""
@@ -206,7 +226,7 @@ class Investigation:
                 self.orders,
                 records,
                 [self.images(r) for r in records],
-                self._exact_two,
+                self.exact_two,
             )
         self._saturation[ell] = (len(records), found)
         return found
@@ -244,7 +264,7 @@ class Investigation:
             return False
         for ell in candidates:
             claimed = sum(1 for t in self.orders if t % ell == 0)
-            if torsion_dimension(ell, self.usable, self._exact_two).dimension == claimed == 0:
+            if torsion_dimension(ell, self.usable, self.exact_two).dimension == claimed == 0:
                 continue
             exponent = 0
             rest = order

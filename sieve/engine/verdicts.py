@@ -15,19 +15,30 @@ from sieve.engine.relation import Relation, relation_from_condition
 from sieve.engine.survivors import Barrier, Survivor, barrier, short_vectors
 from sieve.errors import Inconsistent
 from sieve.local.chabauty import ChabautyPlace, LocatedCandidate
+from sieve.local.condition import Condition
 
 VerdictKind = Literal["eliminated", "rational", "open"]
 
 
 @dataclass
 class CandidateList:
-    """The candidates at one Chabauty prime; `complete`: every rational point is claimed to be near one."""
+    """The candidates at one Chabauty prime; `complete`: every rational point is claimed to be near one.
+
+    `blocked`: when not empty, why points and discs of this list cannot be eliminated (in words).
+    """
 
     place: ChabautyPlace
     candidates: list[LocatedCandidate]
     complete: bool
     source: str
     name: str
+    blocked: str = ""
+
+    def conditions(self, rank: int, orders: Sequence[int]) -> list[Condition]:
+        """The labelled conditions of the candidates that are not blocked."""
+        usable = [c for c in self.candidates if not self.blocked or c.kind == "coefficients"]
+        whole = self.complete and len(usable) == len(self.candidates)
+        return self.place.conditions(usable, rank, orders, whole)
 
 
 @dataclass(frozen=True)
@@ -100,10 +111,7 @@ def candidate_relations(
     labelled: list[Relation] = []
     lists_of: dict[str, int] = {}
     for number, listing in enumerate(lists):
-        conditions = listing.place.conditions(
-            listing.candidates, investigation.problem.rank, investigation.orders, listing.complete
-        )
-        for condition in conditions:
+        for condition in listing.conditions(investigation.problem.rank, investigation.orders):
             relation = relation_from_condition(condition, ells)
             labelled.append(relation)
             lists_of[condition.name] = number
@@ -143,6 +151,10 @@ def decide_candidates(
             points = matched.get((number, candidate.id))
             if points:
                 out[number, candidate.id] = _rational(listing, candidate, points, known)
+            elif listing.blocked and candidate.kind != "coefficients":
+                out[number, candidate.id] = Decision(
+                    listing.place.prime, candidate.id, "open", listing.blocked, hint="another Chabauty prime"
+                )
     for fate in decide(labelled, auxiliary, rational, report=report):
         number = lists_of[fate.condition]
         out[number, fate.label] = _from_fate(lists[number].place.prime, fate)
@@ -164,7 +176,10 @@ def _rational(
         notes.append(f"multiplicity {candidate.multiplicity}: the disc may hide a second rational point")
     if candidate.kind == "disc" and candidate.at_most != 1:
         notes.append("a whole residue disc without the bound at_most = 1 may hold other rational points")
-    sole = not notes or (candidate.at_most == 1 and len(points) == 1)
+    if candidate.kind == "coefficients":
+        notes.append("other rational points may have coefficients that agree to the digits given")
+    bounded = candidate.at_most == 1 and candidate.kind != "coefficients"
+    sole = not notes or (bounded and len(points) == 1)
     return Decision(
         listing.place.prime,
         candidate.id,

@@ -42,8 +42,8 @@ class PicardGroup:
 
     `invariants`: invariant factors > 1, each dividing the next.  `point_logs`: int64, shape (N,
     len(invariants)), the class of P - P0 for every point in the curve's numbering.  `unit_log`: the class
-    of U (the fibre or section class). `reason` says how completeness was proved; `rational_generation`, whether
-    rational points alone are known to generate.
+    of U (the fibre or section class). `reason` says how completeness was proved; `rational_generation`,
+    whether rational points alone are known to generate.
     """
 
     curve: ReducedHyperelliptic

@@ -75,7 +75,9 @@ def zeros_of(curve: ReducedHyperelliptic, c: flint.nmod_poly) -> tuple[int, ...]
     return tuple(i for i, multiplicity in divisor.points for _ in range(multiplicity))
 
 
-def section_through(curve: ReducedHyperelliptic, place: MumfordPlace, tries: int = PLACE_LIMIT) -> Section | None:
+def section_through(
+    curve: ReducedHyperelliptic, place: MumfordPlace, tries: int = PLACE_LIMIT
+) -> Section | None:
     """A section that vanishes on a divisor over Q and whose other zeros, those listed, are rational.
 
     The zeros outside the divisor are the roots of the norm divided by u (and the point at infinity).  None
@@ -117,7 +119,11 @@ def _poly(values: Sequence[int], v: int) -> flint.nmod_poly:
 
 
 def _multiplier(
-    curve: ReducedHyperelliptic, u: flint.nmod_poly, w: flint.nmod_poly, outside: list[int], size: int,
+    curve: ReducedHyperelliptic,
+    u: flint.nmod_poly,
+    w: flint.nmod_poly,
+    outside: list[int],
+    size: int,
     rng: np.random.Generator,
 ) -> flint.nmod_poly:
     """A random t with `size` coefficients such that w + u t goes through up to that many rational points."""
@@ -227,8 +233,11 @@ def _few_base_points(group: PicardGroup) -> Presentation | None:
     rng = np.random.default_rng([v, g, 17])
     leaders, origin = _leaders(curve), _origin(group)
     ramified = set(curve.ramified.tolist())
-    affine = [o for o in rng.permutation(curve.orbit_count).tolist()
-              if o not in ramified and leaders[o] < curve.affine_count and leaders[o] != origin]
+    affine = [
+        o
+        for o in rng.permutation(curve.orbit_count).tolist()
+        if o not in ramified and leaders[o] < curve.affine_count and leaders[o] != origin
+    ]
     start = int(curve.orbit[origin])
     size = max(g + 4, int(1.1 * curve.orbit_count**0.5) + 2 + 4 * (g - 2))
     base = affine[: min(size, len(affine))]
@@ -306,7 +315,7 @@ def _section(curve: ReducedHyperelliptic, zeros: IntArray) -> Section:
 
 
 def _all_points_as_base(group: PicardGroup) -> Presentation | None:
-    """Small v: every point is in the base, sections of several degrees with contact orders close the lattice."""
+    """Small v: every point is in the base; sections of several degrees, with contact orders."""
     curve = group.curve
     leaders, origin = _leaders(curve), _origin(group)
     start = int(curve.orbit[origin])

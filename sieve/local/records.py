@@ -86,8 +86,8 @@ def local_record(
 ) -> LocalRecord:
     """The record at the prime v.
 
-    Arguments: `base` of degree 1 or 2, `divisors` of degree 0, v a prime below 2^20.  Never raises for a prime
-    that cannot be used: the record says why.  A prime without points gives a record with no allowed class.
+    Arguments: `base` of degree 1 or 2, `divisors` of degree 0, v a prime below 2^20.  Never raises for a
+    prime that cannot be used: the record says why.  A prime without points gives a record with no allowed class.
     The allowed classes are those of deg(B) P - B.
     """
     try:

@@ -7,6 +7,7 @@ from typing import Any
 
 from sieve.files.notation_out import divisor_text, equation_text, structure_text
 from sieve.files.result import Result, Verdict
+from sieve.proof.writer import ProofLog
 
 
 def _table(header: Sequence[str], rows: Sequence[Sequence[str]], right: Sequence[bool]) -> list[str]:
@@ -127,7 +128,18 @@ def report_text(summary: dict[str, Any]) -> str:
                 "Barrier: the coefficient vector of any other rational point has Euclidean norm at least "
                 f"{survivors.barrier}."
             )
+    if "proof" in summary:
+        lines += ["", "Proof log", "---------"] + _proof_lines(summary["proof"])
     return "\n".join(lines) + "\n"
+
+
+def _proof_lines(proof: ProofLog) -> list[str]:
+    primes = ", ".join(map(str, proof.primes)) or "none"
+    return [
+        f"  {proof.records} of {proof.all_records} records kept, {proof.size} bytes",
+        *_wrap(f"auxiliary primes ({len(proof.primes)} of {proof.all_primes}): {primes}"),
+        "  `sieve check proof.jsonl` re-checks it, `sieve appendix proof.jsonl -o FILE` prints it",
+    ]
 
 
 def _images(images: Sequence[Sequence[int]]) -> str:

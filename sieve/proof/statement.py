@@ -1,0 +1,92 @@
+"""What a proof log says, as plain data: handed over by the run, turned into records by the writer."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+
+from sieve.curves.branch import BranchFactors
+from sieve.curves.divisors import Divisor, MumfordPlace
+from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.engine.fates import Use
+from sieve.engine.plan import Outcome
+from sieve.engine.survivors import Survivor
+from sieve.engine.verdicts import CandidateList, Decision
+from sieve.local.records import LocalRecord
+
+
+@dataclass(frozen=True)
+class ProofPremise:
+    """A premise: `id` and the keys that belong to it (`ell`, or `prime`, `candidate`, `at_most`)."""
+
+    id: str
+    statement: str
+    source: str
+    keys: tuple[tuple[str, int | str], ...] = ()
+
+
+@dataclass
+class ProofInput:
+    """Everything a log is made of.
+
+    Fields: `program`, `case_name`, `case_sha256` for the header; `generators`, r free ones, then torsion
+    generators of the `orders`; `premises`; `lists` with their `decisions`, in the order of the candidates;
+    `records` of the usable primes and the `images` of the generators there; `ells`, the allowed primes l,
+    `stated` those among them that rest on the user's word; `outcome` and `vectors`, the classes left without
+    candidates (None: not part of the log); `branch`, the factors of 4 f + h^2 where they tell J(Q)[2].
+    """
+
+    program: str
+    case_name: str
+    case_sha256: str
+    curve: HyperellipticCurve
+    rank: int
+    base: Divisor
+    generators: Sequence[Divisor]
+    orders: Sequence[int]
+    premises: Sequence[ProofPremise]
+    lists: Sequence[CandidateList]
+    decisions: Sequence[Decision]
+    records: Mapping[int, LocalRecord]
+    images: Mapping[int, Sequence[Sequence[int]]]
+    ells: Sequence[int]
+    stated: Sequence[int]
+    outcome: Outcome | None = None
+    vectors: Sequence[Survivor] = field(default_factory=tuple)
+    branch: BranchFactors | None = None
+    two_torsion: int | None = None
+
+    @property
+    def size(self) -> int:
+        """n = r + s."""
+        return len(self.generators)
+
+    def places(self) -> list[MumfordPlace]:
+        """The different Mumford places in the order of the `group` record."""
+        return mumford_places([self.base, *self.generators])
+
+
+def mumford_places(divisors: Sequence[Divisor]) -> list[MumfordPlace]:
+    """The different Mumford places, in order of first occurrence."""
+    found = [p for d in divisors for _, p in d.terms if isinstance(p, MumfordPlace)]
+    return list(dict.fromkeys(found))
+
+
+@dataclass(frozen=True)
+class Step:
+    """One use of a condition in a log: `name` is an auxiliary prime, or "p = q"."""
+
+    name: int | str
+    exponents: tuple[tuple[int, int], ...]
+    kind: str
+
+    def document(self) -> list[object]:
+        """As the log writes it."""
+        return [self.name, {str(ell): e for ell, e in self.exponents}, self.kind]
+
+
+def step_of(use: Use) -> Step:
+    """The step of an engine's use."""
+    kind = "semijoin" if use.kind == "semijoin" else "join"
+    name: int | str = int(use.name.split("=")[1]) if use.name.startswith("v") else use.name
+    return Step(name, use.exponents, kind)
