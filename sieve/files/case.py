@@ -29,6 +29,10 @@ FORMAT = "sieve-case/1"
 MAX_RANK = 50
 MAX_MULTIPLICITY = 10**6
 MAX_ORDER = 10**9
+JACOBIAN_KEYS = (
+    "rank", "rank_source", "base", "index_prime_to", "index_source", "generators", "generators_from",
+    "torsion",
+)  # fmt: skip
 _POINT = "a point '(X : Y : Z)' or '(x, y)'"
 _PLACE = "a point, or a table with root_of and point, or a table with mumford"
 HALF_FIBRE = "half a fibre"
@@ -131,8 +135,7 @@ def load_case(path: str | Path) -> Case:
     points = table.array("known_points", "a list of points", [])
     known = tuple(_point(entry, table.at(f"known_points no. {i}")) for i, entry in enumerate(points, 1))
 
-    keys = ["rank", "rank_source", "base", "index_prime_to", "index_source", "generators", "generators_from"]
-    jacobian = table.table("jacobian", "a table [jacobian]", [*keys, "torsion"])
+    jacobian = table.table("jacobian", "a table [jacobian]", JACOBIAN_KEYS)
     rank = jacobian.integer("rank", 0, MAX_RANK)
     rank_source = jacobian.text("rank_source", "where the upper bound on the rank is proved")
     base = _base(jacobian)
@@ -153,6 +156,40 @@ def load_case(path: str | Path) -> Case:
         str(path), document.sha256, name, equation, text, origin, known, rank, rank_source, base, index,
         index_source, generators, source, torsion,
     )  # fmt: skip
+
+
+@dataclass(frozen=True)
+class Sketch:
+    """The part of a case file that says what the curve is; the rank and its source where they are given."""
+
+    name: str
+    equation: Polynomial
+    equation_text: str
+    equation_origin: Origin
+    rank: int | None
+    rank_source: str
+
+
+def load_sketch(path: str | Path) -> Sketch:
+    """Read the curve, and the rank if it is there, of a case file that may lack everything else.
+
+    Raises `InputError` and `NotSupported` as `load_case` does.
+    """
+    table = read_toml(path).table
+    check_format(table, FORMAT)
+    table.restrict(["format", "name", "known_points", "curve", "field", "jacobian"])
+    name = _name(table)
+    if table.has("field"):
+        _refuse_field(table)
+    text, equation, origin = _equation(table)
+    rank, source = None, ""
+    if table.has("jacobian"):
+        jacobian = table.table("jacobian", "a table [jacobian]", JACOBIAN_KEYS)
+        if jacobian.has("rank"):
+            rank = jacobian.integer("rank", 0, MAX_RANK)
+        if jacobian.has("rank_source"):
+            source = jacobian.text("rank_source", blank=True)
+    return Sketch(name, equation, text, origin, rank, source)
 
 
 def check_format(table: Table, known: str) -> None:
