@@ -154,7 +154,7 @@ def document(inspection: Inspection) -> dict[str, Any]:
 def _padic_document(inspection: Inspection, p: int, n: int, place: ChabautyPlace) -> dict[str, Any]:
     coefficients = []
     for point in inspection.resolved.known_points:
-        found = place.coefficients_of_point(point)
+        found = place.coefficients_of_point(point, inspection.investigation.problem.rank)
         coefficients.append(
             {
                 "point": inspection.resolved.curve.format_point(point),

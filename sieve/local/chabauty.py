@@ -88,13 +88,14 @@ class ChabautyPlace:
             for a, b, d in zip(self.group.point_logs[disc], self.base_class, invariants, strict=True)
         )
 
-    def coefficients_of_point(self, point: Point) -> list[PadicNumber] | None:
+    def coefficients_of_point(self, point: Point, rank: int) -> list[PadicNumber] | None:
         """The coefficients c with iota(P) = sum c_i D_i in J(Q_p) up to torsion, for r <= g independent logs.
 
-        Returns None where the logs of the generators are dependent to the known precision or r > g.
+        `rank`: r, the number of free generators; the logarithms of torsion generators are zero.  Returns None
+        where the logs of the free generators are dependent to the known precision or r > g.
         """
         target = self.degree * self.integrals.log_point(point) - self.base_log
-        return _solve(self.prime, [log.numbers for log in self.logs], target.numbers)
+        return _solve(self.prime, [log.numbers for log in self.logs[:rank]], target.numbers)
 
     # ---- conditions -----------------------------------------------------------------------------------
 
