@@ -153,6 +153,8 @@ def run(
             )
         result = run_command.write_files(done, directory, proof == "full")
         progress.close()
+        for warning in done.warnings:
+            click.echo(f"sieve: warning: {warning}", err=True)
         if as_json:
             click.echo(json_text(result.document()), nl=False)
         else:

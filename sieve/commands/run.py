@@ -5,7 +5,7 @@ from __future__ import annotations
 import time
 from collections.abc import Callable, Sequence
 from concurrent.futures import Executor
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 from sieve.commands.common import Progress, StoredInvestigation, problem_of
@@ -82,6 +82,7 @@ class Run:
     outlook: Outlook | None = None
     bound: int = 0
     stopped: str = ""
+    warnings: list[str] = field(default_factory=list)
     steps: list[Step] = field(default_factory=list)
 
     @property
@@ -184,11 +185,21 @@ def execute(
     known = set(resolved.known_points)
     found = [p for p in search_points(resolved.curve, SEARCH_HEIGHT) if p not in known]
     run = Run(resolved, investigation, lists, files, found)
-    matched = match_rational(investigation, lists, found)
+    missed: list[tuple[int, Point]] = []
+    matched = match_rational(investigation, lists, found, missed)
     for points in matched.values():
         for point in points:
             if point not in known and point not in found:
                 found.append(point)
+    for point in found:
+        run.warnings.append(f"the rational point {resolved.curve.format_point(point)} is not in the case")
+    for i, point in missed:
+        # the claim is refuted: nothing may rest on it
+        lists[i].complete, files[i] = False, replace(files[i], complete=False)
+        run.warnings.append(
+            f"{files[i].path} claims to be complete but misses the rational point "
+            f"{resolved.curve.format_point(point)}: it is used as an incomplete list"
+        )
     stages = default_stages(resolved.curve.genus)
     if bound is not None:
         stages = [b for b in stages if b < bound] + [bound]
@@ -327,6 +338,7 @@ def run_summary(run: Run, result: Result) -> dict[str, object]:
         "relation_sources": relation.sources if relation else (),
         "found": [curve.format_point(p) for p in run.found_points],
         "stopped": run.stopped,
+        "warnings": run.warnings,
         "images": {r.prime: run.investigation.images(r) for r in run.investigation.usable},
     }
 

@@ -73,12 +73,16 @@ class Outlook:
 
 
 def match_rational(
-    investigation: Investigation, lists: Sequence[CandidateList], found: Sequence[Point] = ()
+    investigation: Investigation,
+    lists: Sequence[CandidateList],
+    found: Sequence[Point] = (),
+    missed: list[tuple[int, Point]] | None = None,
 ) -> dict[tuple[int, str], tuple[Point, ...]]:
     """The rational points behind the candidates, by (list number, id).
 
-    Arguments: `found`, rational points that are not among the known ones.  Raises `Inconsistent` when a
-    list that claims to be complete misses a rational point, naming the point.
+    Arguments: `found`, rational points that are not among the known ones; `missed` receives (list number,
+    point) for those of them that a list misses although it claims to be complete.  Raises `Inconsistent`,
+    naming the point, when it is a known one, or any without `missed`.
     """
     problem = investigation.problem
     points: dict[Point, object] = {}
@@ -97,6 +101,9 @@ def match_rational(
             unlocated = any(c.kind == "coefficients" for c in listing.candidates)
             for point in points:
                 if point in covered or (unlocated and investigation.coordinates.get(point) is None):
+                    continue
+                if missed is not None and point not in problem.known_points:
+                    missed.append((number, point))
                     continue
                 shown = problem.curve.format_point(point)
                 what = f"no candidate is near the rational point {shown}"
@@ -157,7 +164,7 @@ def decide_candidates(
                 )
     for fate in decide(labelled, auxiliary, rational, report=report):
         number = lists_of[fate.condition]
-        out[number, fate.label] = _from_fate(lists[number].place.prime, fate)
+        out[number, fate.label] = from_fate(lists[number].place.prime, fate)
     return out
 
 
@@ -191,7 +198,7 @@ def _rational(
     )
 
 
-def _from_fate(p: int, fate: Fate) -> Decision:
+def from_fate(p: int, fate: Fate) -> Decision:
     primes = tuple(dict.fromkeys(prime_of(name) for name in fate.conditions))
     if fate.kind == "image":
         reason = f"its class modulo {p} and its {p}-adic integrals are not in the image of J(Q)"

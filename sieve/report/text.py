@@ -46,6 +46,8 @@ def report_text(summary: dict[str, Any]) -> str:
     lines += _wrap(result.statement, indent="")
     if summary["stopped"]:
         lines += ["", f"Note: {summary['stopped']}."]
+    for warning in summary["warnings"]:
+        lines += ["", *_wrap(f"Warning: {warning}.", indent="")]
     lines += ["", "The curve", "---------"]
     lines += [f"  X: {case.equation_text}"]
     if equation_text(curve).replace(" ", "") != case.equation_text.replace(" ", ""):
