@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import time
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from concurrent.futures import Executor
 from dataclasses import dataclass, field, replace
 from pathlib import Path
@@ -11,6 +11,7 @@ from pathlib import Path
 from sieve.commands.common import Progress, StoredInvestigation, problem_of
 from sieve.commands.premises import premises_of
 from sieve.commands.prooflog import proof_of, restrict_to_log
+from sieve.commands.pursue import LONG_REACH, REACH, pursue
 from sieve.curves.divisors import Point
 from sieve.curves.search import search_points
 from sieve.engine.investigation import FIRST_BOUND, Investigation
@@ -202,7 +203,9 @@ def execute(
         )
     stages = default_stages(resolved.curve.genus)
     if bound is not None:
-        stages = [b for b in stages if b < bound] + [bound]
+        # beyond the usual stages only primes that open candidates can use are looked at
+        last = [] if files and bound > stages[-1] and resolved.curve.genus == 2 else [bound]
+        stages = [b for b in stages if b < bound] + last
     if primes is not None:
         stages = [max(primes) + 1]
     chabauty_primes = [listing.place.prime for listing in lists]
@@ -215,9 +218,7 @@ def execute(
         say(f"auxiliary primes below {stage}: {len(investigation.usable)} usable, parts at l = {run.ells}")
         if lists:
             decisions = decide_candidates(investigation, lists, matched, run.ells, stage, wanted)
-            run.decisions = [
-                decisions[i, c.id] for i, listing in enumerate(lists) for c in listing.candidates
-            ]
+            run.decisions = in_order(lists, decisions)
         if lists and all(d.verdict != "open" for d in run.decisions):
             break
         if not finished:
@@ -227,9 +228,23 @@ def execute(
             run.outlook = surviving_classes(investigation, run.ells, stage, wanted, run.steps.append)
             if run.outlook.empty:
                 break
+    if any(d.verdict == "open" for d in run.decisions):
+        reach = run.bound
+        if primes is None and not run.stopped and resolved.curve.genus == 2:
+            reach = max(reach, bound or (REACH if seconds is None else LONG_REACH))
+        pursuit = pursue(investigation, lists, decisions, run.ells, run.bound, reach, stored.gather, wanted,
+                         executor, deadline, say)
+        run.decisions = in_order(lists, pursuit.decisions)
+        if pursuit.stopped:
+            run.stopped = f"the time limit of {seconds:g} s stopped the run"
     if run.outlook is None:
         run.outlook = surviving_classes(investigation, run.ells, run.bound, wanted, run.steps.append)
     return run
+
+
+def in_order(lists: Sequence[CandidateList], decisions: Mapping[tuple[int, str], Decision]) -> list[Decision]:
+    """The decisions in the order of the candidate files."""
+    return [decisions[i, c.id] for i, listing in enumerate(lists) for c in listing.candidates]
 
 
 def statement(run: Run) -> str:

@@ -17,6 +17,7 @@ from sieve.engine.join import common_index, semijoin, semijoin_mask
 from sieve.engine.outlook import PREMIUMS, log_pass, shared_parts
 from sieve.engine.plan import Outcome, informative, sieve_run
 from sieve.engine.relation import Relation, coarsen
+from sieve.errors import Inconsistent
 from sieve.exact.primes import valuation_of
 
 CAP = 60_000
@@ -90,6 +91,7 @@ class Hunt:
     def __init__(self, candidates: Relation, labels: Iterable[str], prime: int, pool: Sequence[Relation],
                  known: Sequence[Sequence[int]] = (), *, cap: int = CAP) -> None:
         self.candidates, self.prime, self.cap = candidates, prime, cap
+        self.known = [tuple(int(c) for c in vector) for vector in known]
         self.pool = informative(shared_parts([*pool, candidates])[:-1])
         self.by_name = {r.name: r for r in self.pool}
         self.fates: dict[str, Fate] = {}
@@ -148,6 +150,15 @@ class Hunt:
             seen = tuple(sorted(self.candidates.exponents.items()))
             self.fates[label] = Fate(self.candidates.name, label, kind, short, exponents=seen)
 
+    @property
+    def largest_power(self) -> int:
+        """The largest e such that the group of some condition used has a character of order p^e."""
+        return max([r.exponents.get(self.prime, 0) for r in (*self.pool, *self.hunted)], default=0)
+
+    def classes_left(self, label: str) -> int:
+        """The least number of classes of the label in a trail (0 when it takes part in none)."""
+        return min((t.relation.with_labels([label]).count for t in self.trails), default=0)
+
     def prospect(self, v: int, points: int, orders: Sequence[int]) -> Prospect:
         """What is expected of the prime v from #X(F_v) and the possible orders of J(F_v)."""
         needed = sorted({self.powers[label] for label in self.open})
@@ -166,7 +177,15 @@ class Hunt:
         return Prospect(v, gain, power)
 
     def add(self, condition: Relation) -> list[str]:
-        """Use one more condition; returns the labels that it decides."""
+        """Use one more condition; returns the labels that it decides.
+
+        Raises `Inconsistent` when it excludes a known point.
+        """
+        for vector in self.known:
+            if not condition.contains(vector):
+                shown = str(tuple(int(c) for c in vector))
+                raise Inconsistent(f"the known point with coefficients {shown} is excluded by "
+                                   f"{condition.name}", shown)
         if condition.name in self.by_name or not self.open:
             return []
         before = set(self.fates)
@@ -201,8 +220,7 @@ class Hunt:
                             key=lambda r: (-common_index(trail.relation, r) / max(1, r.count), r.name))[:most]
             pool = [*self.pool, *useful]
             shared = shared_parts([*pool, trail.relation])[:-1]
-            for outcome in sieve_run(informative(shared), trail.relation, cap=self.cap, max_joins=12):
-                pass
+            *_, outcome = sieve_run(informative(shared), trail.relation, cap=self.cap, max_joins=12)
             uses = tuple(Use(s.name, s.exponents, s.kind) for s in outcome.plan.steps)
             longer = Trail(outcome.relation, (*trail.uses, *uses))
             self._bury(longer, set(trail.relation.labels) - set(outcome.relation.labels))

@@ -199,6 +199,7 @@ def _rational(
 
 
 def from_fate(p: int, fate: Fate) -> Decision:
+    """The decision that a fate means for a candidate at the Chabauty prime p."""
     primes = tuple(dict.fromkeys(prime_of(name) for name in fate.conditions))
     if fate.kind == "image":
         reason = f"its class modulo {p} and its {p}-adic integrals are not in the image of J(Q)"

@@ -1,0 +1,166 @@
+"""After the usual stages: primes sought for the candidates that are still open, and why some stay open."""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable, Collection, Sequence
+from concurrent.futures import Executor
+from dataclasses import dataclass, field, replace
+from functools import partial
+
+from sieve.engine.explain import explain
+from sieve.engine.investigation import Investigation
+from sieve.engine.prime_hunt import Hunt, Prospect, ranked
+from sieve.engine.relation import relation_from_condition
+from sieve.engine.verdicts import CandidateList, Decision, candidate_relations, from_fate
+from sieve.exact.primes import primes_below
+from sieve.local.quick_order import QuickOrder, quick_order
+
+REACH = 4000
+"""Primes below this are considered when neither a bound nor a time is given."""
+
+LONG_REACH = 20_000
+"""Primes below this are considered when a time is given."""
+
+BLOCK = 16
+"""So many groups are computed before their conditions are used (the same for any number of processes)."""
+
+Key = tuple[int, str]
+
+
+@dataclass
+class Pursuit:
+    """What the search for primes did: new decisions, primes looked at, whether a deadline stopped it."""
+
+    decisions: dict[Key, Decision]
+    looked_at: list[Prospect] = field(default_factory=list)
+    bound: int = 0
+    stopped: bool = False
+
+
+def quick_orders(investigation: Investigation, primes: Sequence[int],
+                 executor: Executor | None) -> dict[int, QuickOrder]:
+    """The possible orders of J(F_v) for those of the primes where they are known, by prime."""
+    curve = investigation.problem.curve
+    work = partial(quick_order, curve.f, curve.h)
+    found = map(work, primes) if executor is None or len(primes) < 50 else executor.map(
+        work, primes, chunksize=16)
+    return {v: order for v, order in zip(primes, found, strict=True) if order is not None}
+
+
+def make_hunts(investigation: Investigation, lists: Sequence[CandidateList], decisions: dict[Key, Decision],
+               ells: Sequence[int], bound: int | None,
+               primes: Collection[int] | None = None) -> list[tuple[int, Hunt]]:
+    """A hunt for every labelled relation with open candidates, with the number of its list."""
+    labelled, _, lists_of = candidate_relations(investigation, lists, ells)
+    auxiliary = investigation.relations(ells, bound, primes)
+    known = [c.vector for c in investigation.coordinates.values() if c.denominator == 1]
+    out = []
+    for relation in labelled:
+        number = lists_of[relation.name]
+        labels = [label for label in relation.labels if (d := decisions.get((number, label))) is not None
+                  and d.verdict == "open" and d.fate is not None]
+        if labels:
+            others = [r.unlabelled() for r in labelled if r is not relation and r.complete]
+            prime = lists[number].place.prime
+            out.append((number, Hunt(relation, labels, prime, [*auxiliary, *others], known)))
+    return out
+
+
+def pursue(investigation: Investigation, lists: Sequence[CandidateList], decisions: dict[Key, Decision],
+           ells: Sequence[int], start: int, bound: int, gather: Callable[[list[int]], bool],
+           primes: Collection[int] | None = None, executor: Executor | None = None,
+           deadline: float | None = None, say: Callable[[str], None] = lambda text: None) -> Pursuit:
+    """Look for primes from `start` below `bound` that decide open candidates (genus 2).
+
+    Arguments: the decisions so far by (number of the list, id), not changed; `gather` adds local data and
+    returns False when it had to stop; `primes`, those that the decisions rest on (None: all below `start`).
+    Every candidate that stays open gets an explanation.
+    """
+    hunts = make_hunts(investigation, lists, decisions, ells, start, primes)
+    result = Pursuit(dict(decisions), bound=start)
+    _settle(result, lists, hunts)
+    low, high = start, 2 * start
+    while low < bound and any(hunt.open for _, hunt in hunts) and not result.stopped:
+        high = min(high, bound)
+        fresh = [v for v in primes_below(high) if v >= low and v not in investigation.records]
+        orders = quick_orders(investigation, fresh, executor)
+        best = ranked([hunt for _, hunt in hunts], {v: (q.points, q.orders) for v, q in orders.items()})
+        say(f"{len(best)} of {len(fresh)} primes from {low} to {high} may help {_open_count(hunts)} "
+            "open candidates")
+        _use(result, investigation, hunts, best, ells, gather, deadline)
+        if not result.stopped:
+            for _, hunt in hunts:
+                hunt.combine()
+            result.bound = high
+        low, high = high, 2 * high
+        _settle(result, lists, hunts)
+    _explain(result, investigation, lists, hunts, ells, executor)
+    return result
+
+
+def _open_count(hunts: Sequence[tuple[int, Hunt]]) -> int:
+    return sum(len(hunt.open) for _, hunt in hunts)
+
+
+def _use(result: Pursuit, investigation: Investigation, hunts: Sequence[tuple[int, Hunt]],
+         best: Sequence[Prospect], ells: Sequence[int], gather: Callable[[list[int]], bool],
+         deadline: float | None) -> None:
+    for place in range(0, len(best), BLOCK):
+        if deadline is not None and time.monotonic() > deadline:
+            result.stopped = True
+            return
+        block = list(best[place : place + BLOCK])
+        if not gather([p.prime for p in block]):
+            result.stopped = True
+            return
+        for prospect in block:
+            result.looked_at.append(prospect)
+            record = investigation.records[prospect.prime]
+            if record.usable:
+                relation = relation_from_condition(record.condition(investigation.images(record)), ells)
+                for _, hunt in hunts:
+                    hunt.add(relation)
+        if not any(hunt.open for _, hunt in hunts):
+            return
+
+
+def _settle(result: Pursuit, lists: Sequence[CandidateList], hunts: Sequence[tuple[int, Hunt]]) -> None:
+    for number, hunt in hunts:
+        for label, fate in hunt.fates.items():
+            result.decisions[number, label] = from_fate(lists[number].place.prime, fate)
+
+
+def next_prime(investigation: Investigation, hunts: Sequence[Hunt], start: int, executor: Executor | None,
+               width: int = 4000) -> int | None:
+    """The first prime in start .. start + width that is expected to remove most of the classes left."""
+    primes = [v for v in primes_below(start + width) if v >= start]
+    for low in range(0, len(primes), 64):
+        orders = quick_orders(investigation, primes[low : low + 64], executor)
+        for v, order in orders.items():
+            found = ranked(hunts, {v: (order.points, order.orders)})
+            if found and found[0].gain > 0.5:
+                return v
+    return None
+
+
+def _explain(result: Pursuit, investigation: Investigation, lists: Sequence[CandidateList],
+             hunts: Sequence[tuple[int, Hunt]], ells: Sequence[int], executor: Executor | None) -> None:
+    curve = investigation.problem.curve
+    waiting = [hunt for _, hunt in hunts if hunt.open]
+    following = next_prime(investigation, waiting, result.bound, executor) if waiting else None
+    for number, listing in enumerate(lists):
+        p = listing.place.prime
+        why_not = "" if p in ells else investigation.saturation_at(p).reason
+        for candidate in listing.candidates:
+            decision = result.decisions.get((number, candidate.id))
+            if decision is None or decision.verdict != "open" or decision.fate is None:
+                continue
+            hunt = next((h for n, h in hunts if n == number and candidate.id in h.powers), None)
+            found = explain(curve, p, candidate, hunt, bound=result.bound, ells=ells, why_not=why_not,
+                            following=following)
+            reason = "; ".join(filter(None, [decision.reason, found.reason]))
+            result.decisions[number, candidate.id] = replace(decision, reason=reason, hint=found.hint)
+
+
+__all__ = ["LONG_REACH", "REACH", "Pursuit", "make_hunts", "next_prime", "pursue", "quick_orders"]
