@@ -15,6 +15,7 @@ from sieve.engine.relation import relation_from_condition
 from sieve.engine.verdicts import CandidateList, Decision, candidate_relations, from_fate
 from sieve.exact.primes import primes_below
 from sieve.local.quick_order import QuickOrder, quick_order
+from sieve.local.records import local_record
 
 REACH = 4000
 """Primes below this are considered when neither a bound nor a time is given."""
@@ -131,16 +132,28 @@ def _settle(result: Pursuit, lists: Sequence[CandidateList], hunts: Sequence[tup
             result.decisions[number, label] = from_fate(lists[number].place.prime, fate)
 
 
-def next_prime(investigation: Investigation, hunts: Sequence[Hunt], start: int, executor: Executor | None,
-               width: int = 4000) -> int | None:
-    """The first prime in start .. start + width that is expected to remove most of the classes left."""
+def next_prime(investigation: Investigation, hunts: Sequence[Hunt], ells: Sequence[int], start: int,
+               executor: Executor | None, width: int = 4000, checks: int = 12) -> int | None:
+    """The first prime in start .. start + width that is expected to remove much of the classes left.
+
+    Picked by its order, then confirmed by its group; at most `checks` groups are computed (None after that).
+    """
+    problem = investigation.problem
     primes = [v for v in primes_below(start + width) if v >= start]
     for low in range(0, len(primes), 64):
         orders = quick_orders(investigation, primes[low : low + 64], executor)
         for v, order in orders.items():
             found = ranked(hunts, {v: (order.points, order.orders)})
-            if found and found[0].gain > 0.5:
-                return v
+            if not found or found[0].gain < 0.3:
+                continue
+            record = local_record(problem.curve, problem.base, investigation.asked, v)
+            if record.usable:
+                relation = relation_from_condition(record.condition(investigation.images(record)), ells)
+                if any(hunt.expected_gain(relation) > 0.3 for hunt in hunts):
+                    return v
+            checks -= 1
+            if checks == 0:
+                return None
     return None
 
 
@@ -148,7 +161,7 @@ def _explain(result: Pursuit, investigation: Investigation, lists: Sequence[Cand
              hunts: Sequence[tuple[int, Hunt]], ells: Sequence[int], executor: Executor | None) -> None:
     curve = investigation.problem.curve
     waiting = [hunt for _, hunt in hunts if hunt.open]
-    following = next_prime(investigation, waiting, result.bound, executor) if waiting else None
+    following = next_prime(investigation, waiting, ells, result.bound, executor) if waiting else None
     for number, listing in enumerate(lists):
         p = listing.place.prime
         why_not = "" if p in ells else investigation.saturation_at(p).reason

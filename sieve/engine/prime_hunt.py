@@ -176,6 +176,14 @@ class Hunt:
             power = max(power, here)
         return Prospect(v, gain, power)
 
+    def expected_gain(self, condition: Relation) -> float:
+        """Minus the logarithm of the share of classes expected to pass, from the subgroup and count alone."""
+        needed = min((self.powers[label] for label in self.open), default=1)
+        if condition.exponents.get(self.prime, 0) < needed:
+            return 0.0
+        return max((-log_pass(condition.count, log(common_index(t.relation, condition)))
+                    for t in self.trails), default=0.0)
+
     def add(self, condition: Relation) -> list[str]:
         """Use one more condition; returns the labels that it decides.
 
