@@ -12,6 +12,7 @@ import click
 
 from sieve import __version__
 from sieve.commands import candidates as candidates_command
+from sieve.commands import check as check_command
 from sieve.commands import inspect as inspect_command
 from sieve.commands import propose as propose_command
 from sieve.commands import run as run_command
@@ -259,6 +260,19 @@ def candidates(
         return 0
 
     return _guard(case, work)
+
+
+@main.command("check", epilog="Example: sieve check demo.out/proof.jsonl")
+@click.argument("proof")
+@click.option("--json", "as_json", is_flag=True, help="One JSON document on standard output, nothing else.")
+@click.option("-v", "--verbose", is_flag=True, help="Say what is being done, on standard error.")
+def check(proof: str, as_json: bool, verbose: bool) -> int:
+    """Check the proof log PROOF independently of the run that wrote it.
+
+    Exit code 0: accepted; 3: rejected, with the line, the record and the reason; 2: declined or unreadable.
+    """
+    Progress(verbose).say(f"checking {proof}")
+    return _guard(proof, lambda: check_command.execute(proof, as_json))
 
 
 def entry() -> None:

@@ -1463,6 +1463,7 @@ class Proof:
         need(total == self.curve.square, "factor", "the factors have another product")
         known = [prime(v, MAX_PRIME) for v in items(primes)]
         for factor in (integers(entry) for entry in factors if len(entry) > 2):
+            factor = [c // gcd(*factor) for c in factor]
             possible = set(range(1, len(factor) - 1))
             for v in known:
                 reduced = trim(factor, v)
