@@ -56,7 +56,8 @@ def _guard(case: str, work: Callable[[], int]) -> int:
     except InputError as error:
         _fail(error.line)
     except Inconsistent as error:
-        _fail(f"{case}: {error.witness}: {error}, expected data that agree with one another")
+        where = "" if error.witness in str(error) else f"{error.witness}: "
+        _fail(f"{error.file or case}: {where}{error}, expected {error.expected}")
     except SieveError as error:
         _fail(f"{case}: {error}")
     except OSError as error:

@@ -35,10 +35,15 @@ class NotSupported(InputError):
 
 
 class Inconsistent(SieveError):
-    """The data contradict each other; `witness` names the point, prime or candidate that shows it."""
+    """The data contradict each other; `witness` names the point, prime or candidate that shows it.
 
-    def __init__(self, message: str, witness: str) -> None:
-        self.witness = witness
+    `expected`: what would be consistent; `file`: the file to blame where it is not the case file.
+    """
+
+    def __init__(
+        self, message: str, witness: str, expected: str = "data that agree with one another", file: str = ""
+    ) -> None:
+        self.witness, self.expected, self.file = witness, expected, file
         super().__init__(message)
 
 

@@ -114,16 +114,16 @@ def generator_relations(
     relations = true_relations(basis, settled)
     for row in relations:
         if any(row[:rank]):
-            free = " + ".join(f"{a}*D{i + 1}" for i, a in enumerate(row[:rank]) if a)
-            tail = " + ".join(f"{a}*T{j + 1}" for j, a in enumerate(row[rank:]) if a)
-            text = (free + (" + " + tail if tail else "")).replace("+ -", "- ")
-            raise Inconsistent(f"the generators are dependent: {text} = 0 in every group J(F_v) tried", text)
+            text = _combination(row, rank)
+            raise Inconsistent(
+                f"generators: dependent, {text} = 0 in every group J(F_v) tried", text, "independent generators"
+            )
     for j, order in enumerate(orders):
         name = f"torsion generator no. {j + 1}"
         for modulus, values in functionals:
             if order * values[rank + j] % modulus:
                 what = f"{order} times it is not zero in a group J(F_v)"
-                raise Inconsistent(f"{name} does not have order {order}: {what}", name)
+                raise Inconsistent(f"{name}: not of order {order}, {what}", name, "its order")
     if orders:
         found = hermite([row[rank:] for row in relations]) if relations else []
         volume = 1
@@ -135,10 +135,21 @@ def generator_relations(
         if len(found) < len(orders) or volume != claimed:
             order_found = volume if len(found) == len(orders) else "unknown"
             raise Inconsistent(
-                f"the torsion generators generate a group of order {order_found}, "
-                f"their claimed orders give {claimed}",
+                f"torsion: a group of order {order_found}, where the claimed orders give {claimed}",
                 "torsion",
+                "independent torsion generators with their orders",
             )
+
+
+def _combination(row: Sequence[int], rank: int) -> str:
+    """An integer combination of D1 .. Dr, T1 .. in the usual notation."""
+    text = ""
+    for i, a in enumerate(row):
+        if a:
+            name = f"D{i + 1}" if i < rank else f"T{i + 1 - rank}"
+            sign = ("-" if a < 0 else "") if not text else (" - " if a < 0 else " + ")
+            text += sign + ("" if abs(a) == 1 else f"{abs(a)}*") + name
+    return text
 
 
 def point_coordinates(

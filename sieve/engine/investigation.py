@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Collection, Iterable, Sequence
 from concurrent.futures import Executor
+from math import gcd, lcm
 from dataclasses import replace
 
 from sieve.curves.branch import branch_factors
@@ -176,30 +177,36 @@ class Investigation:
             shown = problem.curve.format_point(point)
             if found is None:
                 raise Inconsistent(
-                    f"the known point {shown} is no combination of small height of the generators "
-                    "(wrong generators, rank or base)",
+                    f"known point {shown}: no combination of small height of the generators",
                     shown,
+                    "generators of a group of finite index, the rank and the base that belong to them",
+                )
+            # what is left of P - B after an integer combination of free generators would be torsion
+            if found.denominator > 1 and all(a % found.denominator == 0 for a in found.free):
+                raise Inconsistent(
+                    f"torsion: the known point {shown} gives a torsion class outside the group that is claimed",
+                    shown,
+                    "generators of all torsion of J(Q)",
                 )
             self.coordinates[point] = found
 
     def _basis_from_points(self, unit: list[list[int]]) -> None:
         problem = self.problem
         count = len(problem.torsion) + len(self.differences)
-        functionals = [(d, values) for d, values in self._functionals(None)]
-        for j, (order, _) in enumerate(problem.torsion):
-            if any(order * values[j] % d for d, values in functionals):
-                raise Inconsistent(
-                    f"torsion generator no. {j + 1} does not have order {order}",
-                    f"torsion generator no. {j + 1}",
-                )
-        # the difference of the base point with itself is zero and takes no part
-        basis = basis_of_classes(count, functionals)
+        basis = basis_of_classes(count, self._functionals(None))
         if len(basis.free) != problem.rank:
             raise Inconsistent(
-                f"the differences of the known points generate a group of rank {len(basis.free)}, "
-                f"the case claims rank {problem.rank}",
+                f"known_points: their differences generate a group of rank {len(basis.free)}",
                 "known_points",
+                f"the claimed rank {problem.rank}",
             )
+        for j, (order, _) in enumerate(problem.torsion):
+            free, torsion = basis.coordinates[j]
+            name = f"torsion generator no. {j + 1}"
+            found = lcm(1, *[t // gcd(t, c) for t, c in zip(basis.orders, torsion, strict=True)])
+            if any(free) or found != order:
+                what = "of infinite order" if any(free) else f"of order {found}"
+                raise Inconsistent(f"{name}: {what}", name, f"the claimed order {order}")
         self.rows = [list(row) for row in (*basis.free, *basis.torsion)]
         self.orders = basis.orders
 
@@ -254,8 +261,6 @@ class Investigation:
             order *= t
         candidates = set(prime_factors(order)) if order > 1 else set()
         bound = 0
-        from math import gcd
-
         for record in self.usable:
             if record.points and record.prime != 2:
                 bound = gcd(bound, record.order)

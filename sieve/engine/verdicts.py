@@ -107,7 +107,12 @@ def match_rational(
                     continue
                 shown = problem.curve.format_point(point)
                 what = f"no candidate is near the rational point {shown}"
-                raise Inconsistent(f"{listing.name} claims to be complete, but {what}", shown)
+                raise Inconsistent(
+                    f"the list claims to be complete, but {what}",
+                    shown,
+                    "a candidate near every rational point",
+                    listing.name,
+                )
     return matched
 
 
