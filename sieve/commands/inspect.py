@@ -119,6 +119,7 @@ def document(inspection: Inspection) -> dict[str, Any]:
         "genus": curve.genus,
         "equation": equation_text(curve),
         "bad_primes": list(curve.bad_primes),
+        "bad_primes_complete": curve.unfactored == 1,
         "primes": primes,
         "torsion": {"order": str(order), "proved": investigation.torsion_proved()},
         "independent": bool(saturated) or not inspection.resolved.case.rank,
@@ -179,7 +180,8 @@ def text(inspection: Inspection) -> str:
     curve, investigation = inspection.resolved.curve, inspection.investigation
     lines = [
         f"Case {inspection.resolved.case.name}: {data['equation']}, genus {data['genus']}",
-        f"Bad primes of this model: {', '.join(map(str, data['bad_primes'])) or 'none'}",
+        f"Bad primes of this model: {', '.join(map(str, data['bad_primes'])) or 'none'}"
+        + ("" if curve.unfactored == 1 else f"; perhaps also prime factors of {curve.unfactored}"),
         f"Torsion: order {data['torsion']['order']}, " + _proved(data["torsion"]["proved"]),
     ]
     for i, divisor in enumerate(investigation.generators):

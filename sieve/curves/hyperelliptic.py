@@ -16,6 +16,13 @@ from sieve.errors import BadReduction
 Coefficients = tuple[int, ...]
 
 
+SMOOTH_BITS = 25
+"""Prime factors of discriminants up to this size are looked for in any case."""
+
+HARD_BITS = 160
+"""Composite numbers up to this size are factored (a fraction of a second)."""
+
+
 class SingularCurve(ValueError):
     """The affine equation has a singular point; `factor` is the repeated factor of 4 f + h^2 (text)."""
 
@@ -236,10 +243,32 @@ class HyperellipticCurve:
         return value
 
     @cached_property
+    def _discriminant_factors(self) -> tuple[tuple[int, ...], int]:
+        """The primes found in the discriminant, and the part of it that was too hard to factor (1: none)."""
+        primes, rest = {2}, 1
+        for factor, exponent in flint.fmpz(abs(self.discriminant)).factor_smooth(SMOOTH_BITS):
+            if factor.is_probable_prime():
+                primes.add(int(factor))
+            elif factor.bit_length() <= HARD_BITS:
+                primes |= {int(p) for p, _ in factor.factor()}
+            else:
+                rest *= int(factor) ** int(exponent)
+        return tuple(sorted(primes)), rest
+
+    @cached_property
     def bad_primes(self) -> tuple[int, ...]:
-        """The primes at which this model is not smooth."""
-        primes = {int(p) for p, _ in flint.fmpz(abs(self.discriminant)).factor()} | {2}
-        return tuple(sorted(p for p in primes if not smooth_modulo(self.f, self.h, self.genus, p)))
+        """The primes at which this model is not smooth.
+
+        The effort to find them is bounded: all below 2^25 or so, and all others unless the discriminant
+        has a composite factor of more than `HARD_BITS` bits without small ones, see `unfactored`.
+        """
+        primes, _ = self._discriminant_factors
+        return tuple(p for p in primes if not smooth_modulo(self.f, self.h, self.genus, p))
+
+    @property
+    def unfactored(self) -> int:
+        """A divisor of the discriminant whose prime factors `bad_primes` may lack (1: none)."""
+        return self._discriminant_factors[1]
 
     def is_smooth(self, v: int) -> bool:
         """Is the reduction of this model modulo the prime v smooth?"""

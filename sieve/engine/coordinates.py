@@ -115,9 +115,8 @@ def generator_relations(
     for row in relations:
         if any(row[:rank]):
             text = _combination(row, rank)
-            raise Inconsistent(
-                f"generators: dependent, {text} = 0 in every group J(F_v) tried", text, "independent generators"
-            )
+            what = f"generators: dependent, {text} = 0 in every group J(F_v) tried"
+            raise Inconsistent(what, text, "independent generators")
     for j, order in enumerate(orders):
         name = f"torsion generator no. {j + 1}"
         for modulus, values in functionals:

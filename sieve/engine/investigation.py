@@ -4,8 +4,8 @@ from __future__ import annotations
 
 from collections.abc import Callable, Collection, Iterable, Sequence
 from concurrent.futures import Executor
-from math import gcd, lcm
 from dataclasses import replace
+from math import gcd, lcm
 
 from sieve.curves.branch import branch_factors
 from sieve.curves.divisors import Divisor, Point
@@ -183,11 +183,8 @@ class Investigation:
                 )
             # what is left of P - B after an integer combination of free generators would be torsion
             if found.denominator > 1 and all(a % found.denominator == 0 for a in found.free):
-                raise Inconsistent(
-                    f"torsion: the known point {shown} gives a torsion class outside the group that is claimed",
-                    shown,
-                    "generators of all torsion of J(Q)",
-                )
+                what = f"torsion: the known point {shown} gives a torsion class outside the group that is claimed"
+                raise Inconsistent(what, shown, "generators of all torsion of J(Q)")
             self.coordinates[point] = found
 
     def _basis_from_points(self, unit: list[list[int]]) -> None:
