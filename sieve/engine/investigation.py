@@ -183,8 +183,8 @@ class Investigation:
                 )
             # what is left of P - B after an integer combination of free generators would be torsion
             if found.denominator > 1 and all(a % found.denominator == 0 for a in found.free):
-                what = f"torsion: the known point {shown} gives a torsion class outside the group that is claimed"
-                raise Inconsistent(what, shown, "generators of all torsion of J(Q)")
+                what = f"the known point {shown} gives a torsion class outside the group that is claimed"
+                raise Inconsistent(f"torsion: {what}", shown, "generators of all torsion of J(Q)")
             self.coordinates[point] = found
 
     def _basis_from_points(self, unit: list[list[int]]) -> None:
