@@ -11,6 +11,7 @@ from typing import Any
 import click
 
 from sieve import __version__
+from sieve.commands import advise as advise_command
 from sieve.commands import candidates as candidates_command
 from sieve.commands import check as check_command
 from sieve.commands import inspect as inspect_command
@@ -221,6 +222,57 @@ def inspect(
             click.echo(json_text(inspect_command.document(done)), nl=False)
         else:
             click.echo(inspect_command.text(done), nl=False)
+        return 0
+
+    return _guard(case, work)
+
+
+@main.command("advise", epilog="Example: sieve advise case.toml -c candidates7.json --bound 2000 --top 5")
+@click.argument("case")
+@click.option("-c", "--candidates", multiple=True, help="A candidate file (once for each Chabauty prime).")
+@click.option("--bound", type=int, help="Advise on auxiliary primes below this (default 1000).")
+@click.option("--top", type=int, default=10, show_default=True, help="So many primes at most.")
+@click.option("--chabauty-bound", type=int, help="Also compare the Chabauty primes up to this.")
+@_common
+def advise(
+    case: str,
+    candidates: tuple[str, ...],
+    bound: int | None,
+    top: int,
+    chabauty_bound: int | None,
+    as_json: bool,
+    verbose: bool,
+    jobs: int,
+    store: str | None,
+) -> int:
+    """Which auxiliary primes to add next for the open candidates of CASE, or for the whole sieve."""
+    progress = Progress(verbose)
+
+    def work() -> int:
+        limit = _bound(bound)
+        most = advise_command.check_top(top)
+        chabauty = _bound(chabauty_bound, "--chabauty-bound")
+        kept = Store(store) if store else None
+        try:
+            with workers(jobs) as executor:
+                done = advise_command.execute(
+                    case,
+                    candidates,
+                    bound=limit,
+                    top=most,
+                    chabauty_bound=chabauty,
+                    store=kept,
+                    executor=executor,
+                    progress=progress,
+                )
+        finally:
+            if kept is not None:
+                kept.close()
+        progress.close()
+        if as_json:
+            click.echo(json_text(advise_command.document(done)), nl=False)
+        else:
+            click.echo(advise_command.text(done), nl=False)
         return 0
 
     return _guard(case, work)
