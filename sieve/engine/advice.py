@@ -47,8 +47,7 @@ class Offer:
 
 
 def estimate(state: Relation, relation: Relation, known: int = 0) -> float:
-    """The number of classes expected to pass, from counts and subgroups alone; `known` of them pass for sure.
-    """
+    """The number of classes expected to pass, from counts and subgroups alone; `known` ones pass for sure."""
     common = sum(length * log(ell) for ell, length in common_exponents(state, relation).items())
     rest = max(0, state.count - known)
     return known + rest * exp(log_pass(relation.count, common)) if relation.count else 0.0
@@ -65,10 +64,10 @@ def advise(states: Sequence[Relation], offers: Sequence[Offer], top: int,
     """The best primes, each chosen for what it removes beyond those before it.
 
     Arguments: classes left, one or more relations (for candidates: labelled); the primes on offer; the
-    largest number of entries; coefficient vectors of the known points.  A prime counts by the share of classes
-    that it removes, in the state where it removes most, for its cost plus `OVERHEAD`.  Primes that remove
-    nothing are not listed, unless none removes anything by itself (high rank): then those come first whose
-    join is expected to be smallest for the quotient it reaches.
+    largest number of entries; coefficient vectors of the known points.  A prime counts by the share of
+    classes that it removes, in the state where it removes most, for its cost plus `OVERHEAD`.  Primes that
+    remove nothing are not listed, unless none removes anything by itself (high rank): then those come first
+    whose join is expected to be smallest for the quotient it reaches.
     """
     left = [state for state in states if state.count]
     pool = list(offers)

@@ -19,7 +19,7 @@ from sieve.exact.primary import Characters
 
 Exponents = tuple[tuple[int, int], ...]
 
-SHARE = 8
+SHARE = 2
 """Labels that a run together leaves open are tried one by one if it came this close to the largest size."""
 
 

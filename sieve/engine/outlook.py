@@ -12,6 +12,7 @@ from __future__ import annotations
 from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass
 from math import exp, inf, log, log1p
+from weakref import WeakKeyDictionary
 
 from sieve.engine.join import match
 from sieve.engine.relation import Relation, coarsen
@@ -137,6 +138,19 @@ class Outlook:
         return total
 
 
+#: coarser forms of conditions by the primes kept, for as long as the condition lives
+_coarser: WeakKeyDictionary[Relation, dict[tuple[int, ...], Relation]] = WeakKeyDictionary()
+
+
+def _restricted(relation: Relation, primes: Sequence[int]) -> Relation:
+    """The condition at some of its primes only."""
+    known = _coarser.setdefault(relation, {})
+    key = tuple(primes)
+    if key not in known:
+        known[key] = coarsen(relation, {ell: relation.exponents[ell] for ell in primes})
+    return known[key]
+
+
 def _variants(relation: Relation, primes_wanted: Collection[int]) -> list[Relation]:
     """The condition and its coarser forms by leaving out primes; each still has one of the wanted primes."""
     out = [relation]
@@ -145,7 +159,7 @@ def _variants(relation: Relation, primes_wanted: Collection[int]) -> list[Relati
         for mask in range(1, 2 ** len(primes) - 1):
             chosen = [ell for k, ell in enumerate(primes) if mask >> k & 1]
             if any(ell in primes_wanted for ell in chosen):
-                out.append(coarsen(relation, {ell: relation.exponents[ell] for ell in chosen}))
+                out.append(_restricted(relation, chosen))
     return out
 
 
