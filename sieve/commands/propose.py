@@ -87,6 +87,9 @@ def text(done: Proposed) -> str:
         lines.append(f"# {found} independent divisors were found; a proof that this is the rank is missing")
     elif found != rank:
         lines.append(f"# {found} independent divisors were found, not {rank}: this file is not complete")
+    elif proposal.unsaturated:
+        ells = ", ".join(map(str, proposal.unsaturated))
+        lines.append(f"# whether the index of this group in J(Q) is prime to {ells} is not known")
     if proposal.base.degree == 2:
         lines.append("# no closed point of odd degree was found: [2 P - U], U a fibre of x, replaces [P - B]")
     lines += [

@@ -15,6 +15,7 @@ from sieve.curves.divisors import Divisor, FibrePlace, Place, Point, RationalPla
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.curves.search import search_points
 from sieve.engine.coordinates import basis_of_classes
+from sieve.engine.hypotheses import saturation
 from sieve.exact.primes import primes_below
 from sieve.local.records import local_records
 
@@ -23,6 +24,8 @@ PRIMES_BELOW = 150
 USED = 12
 """At most so many places are combined."""
 SEARCH_HEIGHT = 200
+SMALL_ELLS = (2, 3, 5)
+"""Primes at which the group found should be saturated before the search stops."""
 
 
 @dataclass(frozen=True)
@@ -31,7 +34,8 @@ class Proposal:
 
     `points`, rational points; `base` of degree 1, or one fibre (of which half is meant) when no divisor of
     degree 1 was found; `generators`, independent as far as the auxiliary primes tell; `torsion`, pairs
-    (order, divisor); `size`, the bound of the last search.
+    (order, divisor); `size`, the bound of the last search; `unsaturated`, the primes among `SMALL_ELLS` at
+    which the group they generate is not proved saturated (all of them when the rank is not reached).
     """
 
     points: tuple[Point, ...]
@@ -39,12 +43,14 @@ class Proposal:
     generators: tuple[Divisor, ...]
     torsion: tuple[tuple[int, Divisor], ...]
     size: int
+    unsaturated: tuple[int, ...]
 
 
 def propose(
     curve: HyperellipticCurve, rank: int | None, largest: int = 4, executor: Executor | None = None
 ) -> Proposal:
-    """Search with growing bounds until `rank` independent divisors are found, or up to `largest`.
+    """Search with growing bounds until `rank` independent divisors that generate a group saturated at small
+    primes are found, or up to `largest`.
 
     Arguments: `rank`, the number of generators wanted (None: whatever `largest` gives).  A proposal with
     fewer generators proves nothing.
@@ -55,7 +61,7 @@ def propose(
     """
     points = tuple(search_points(curve, SEARCH_HEIGHT))
     half = Divisor.of([(1, FibrePlace(1))])
-    found = Proposal(points, half, (), (), 0)
+    found = Proposal(points, half, (), (), 0, SMALL_ELLS)
     for size in range(1, largest + 1):
         closed = closed_points(curve, size)
         odd = [p for p in closed if p.degree % 2]
@@ -67,15 +73,16 @@ def propose(
             base = half
         places: list[Place] = [RationalPlace(p) for p in points[1:USED]]
         places += [p for p in closed if p.degree > 1][: USED - len(places)]
-        found = _basis(curve, points, base, places, size, executor)
-        if rank is not None and len(found.generators) >= rank and (points or odd or size == largest):
+        found = _basis(curve, points, base, places, rank, size, executor)
+        reached = rank is not None and len(found.generators) >= rank
+        if reached and not found.unsaturated and (points or odd):
             break
     return found
 
 
 def _basis(
-    curve: HyperellipticCurve, points: tuple[Point, ...], base: Divisor, places: Sequence[Place], size: int,
-    executor: Executor | None,
+    curve: HyperellipticCurve, points: tuple[Point, ...], base: Divisor, places: Sequence[Place],
+    rank: int | None, size: int, executor: Executor | None,
 ) -> Proposal:
     divisors = []
     for place in places:
@@ -86,13 +93,29 @@ def _basis(
             if divisor.terms:
                 divisors.append(divisor)
     if not divisors:
-        return Proposal(points, base, (), (), size)
+        return Proposal(points, base, (), (), size, SMALL_ELLS)
+    primes = primes_below(PRIMES_BELOW)
+    records = [r for r in local_records(curve, base, divisors, primes, executor) if r.usable]
     functionals = []
-    for record in local_records(curve, base, divisors, primes_below(PRIMES_BELOW), executor):
-        if record.usable:
-            for j, d in enumerate(record.invariants):
-                functionals.append((d, [image[j] for image in record.images]))
+    for record in records:
+        for j, d in enumerate(record.invariants):
+            functionals.append((d, [image[j] for image in record.images]))
     basis = basis_of_classes(len(divisors), functionals)
+    rows = [*basis.free, *basis.torsion]
+    images = [
+        tuple(
+            tuple(sum(a * image[j] for a, image in zip(row, r.images, strict=True)) % d
+                  for j, d in enumerate(r.invariants))
+            for row in rows
+        )
+        for r in records
+    ]
+    two = curve.two_torsion_dimension()
+    unsaturated = tuple(
+        ell for ell in SMALL_ELLS
+        if len(basis.free) != rank
+        or not saturation(ell, len(basis.free), basis.orders, records, images, two).proved
+    )
 
     def combined(row: Sequence[int]) -> Divisor:
         total = Divisor(())
@@ -104,4 +127,5 @@ def _basis(
     return Proposal(
         points, base, tuple(combined(row) for row in basis.free),
         tuple((d, combined(row)) for d, row in zip(basis.orders, basis.torsion, strict=True)), size,
+        unsaturated,
     )
