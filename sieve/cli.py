@@ -12,8 +12,10 @@ import click
 
 from sieve import __version__
 from sieve.commands import advise as advise_command
+from sieve.commands import appendix as appendix_command
 from sieve.commands import candidates as candidates_command
 from sieve.commands import check as check_command
+from sieve.commands import draw as draw_command
 from sieve.commands import inspect as inspect_command
 from sieve.commands import propose as propose_command
 from sieve.commands import run as run_command
@@ -326,6 +328,43 @@ def check(proof: str, as_json: bool, verbose: bool) -> int:
     """
     Progress(verbose).say(f"checking {proof}")
     return _guard(proof, lambda: check_command.execute(proof, as_json))
+
+
+@main.command("appendix", epilog="Example: sieve appendix demo.out/proof.jsonl -o appendix.tex")
+@click.argument("proof")
+@click.option("-o", "--output", required=True, help="The file to write; it ends in .tex, .md or .html.")
+@click.option("--json", "as_json", is_flag=True, help="One JSON document on standard output, nothing else.")
+@click.option("-v", "--verbose", is_flag=True, help="Say what is being done, on standard error.")
+def appendix(proof: str, output: str, as_json: bool, verbose: bool) -> int:
+    """Write the appendix of a paper from the proof log PROOF alone (it is not checked: see `check`)."""
+    return _from_log(appendix_command.execute, proof, output, as_json, verbose)
+
+
+@main.command("draw", epilog="Example: sieve draw demo.out/proof.jsonl -o graph.svg")
+@click.argument("proof")
+@click.option("-o", "--output", required=True, help="The file to write; it ends in .svg, .tex or .graphml.")
+@click.option("--json", "as_json", is_flag=True, help="One JSON document on standard output, nothing else.")
+@click.option("-v", "--verbose", is_flag=True, help="Say what is being done, on standard error.")
+def draw(proof: str, output: str, as_json: bool, verbose: bool) -> int:
+    """Draw the constraint graph of the proof log PROOF: conditions, and the primes l that join them."""
+    return _from_log(draw_command.execute, proof, output, as_json, verbose)
+
+
+def _from_log(
+    execute: Callable[[str, str], None], proof: str, output: str, as_json: bool, verbose: bool
+) -> int:
+    """Write a file made from a proof log."""
+
+    def work() -> int:
+        Progress(verbose).say(f"reading {proof}")
+        execute(proof, output)
+        if as_json:
+            click.echo(json_text({"proof": proof, "output": output}), nl=False)
+        else:
+            click.echo(f"wrote {output}")
+        return 0
+
+    return _guard(proof, work)
 
 
 def entry() -> None:

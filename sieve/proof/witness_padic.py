@@ -1,7 +1,8 @@
 """Evidence for the logarithms at a Chabauty prime: sections whose zeros lie in residue discs of F_p-points.
 
 For each disc that is needed a combination of sections that leaves n times the logarithm of its centre;
-for each divisor in Mumford representation a section through it.  How the logarithms follow: `sieve.local.centres`.
+for each divisor in Mumford representation a section through it.  How the logarithms follow:
+`sieve.local.centres`.
 """
 
 from __future__ import annotations
