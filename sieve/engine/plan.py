@@ -184,7 +184,7 @@ def fit(state: Relation, condition: Relation, cap: int) -> Relation | None:
         worst = max(exponents, key=lambda ell: (condition.by_prime[ell].order, ell))
         exponents[worst] -= 1
         condition = coarsen(condition, exponents)
-    return condition if condition.parts else None
+    return condition if condition.parts or not condition.count else None
 
 
 def sieve_classes(relations: Sequence[Relation], start: Relation | None = None, *, cap: int = 200_000,
