@@ -89,9 +89,9 @@ class ConstraintGraph:
         view = visible_view(relation, [self.relations[other] for _, other in edges])
         parts = {ell: (e, view.exponents.get(ell, 0)) for ell, e in relation.exponents.items()}
         alike: set[str] = set()
-        if label is not None:
-            for place in view.with_labels([label]).tags if view.tags is not None else ():
-                alike.update(view.label_sets[int(place)])
+        tags = None if label is None else view.with_labels([label]).tags
+        for place in [] if tags is None else tags.tolist():
+            alike.update(view.label_sets[place])
         return Sight(parts, tuple(other for _, other in edges), tuple(-o for o, _ in edges),
                      tuple(sorted(alike - {label or ""})))
 

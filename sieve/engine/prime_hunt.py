@@ -13,7 +13,7 @@ from dataclasses import dataclass, replace
 from math import log
 
 from sieve.engine.fates import Fate, Use, replay, shorten, visible_view
-from sieve.engine.join import common_index, semijoin, semijoin_mask
+from sieve.engine.join import common_index, join, match, semijoin, semijoin_mask
 from sieve.engine.outlook import PREMIUMS, log_pass, shared_parts
 from sieve.engine.plan import Outcome, informative, sieve_run
 from sieve.engine.relation import Relation, coarsen
@@ -22,6 +22,12 @@ from sieve.exact.primes import valuation_of
 
 CAP = 60_000
 """The largest set of classes that a hunt keeps."""
+
+SMALL = 20
+"""Parts at primes below this are kept even where one condition alone has them."""
+
+FAR = 10**6
+"""Trails of a smaller index than this (relative to the candidates) are joined by trails made without them."""
 
 LEAST_GAIN = 0.05
 """A prime is looked at when it is expected to remove this share (as a logarithm) of the classes."""
@@ -78,6 +84,24 @@ def depth(candidates: Relation, label: str, prime: int, known: Sequence[Sequence
     return best
 
 
+def _worth_keeping(relations: Sequence[Relation]) -> list[Relation]:
+    """The relations with the parts that others share, and those at small primes in any case."""
+    shared = shared_parts(relations)
+    return [coarsen(r, {ell: e if ell < SMALL else s.exponents.get(ell, 0) for ell, e in r.exponents.items()})
+            for r, s in zip(relations, shared, strict=True)]
+
+
+def _best(outcomes: Sequence[Outcome], most: int) -> Trail | None:
+    """The strongest statement with at most so many classes."""
+    fitting = [o for o in outcomes if o.relation.count <= most]
+    if not fitting:
+        return None
+    best = max(fitting, key=lambda o: log(o.relation.index) - log(max(o.relation.count, 1)))
+    kinds = {"start": "join"}
+    uses = tuple(Use(s.name, s.exponents, kinds.get(s.kind, s.kind)) for s in best.plan.steps)
+    return Trail(best.relation, uses)
+
+
 class Hunt:
     """The open candidates of one labelled relation while auxiliary primes come in.
 
@@ -92,7 +116,7 @@ class Hunt:
                  known: Sequence[Sequence[int]] = (), *, cap: int = CAP) -> None:
         self.candidates, self.prime, self.cap = candidates, prime, cap
         self.known = [tuple(int(c) for c in vector) for vector in known]
-        self.pool = informative(shared_parts([*pool, candidates])[:-1])
+        self.pool = informative(_worth_keeping([*pool, candidates])[:-1])
         self.by_name = {r.name: r for r in self.pool}
         self.fates: dict[str, Fate] = {}
         self.top = candidates.exponents.get(prime, 0)
@@ -116,14 +140,18 @@ class Hunt:
         for premium in PREMIUMS:
             found.extend(sieve_run(self.pool, start, cap=self.cap, premium=premium))
         trails: list[Trail] = []
-        for most in (2 * start.count, 30 * start.count, self.cap):
-            fitting = [o for o in found if o.relation.count <= most]
-            if not fitting:
-                continue
-            best = max(fitting, key=lambda o: log(o.relation.index) - log(max(o.relation.count, 1)))
-            uses = tuple(Use(s.name, s.exponents, s.kind) for s in best.plan.steps)
-            if all(uses != t.uses for t in trails):
-                trails.append(Trail(best.relation, uses))
+        limits = (2 * start.count, 30 * start.count, self.cap)
+        for most in limits:
+            best = _best(found, most)
+            if best is not None and all(best.uses != t.uses for t in trails):
+                trails.append(best)
+        # conditions that do not meet the candidates yet may do so through one that is still to come
+        if max((t.relation.index for t in trails), default=1) < FAR * start.index:
+            apart = [o for premium in PREMIUMS for o in sieve_run(self.pool, cap=self.cap, premium=premium)]
+            for most in limits:
+                best = _best(apart, max(most // start.count, 1))
+                if best is not None and match(start, best.relation).size <= self.cap:
+                    trails.append(Trail(join(start, best.relation), best.uses))
         for trail in trails:
             self._bury(trail, set(labels) - set(trail.relation.labels))
         return self._without_dead(trails)
