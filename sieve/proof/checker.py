@@ -29,6 +29,7 @@ FORMAT = "sieve-proof/1"
 MAX_LINE, MAX_FILE, MAX_DEPTH, MAX_DIGITS = 4_000_000, 400_000_000, 8, 4000
 MAX_RECORDS, MAX_CLASSES, MAX_PRIME, MAX_ELL = 200_000, 400_000, 2**20, 2**64
 MAX_GENUS, MAX_RANK, MAX_BASE, MAX_TERMS, MAX_BITS, MAX_FIELD = 12, 60, 400, 5000, 4000, 200_000
+MAX_SECTION, MAX_PLACES, MAX_HEIGHT = 100, 100, 200_000
 MAX_WORK = 3 * 10**9
 """Elementary steps, about a microsecond each."""
 
@@ -37,6 +38,7 @@ class Fault(Exception):
     """A stable reason code and the reason in words; the line and the record are added by the reader."""
 
     def __init__(self, code: str, reason: str) -> None:
+        reason = "".join(c if c.isprintable() else "?" for c in reason[:300])
         super().__init__(reason)
         self.code, self.reason, self.line, self.record = code, reason, 0, ""
 
@@ -109,7 +111,8 @@ def decode(line: bytes) -> dict[str, Any]:
         raise Malformed("json", error.msg) from None
     except RecursionError:
         raise Declined(f"nesting deeper than {MAX_DEPTH}") from None
-    if text not in (json.dumps(value, separators=(",", ":"), ensure_ascii=escaped) for escaped in (False, True)):
+    spellings = (json.dumps(value, separators=(",", ":"), ensure_ascii=escaped) for escaped in (False, True))
+    if text not in spellings:
         raise Malformed("spelling", "not in the compact form")
     if type(value) is not dict or type(value.get("kind")) is not str or next(iter(value)) != "kind":
         raise Malformed("record", 'no object that begins with "kind"')
@@ -166,6 +169,13 @@ def rational(value: Any) -> Fraction:
     if str(number) != value:
         raise Malformed("spelling", "a rational number not in lowest terms")
     return number
+
+
+def section(value: Any, low: int | None = None, high: int | None = None) -> Row:
+    """The coefficients of a section."""
+    if len(items(value)) > MAX_SECTION:
+        raise Declined(f"a section with more than {MAX_SECTION} coefficients")
+    return integers(value, low, high)
 
 
 def fields(record: dict[str, Any], *keys: str) -> list[Any]:
@@ -456,16 +466,15 @@ class Reduction:
         self.curve, self.prime = curve, v
         self.f, self.h = [c % v for c in curve.full_f], [c % v for c in curve.full_h]
         top = (self.h[-1], self.f[-1])
-        if v == 2:
-            fibre: Callable[[int, int], Row] = lambda h, f: [y for y in (0, 1) if (y * y + h * y - f) % 2 == 0]
-        else:
-            roots: dict[int, Row] = {}
-            for root in range(v):
-                roots.setdefault(root * root % v, []).append(root)
-            half = (v + 1) // 2
+        roots: dict[int, Row] = {}
+        for root in range(v):
+            roots.setdefault(root * root % v, []).append(root)
 
-            def fibre(h: int, f: int) -> Row:
-                return sorted((root - h) * half % v for root in roots.get((h * h + 4 * f) % v, ()))
+        def fibre(h: int, f: int) -> Row:
+            """The solutions of y^2 + h y = f."""
+            if v == 2:
+                return [y for y in (0, 1) if (y * y + h * y - f) % 2 == 0]
+            return sorted((root - h) * (v + 1) // 2 % v for root in roots.get((h * h + 4 * f) % v, ()))
 
         self.points: list[Point] = []
         for x in range(v):
@@ -527,18 +536,17 @@ def weil_lower_bound(v: int, g: int, points: int) -> int:
 
 
 def field_tables(v: int, degree: int) -> tuple[Row, Row]:
-    """Powers of a generator of F_{v^degree} as codes (base v digits), and the logarithm of every code."""
+    """Powers of a generator of F_{v^degree}, degree >= 2, as codes (base v digits); logarithms of codes."""
     size = v**degree
     for tail in range(1, size):
         low = [tail // v**i % v for i in range(degree)]
-        powers, element = [1], [0, 1] + [0] * (degree - 1) if degree > 1 else [-low[0] % v]
+        powers, element = [1], [0, 1] + [0] * (degree - 2)
         while element[0] != 1 or any(element[1:]):
             powers.append(sum(c * v**i for i, c in enumerate(element)))
             if powers[-1] == 0 or len(powers) == size:
                 break
             top = element[-1]
-            element = [(a - top * c) % v for a, c in zip([0, *element[:-1]], low)] if degree > 1 else [
-                -element[0] * low[0] % v]
+            element = [(a - top * c) % v for a, c in zip([0, *element[:-1]], low)]
         if len(powers) == size - 1 and powers[-1]:
             logs = [-1] * size
             for i, code in enumerate(powers):
@@ -604,7 +612,10 @@ class Mumford:
         need(len(w) < len(u) and not (w and w[-1] == 0), "place-degree", "w has no smaller degree than u")
         self.u, self.w, self.degree = u, w, len(u) - 1
         scale = lcm(*(c.denominator for c in u + w))
-        # modulo a scaled: with x = X / scale all is integral
+        size = max(c.numerator.bit_length() for c in u + w) + scale.bit_length()
+        if size * (self.degree + 2 * curve.genus) > MAX_HEIGHT:
+            raise Declined("a place of too large a height or degree")
+        # with x = X / scale all is integral
         top = 2 * curve.genus + 2
         big_u = [int(c * scale ** (self.degree - i)) for i, c in enumerate(u)]
         big_w = [int(c * scale ** (curve.genus + 1 + self.degree) / scale**i) for i, c in enumerate(w)]
@@ -622,12 +633,13 @@ class Mumford:
         """u and w modulo a power of p."""
         denominators = lcm(*(c.denominator for c in self.u + self.w))
         need(denominators % p != 0, "place-denominator", f"a place has a denominator divisible by {p}")
-        u, w = ([c.numerator * pow(c.denominator, -1, modulus) % modulus for c in a] for a in (self.u, self.w))
+        u, w = ([c.numerator * pow(c.denominator, -1, modulus) % modulus for c in a]
+                for a in (self.u, self.w))
         return u, w
 
 
 Divisor = list[tuple[int, str, Any]]
-"""Triples (multiplicity, "point" | "mumford" | "fibres", the point | number of the place | number of fibres)."""
+"""Triples (multiplicity, "point", point), (.., "mumford", number of the place), (.., "fibres", how many)."""
 
 
 # ---- J(F_v) from sections: the record `local` ---------------------------------------------------------
@@ -643,13 +655,14 @@ class Local:
         need(self.prime not in proof.locals, "duplicate", f"a second record for {v}")
         self.reduction = Reduction(proof.curve, self.prime, proof.work)
         self.moduli = integers(invariants, 2)
+        need(len(self.moduli) <= 2 * proof.curve.genus, "invariants", "more than 2 g invariants")
         self.points, self.unit = len(self.reduction.points), [0] * len(self.moduli)
         self.logs: dict[int, Row] = {}
         self.places: list[Row] = []
         if self.points == 0:
             empty = origin is None and counts == 0 and type(counts) is int
-            need(empty and all(x == [] for x in (invariants, unit, base, define, close, mumford)), "empty-record",
-                 "there is no point modulo the prime, and the record claims more")
+            empty = empty and all(x == [] for x in (invariants, unit, base, define, close, mumford))
+            need(empty, "empty-record", "there is no point modulo the prime, and the record claims more")
             return
         need(all(b % a == 0 for a, b in zip(self.moduli, self.moduli[1:])), "invariants",
              "the invariants do not divide each other")
@@ -670,7 +683,7 @@ class Local:
         relations = [self.relation(*items(entry, 2)) for entry in items(close)]
         for i in range(self.points):
             if self.reduction.conjugate(i) == i:
-                need(self.sum([(2, self.logs[i]), (-1, self.unit)]) == [0] * len(self.moduli), "relation-log",
+                need(not any(self.sum([(2, self.logs[i]), (-1, self.unit)])), "relation-log",
                      "the logarithms do not satisfy 2 P = U")
                 relations.append(plus([2 * c for c in self.vector(i)], [1], -1))
         self.certify(relations, proof, integer(counts))
@@ -678,8 +691,9 @@ class Local:
             number, c, zeros = items(entry, 3)
             need(integer(number) == k, "place-order", "the places are not listed in their order")
             u, w = proof.places[k].modulo(self.prime, self.prime)
-            c, zeros = integers(c, 0, self.prime - 1), integers(zeros)
-            need(divide(plus(c, w, -1), u, self.prime)[1] == [], "place-section", "the section misses the place")
+            c, zeros = section(c, 0, self.prime - 1), integers(zeros)
+            missed = divide(plus(c, w, -1), u, self.prime)[1]
+            need(not missed, "place-section", "the section misses the place")
             m = self.reduction.zeros(c, zeros, u)
             self.places.append(self.sum([(m, self.unit), *((-1, self.logs[i]) for i in zeros)]))
 
@@ -705,7 +719,7 @@ class Local:
 
     def define(self, c: Any, zeros: Any) -> None:
         """A section with one unknown zero defines its class."""
-        c, zeros = integers(c, 0, self.prime - 1), integers(zeros)
+        c, zeros = section(c, 0, self.prime - 1), integers(zeros)
         m = self.reduction.zeros(c, zeros, [1])
         unknown = [i for i in zeros if i not in self.logs]
         need(len(unknown) == 1, "define", f"{len(unknown)} unknown zeros, expected 1")
@@ -730,12 +744,14 @@ class Local:
                 for k in known:
                     row = [a - b for a, b in zip(row, self.vectors[k])]
                 self.vectors[j] = row
+                if max(map(abs, row)) >> MAX_BITS:
+                    raise Declined("points far from the base")
             todo.pop()
         return self.vectors[i]
 
     def relation(self, c: Any, zeros: Any) -> Row:
         """A section whose zeros are all known: a relation, checked in A."""
-        c, zeros = integers(c, 0, self.prime - 1), integers(zeros)
+        c, zeros = section(c, 0, self.prime - 1), integers(zeros)
         m = self.reduction.zeros(c, zeros, [1])
         log = self.sum([(-m, self.unit), *((1, self.logs[i]) for i in zeros)])
         need(not any(log), "relation-log", "the logarithms do not satisfy a closing relation")
@@ -753,10 +769,10 @@ class Local:
             insert(image, row)
         need(index_of(image) == 1, "not-onto", "the logarithms do not generate the group")
         index = lattice_index(relations, self.width, proof.work)
-        need(index == order, "index", f"the relations have index {index}, the group order {order}")
+        need(index == order, "index", "the index of the relations is not the order of the group")
         need(counts in (0, g), "counts", f"counts is {counts}, expected 0 or {g}")
         if counts == 0:
-            need(index < 2 * weil_lower_bound(v, g, self.points), "bound", "the index may be a multiple of #J")
+            need(index < 2 * weil_lower_bound(v, g, self.points), "bound", "a multiple of #J is possible")
         else:
             if v**g > MAX_FIELD:
                 raise Declined(f"a field of more than {MAX_FIELD} elements")
@@ -831,7 +847,8 @@ class Disc:
             ha, fa = padic.compose(self.h, self.a), padic.compose(self.f, self.a)
             value = padic.reduce(plus(padic.product(self.b, plus(self.b, ha)), fa, -1))
             if self.ramified:
-                slope_series = plus(padic.product(padic.compose(dh, self.a), self.b), padic.compose(df, self.a), -1)
+                slope_series = padic.product(padic.compose(dh, self.a), self.b)
+                slope_series = plus(slope_series, padic.compose(df, self.a), -1)
             else:
                 slope_series = plus(ha, self.b, 2)
             check = padic.product(slope_series, inverse)
@@ -914,7 +931,8 @@ class Padic:
     def __init__(self, proof: Proof, record: dict[str, Any]) -> None:
         p, digits, terms, sections, discs, mumford, reduction = fields(
             record, "prime", "digits", "terms", "sections", "discs", "mumford", "reduction")
-        self.prime, self.digits, self.terms = prime(p, MAX_PRIME), integer(digits, 1), integer(terms, 2)
+        self.prime = prime(p, MAX_PRIME)
+        self.digits, self.terms = integer(digits, 1), integer(terms, 2)
         need(self.prime not in proof.padics, "duplicate", f"a second record for {p}")
         if self.terms > MAX_TERMS or self.digits * self.prime.bit_length() > MAX_BITS:
             raise Declined("more terms or digits than this checker handles")
@@ -927,14 +945,14 @@ class Padic:
         self.reduction = Reduction(proof.curve, self.prime, proof.work)
         self.known: dict[int, Disc] = {}
         self.logs: dict[int, Ball] = {}
-        self.sections = [self.section(*(integers(c) for c in items(entry, 2))) for entry in items(sections)]
+        self.sections = [self.section(*(section(c) for c in items(entry, 2))) for entry in items(sections)]
         totals = [self.total(*section[:2]) for section in self.sections]
         for entry in items(discs):
             self.solve(entry, totals)
         self.places: list[Ball | None] = [None] * len(proof.places)
         given = [integer(items(entry, 3)[0], 0, len(proof.places) - 1) for entry in items(mumford)]
         need(given == sorted(set(given)), "place-order", "the places are not listed in their order")
-        sources = {k: (integers(even), integers(odd)) for k, even, odd in mumford}
+        sources = {k: (section(even), section(odd)) for k, even, odd in mumford}
         for k in range(len(proof.places)):
             self.places[k] = self.place(proof.places[k], sources.get(k))
 
@@ -968,7 +986,7 @@ class Padic:
         return out
 
     def cut(self, m: int) -> tuple[int, int, int]:
-        """(K, v, tail): K terms for m roots, the largest v_p(k) for k <= K, the valuation of what is left out.
+        """(K, v, tail): K terms for m roots, the largest v_p(k) for k <= K, a valuation of what is left out.
 
         K is the least length for which nothing is lost by the cut.
         """
@@ -1026,7 +1044,7 @@ class Padic:
             if z:
                 value = value_at(even, x, p) + value_at(odd, x, p) * y
             else:
-                value = (even[m] if len(even) > m else 0) + (odd[m - g - 1] if m - g - 1 in range(len(odd)) else 0) * y
+                value = sum(even[m:]) + sum(odd[max(0, m - g - 1) :]) * y
             if value % p == 0:
                 monic = self.disc(i).small_roots(self.disc(i).section(even, odd, m))
                 orders[i], integrals[i] = len(monic) - 1, self.disc(i).integral(monic)
@@ -1100,15 +1118,16 @@ class Padic:
                 inside[i], rest = inside.get(i, 0) + 1, divide(rest, [-x, 1], p)[0]
         terms: list[tuple[int, Ball]] = []
         if source is None:
-            need(len(rest) == 1, "place-missing", "no section through a place with points that are not rational")
+            need(len(rest) == 1, "place-missing", "no section through a place with irrational points")
             orders: dict[int, int] = {}
         else:
             even, odd = source
             need(place.degree <= multiple(even, odd, self.proof.curve.genus) + 1, "place-section",
                  "a section of too small a degree for the place")
-            need(divide(plus(even, times(odd, w)), u, q)[1] == [], "place-section", "the section misses the place")
+            missed = divide(plus(even, times(odd, w)), u, q)[1]
+            need(not missed, "place-section", "the section misses the place")
             orders, integrals, missing = self.vanishing(even, odd)
-            need(missing == len(rest) - 1, "section-zeros", "the section has other zeros that are not rational")
+            need(missing == len(rest) - 1, "section-zeros", "the section has other irrational zeros")
         for i in sorted({*orders, *inside}):
             if source is not None and orders.get(i, 0) == inside.get(i, 0):
                 continue
@@ -1180,7 +1199,7 @@ class State:
 class Table:
     """The images of K in a group, triangular, each row with a vector of K above it; and the kernel."""
 
-    def __init__(self, state: State, condition: Condition, coarse: dict[int, int]) -> None:
+    def __init__(self, state: State, condition: Condition, coarse: dict[int, int], work: Work) -> None:
         self.condition, n = condition, len(state.basis)
         self.width = len(condition.moduli)
         whole = lcm(1, *condition.moduli)
@@ -1191,8 +1210,10 @@ class Table:
         for ell, e in coarse.items():
             # ell^e times the image of L, in the ell-part alone
             factor = whole // part(whole, [ell]) * ell**e
-            added += [[factor * c % m for c, m in zip(row, condition.moduli)] + [0] * n for row in condition.images]
+            added += [[factor * c % m for c, m in zip(row, condition.moduli)] + [0] * n
+                      for row in condition.images]
         added += [condition.value(row) + row for row in state.basis]
+        work.spend(3 * len(added) * (self.width + n) ** 2 + 20 * len(condition.allowed) * (1 + self.width))
         for row in added:
             left = insert(self.rows, row)[self.width :]
             insert(self.kernel, [c % self.exponent for c in left], self.exponent)
@@ -1204,7 +1225,7 @@ class Table:
             self.buckets.setdefault(key, []).append(vector)
 
     def split(self, value: Row, n: int) -> tuple[Vector, Row]:
-        """A value as its class modulo the image of K, and minus a vector of K that makes up the difference."""
+        """A value as its class modulo the image of K, and minus a vector of K for the difference."""
         row = remainder(self.rows, value + [0] * n)
         return tuple(row[: self.width]), row[self.width :]
 
@@ -1263,6 +1284,7 @@ class Proof:
         self.places: list[Mumford] = []
         self.premises: dict[str, dict[str, Any]] = {}
         self.candidates: dict[tuple[int, str], Candidate] = {}
+        self.names: list[tuple[int, str]] = []
         self.locals: dict[int, Local] = {}
         self.padics: dict[int, Padic] = {}
         self.two_torsion: int | None = None
@@ -1335,7 +1357,7 @@ class Proof:
             raise Declined(f"more than {MAX_RANK} generators")
 
     def divisor(self, value: Any, degree: int | None) -> Divisor:
-        """A divisor over Q of the given degree; without one it is 1 or 2 and becomes the degree of the base."""
+        """A divisor over Q of the given degree; None for the base, of degree 1 or 2."""
         out: Divisor = []
         total = 0
         for entry in items(value):
@@ -1348,9 +1370,12 @@ class Proof:
                 total += k
             elif kind == "mumford":
                 u, w = ([rational(c) for c in items(a)] for a in items(what, 2))
-                number = next((i for i, known in enumerate(self.places) if (known.u, known.w) == (u, w)), None)
+                same = (i for i, known in enumerate(self.places) if (known.u, known.w) == (u, w))
+                number = next(same, None)
                 if number is None:
                     number = len(self.places)
+                    if number == MAX_PLACES:
+                        raise Declined(f"more than {MAX_PLACES} places")
                     self.places.append(Mumford(self.curve, u, w))
                 out.append((integer(k), kind, number))
                 total += k * (len(u) - 1)
@@ -1360,10 +1385,10 @@ class Proof:
             else:
                 raise Malformed("place", "an unknown kind of place")
         if degree is None:
-            need(total in (1, 2), "divisor-degree", f"a base of degree {total}, expected 1 or 2")
+            need(total in (1, 2), "divisor-degree", "a base of another degree than 1 or 2")
             self.degree = total
         else:
-            need(total == degree, "divisor-degree", f"a divisor of degree {total}, expected {degree}")
+            need(total == degree, "divisor-degree", "a generator of degree other than 0")
         return out
 
     def rational_point(self, value: Any) -> Point:
@@ -1384,7 +1409,8 @@ class Proof:
             ell = prime(fields(record, "id", "statement", "source", "ell")[3], MAX_ELL)
             expected = f"index {ell}"
         elif word == "complete":
-            expected = f"complete {prime(fields(record, 'id', 'statement', 'source', 'prime')[3], MAX_PRIME)}"
+            p = prime(fields(record, "id", "statement", "source", "prime")[3], MAX_PRIME)
+            expected = f"complete {p}"
         elif word == "bound":
             extra = fields(record, "id", "statement", "source", "prime", "candidate", "at_most")[3:]
             expected = f"bound {prime(extra[0], MAX_PRIME)} {text(extra[1])}"
@@ -1404,7 +1430,8 @@ class Proof:
         need((p, name) not in self.candidates, "duplicate", "a candidate occurs twice")
         need(self.curve.smooth(p), "not-smooth", f"the model is not smooth modulo {p}")
         if form == "point":
-            point, digits, k = fields(record, "prime", "id", "form", "point", "digits", "multiplicity")[3:]
+            names = ("point", "digits", "multiplicity")
+            point, digits, k = fields(record, "prime", "id", "form", *names)[3:]
             new.digits, new.multiplicity = integer(digits, 1), integer(k, 1)
             if new.digits * p.bit_length() > MAX_BITS:
                 raise Declined("more digits than this checker handles")
@@ -1413,7 +1440,8 @@ class Proof:
             point, k = fields(record, "prime", "id", "form", "point", "multiplicity")[3:]
             new.point, new.multiplicity = self.residue(point, p, 1), integer(k, 1)
         elif form == "coefficients":
-            values, torsion, disc = fields(record, "prime", "id", "form", "coefficients", "torsion", "disc")[3:]
+            names = ("coefficients", "torsion", "disc")
+            values, torsion, disc = fields(record, "prime", "id", "form", *names)[3:]
             for entry in items(values, self.rank):
                 c, digits = integers(entry, 0, None, 2)
                 if digits * p.bit_length() > MAX_BITS:
@@ -1427,6 +1455,7 @@ class Proof:
         else:
             raise Malformed("form", "an unknown form of candidate")
         self.candidates[p, name] = new
+        self.names.append((p, name))
 
     def residue(self, value: Any, p: int, digits: int) -> Point:
         """A point modulo p^digits in normal form."""
@@ -1453,6 +1482,7 @@ class Proof:
         factors, primes = fields(record, "factors", "primes")
         need(self.two_torsion is None, "duplicate", "a second record on the branch points")
         total, degrees = [1], []
+        need(len(items(factors)) <= len(self.curve.square), "factor", "too many factors")
         for entry in items(factors):
             factor = integers(entry)
             need(bool(factor) and factor[-1] != 0, "factor", "a factor without a leading coefficient")
@@ -1462,6 +1492,7 @@ class Proof:
                 degrees.append(len(factor) - 1)
         need(total == self.curve.square, "factor", "the factors have another product")
         known = [prime(v, MAX_PRIME) for v in items(primes)]
+        self.work.spend(10_000 * len(known) * len(factors))
         for factor in (integers(entry) for entry in factors if len(entry) > 2):
             factor = [c // gcd(*factor) for c in factor]
             possible = set(range(1, len(factor) - 1))
@@ -1503,9 +1534,10 @@ class Proof:
         need(ell in self.bounds, "no-torsion", f"no bound for the {ell}-torsion")
         places = range(len(self.generators))
         rows = [i for i in places if i < self.rank or self.torsion[i - self.rank] % ell == 0]
-        need(self.bounds[ell] <= len(rows) - self.rank, "torsion", f"the {ell}-torsion may be larger than given")
+        need(self.bounds[ell] <= len(rows) - self.rank, "torsion", f"more {ell}-torsion is possible")
         columns: list[Row] = []
         need(len(set(integers(primes))) == len(primes), "duplicate", "a prime occurs twice")
+        self.work.spend(100 * len(primes) * len(rows) ** 2)
         for v in primes:
             local = self.locals.get(v)
             if local is None or local.points == 0:
@@ -1514,7 +1546,8 @@ class Proof:
             for image, order in zip(images[self.rank :], self.torsion):
                 need(not any(order * c % d for c, d in zip(image, local.moduli)), "torsion-order",
                      f"a torsion generator has another order modulo {v}")
-            columns += [[images[i][j] % ell for i in rows] for j, d in enumerate(local.moduli) if d % ell == 0]
+            columns += [[images[i][j] % ell for i in rows]
+                        for j, d in enumerate(local.moduli) if d % ell == 0]
         basis = diagonal([ell] * len(rows))
         for column in columns:
             insert(basis, column, ell)
@@ -1559,7 +1592,7 @@ class Proof:
                 moduli += self.torsion
                 columns += [[int(self.rank + i == j) for j in range(n)] for i in range(len(self.torsion))]
                 values = [row + (c.torsion or []) for row, c in zip(values, candidates)]
-            with_class = local is not None and local.points > 0 and all(c.point is not None for c in candidates)
+            with_class = local is not None and local.points > 0 and all(c.point for c in candidates)
         elif padic is not None and p in primes:
             logs = [padic.log(d) for d in self.generators]
             base = padic.log(self.base)
@@ -1568,7 +1601,8 @@ class Proof:
             shift = max(ball.shift for ball in logs + targets)
             known = min(ball.precision for ball in logs + targets) + shift
             if known > 0:
-                scaled = [[a * p ** (shift - ball.shift) for a in ball.numerators] for ball in logs + targets]
+                scaled = [[a * p ** (shift - ball.shift) for a in ball.numerators]
+                          for ball in logs + targets]
                 moduli += [p**known] * self.curve.genus
                 columns += [[row[k] for row in scaled[:n]] for k in range(self.curve.genus)]
                 values = [row + more for row, more in zip(values, scaled[n:])]
@@ -1589,7 +1623,8 @@ class Proof:
 
     def restrict(self, state: State, condition: Condition, join: bool) -> State:
         """Apply a condition in its parts at all allowed primes."""
-        return apply(state, Table(state, condition.restricted(self.allowed_primes()), {}), join, self.work)
+        table = Table(state, condition.restricted(self.allowed_primes()), {}, self.work)
+        return apply(state, table, join, self.work)
 
     def use(self, state: State, entry: Any) -> State:
         """Apply one use: the condition, the parts with their exponents, join or semijoin."""
@@ -1602,7 +1637,7 @@ class Proof:
         need(list(exponents) == sorted(exponents), "use-order", "the primes are not in order")
         allowed = self.allowed_primes()
         for ell in exponents:
-            need(ell in allowed, "not-allowed", f"the {ell}-part may not be used: no record or premise at {ell}")
+            need(ell in allowed, "not-allowed", f"no record or premise allows the {ell}-part")
         key = (tuple(map(tuple, state.basis)), name, tuple(exponents.items()))
         if key not in self.tables:
             if type(name) is int:
@@ -1614,9 +1649,7 @@ class Proof:
                 need(e <= top, "exponent", f"the group has no elements of order {ell}^{e}")
             if len(self.tables) > 400:
                 self.tables.clear()
-            condition = condition.restricted(exponents)
-            self.work.spend(20 * len(condition.allowed) * (1 + len(condition.moduli)))
-            self.tables[key] = Table(state, condition, exponents)
+            self.tables[key] = Table(state, condition.restricted(exponents), exponents, self.work)
         return apply(state, self.tables[key], how == "join", self.work)
 
     def list_condition(self, name: str, primes: Row) -> Condition:
@@ -1631,10 +1664,9 @@ class Proof:
     def fate(self, record: dict[str, Any]) -> None:
         """The verdict on the next candidate."""
         p, name, verdict = integer(record.get("prime")), text(record.get("id")), record.get("verdict")
-        waiting = list(self.candidates.values())[len(self.fates) :]
-        need(bool(waiting) and (waiting[0].prime, waiting[0].id) == (p, name), "fate-order",
-             "not the fate of the next candidate")
-        candidate = waiting[0]
+        waiting = self.names[len(self.fates) : len(self.fates) + 1]
+        need((p, name) in waiting, "fate-order", "not the fate of the next one")
+        candidate = self.candidates[p, name]
         if verdict == "eliminated":
             uses = items(fields(record, "prime", "id", "verdict", "uses")[3])
             condition = self.candidate_condition(p, [candidate], self.allowed_primes())
@@ -1646,7 +1678,7 @@ class Proof:
             points, given, sole = fields(record, "prime", "id", "verdict", "points", "given", "sole")[3:]
             boolean(given)
             candidate.points, candidate.sole = [self.rational_point(x) for x in items(points)], boolean(sole)
-            need(bool(points) and len(set(candidate.points)) == len(points), "points", "no points, or one twice")
+            need(0 < len(set(candidate.points)) == len(points), "points", "no point, or one twice")
             if candidate.sole:
                 bound = self.premises.get(f"bound {p} {name}", {}).get("at_most") == 1
                 simple = candidate.form == "point" and candidate.multiplicity == 1
@@ -1679,8 +1711,8 @@ class Proof:
         possible = self.restrict(state, condition, False).classes
         need(bool(possible), "point-elsewhere", "the point does not have the coefficients of the candidate")
         if candidate.sole:
-            same = all(tuple(condition.value(vector)) == tuple(a % m for a, m in zip(value, condition.moduli))
-                       for vector in state.classes for value in condition.allowed)
+            wanted = [[a % m for a, m in zip(value, condition.moduli)] for value in condition.allowed]
+            same = all([condition.value(vector)] == wanted for vector in state.classes)
             need(same and not any(any(condition.value(row)) for row in state.basis), "not-determined",
                  "the log does not determine the coefficients of the point to the digits of the candidate")
 
@@ -1703,7 +1735,8 @@ class Proof:
 
     def end(self, record: dict[str, Any]) -> None:
         """What the log claims must be what was checked."""
-        records, eliminated, conclusion, points = fields(record, "records", "eliminated", "conclusion", "points")
+        records, eliminated, conclusion, points = fields(
+            record, "records", "eliminated", "conclusion", "points")
         need(integer(records) == self.records, "records", f"{self.records} records come before")
         pairs = [[integer(p), text(name)] for p, name in (items(entry, 2) for entry in items(eliminated))]
         need(pairs == [[c.prime, c.id] for c in self.fates if c.verdict == "eliminated"], "claim",
@@ -1717,9 +1750,9 @@ class Proof:
         known = [{x for c in listing for x in c.points} for listing in decided]
         no_points = any(local.points == 0 for local in self.locals.values())
         if conclusion == "points":
-            need(set(self.points) in known and bool(points), "conclusion", "the rational points are not decided")
+            need(set(self.points) in known and bool(points), "conclusion", "the points are not decided")
         elif conclusion == "empty":
-            need(self.count == 0 or no_points or set() in known, "conclusion", "X(Q) is not shown to be empty")
+            need(self.count == 0 or no_points or set() in known, "conclusion", "emptiness is not shown")
             need(not points, "conclusion", "points of an empty set")
         elif conclusion == "none":
             need(not points, "conclusion", "points without a conclusion")
@@ -1756,9 +1789,10 @@ def premise_words(proof: Proof, name: str) -> str:
     if word == "index":
         return f"{record['ell']} does not divide the index in J(Q) of the subgroup of the generators"
     if word == "complete":
-        return (f"every rational point agrees with a candidate of the list at {record['prime']}, and at most one "
-                "with each candidate of form point and multiplicity 1")
-    return f"at most {record['at_most']} rational points agree with candidate {record['candidate']} at {record['prime']}"
+        return (f"every rational point agrees with a candidate of the list at {record['prime']}, and at most "
+                "one with each candidate of form point and multiplicity 1")
+    where = f"candidate {record['candidate']} at {record['prime']}"
+    return f"at most {record['at_most']} rational points agree with {where}"
 
 
 def statement(proof: Proof) -> str:
@@ -1776,7 +1810,8 @@ def statement(proof: Proof) -> str:
             alone = ", the only rational point there" if c.sole else ""
             out.append(f"Candidate {c.id} (p = {c.prime}) agrees with {where}{alone}.")
     if proof.conclusion == "points":
-        out.append(f"X(Q) has exactly {len(proof.points)} points: {', '.join(map(point_words, proof.points))}.")
+        points = ", ".join(map(point_words, proof.points))
+        out.append(f"X(Q) has exactly {len(proof.points)} points: {points}.")
     elif proof.conclusion == "empty":
         out.append("X(Q) is empty.")
     still = sum(c.verdict == "open" for c in proof.fates)
@@ -1789,14 +1824,14 @@ def statement(proof: Proof) -> str:
 
 def report(proof: Proof) -> dict[str, Any]:
     """The verdict as plain data."""
-    primes = sorted(proof.locals)
     return {
         "valid": True, "statement": statement(proof),
         "premises": [{"id": name, "statement": premise_words(proof, name), "source": record["source"]}
                      for name, record in proof.premises.items()],
         "eliminated": [{"prime": c.prime, "id": c.id} for c in proof.fates if c.verdict == "eliminated"],
-        "conclusion": proof.conclusion, "records": proof.records, "case": proof.case, "program": proof.program,
-        "local": primes, "padic": sorted(proof.padics), "saturated": sorted(proof.saturated),
+        "conclusion": proof.conclusion, "records": proof.records, "case": proof.case,
+        "program": proof.program, "local": sorted(proof.locals), "padic": sorted(proof.padics),
+        "saturated": sorted(proof.saturated),
     }
 
 
@@ -1820,19 +1855,22 @@ def check(stream: BinaryIO) -> Proof:
     proof = Proof()
     number, kind = 0, ""
     try:
-        for line in lines_of(stream):
+        lines = lines_of(stream)
+        while True:
             number, kind = number + 1, ""
+            line = next(lines, None)
+            if line is None:
+                break
             record = decode(line)
             kind = record["kind"]
             proof.read(record)
-        number, kind = number + 1, ""
         if proof.stage != len(Proof.ORDER) - 1:
             raise Malformed("no-end", "the log has no end")
     except Fault as fault:
-        fault.line, fault.record = max(number, 1), kind if kind.isidentifier() else ""
+        fault.line, fault.record = number, kind if re.fullmatch("[a-z]{1,20}", kind) else ""
         raise
     except Declined as reason:
-        raise Declined(f"line {max(number, 1)}: {reason}") from None
+        raise Declined(f"line {number}: {reason}") from None
     return proof
 
 
@@ -1855,6 +1893,10 @@ def run(path: str, as_json: bool) -> int:
         return 2
     except OSError as error:
         sys.stderr.write(f"sieve: error: {path}: {error.strerror}, expected a readable proof log\n")
+        return 2
+    except (ArithmeticError, LookupError, MemoryError, TypeError, ValueError) as error:
+        # never an acceptance: something that this program should have refused by name
+        sys.stderr.write(f"sieve: error: {path}: {type(error).__name__}, expected a valid log\n")
         return 2
     result = report(proof)
     if as_json:

@@ -57,7 +57,9 @@ def _no_local_points(directory: Path) -> Path:
     path = directory / "case.toml"
     path.write_text(
         'format = "sieve-case/1"\nname = "nowhere modulo 3"\n[curve]\nequation = "y^2 = 2*x^6 + x^2 + 2"\n'
-        '[jacobian]\nrank = 0\nrank_source = "claimed for this test"\nbase = "half a fibre"\n', encoding="utf-8")
+        '[jacobian]\nrank = 0\nrank_source = "claimed for this test"\nbase = "half a fibre"\n',
+        encoding="utf-8",
+    )
     return run_to(directory, path, [], bound=4)[1]
 
 
@@ -75,7 +77,8 @@ def _forms(directory: Path) -> Path:
         {"id": "c3", "coefficients": ["1 + 3^2 + O(3^4)", "0 + O(3^4)"]},
     ]
     discs: list[dict[str, object]] = [
-        {"id": "d1", "disc": "(0 : 1 : 1)", "at_most": 1}, {"id": "d2", "disc": "(1 : 1 : 0)"},
+        {"id": "d1", "disc": "(0 : 1 : 1)", "at_most": 1},
+        {"id": "d2", "disc": "(1 : 1 : 0)"},
     ]
     affine = [(x, y) for x, y, z in curve.modulo(5).points if z]
     discs += [{"id": f"d{i}", "disc": f"({x} : {y} : 1)"} for i, (x, y) in enumerate(affine, 3)]
@@ -92,7 +95,8 @@ def _two_lists(directory: Path) -> Path:
     case = reference_case("X0p67")
     curve = HyperellipticCurve(case.f, case.h)
     points: list[dict[str, object]] = [
-        {"id": f"r{i}", "point": text} for i, text in enumerate(random_points(curve, 7, 4, 6, 5), 1)]
+        {"id": f"r{i}", "point": text} for i, text in enumerate(random_points(curve, 7, 4, 6, 5), 1)
+    ]
     discs: list[dict[str, object]] = [
         {"id": f"d{i}", "disc": f"({x} : {y} : {z})"} for i, (x, y, z) in enumerate(curve.modulo(5).points)
     ]
@@ -116,7 +120,9 @@ def _index(directory: Path) -> Path:
         'equation = "y^2 = x^6 + 8*x^5 + 22*x^4 + 22*x^3 + 5*x^2 + 6*x + 1"\n[jacobian]\nrank = 1\n'
         'rank_source = "the reference data"\nbase = "(1 : 1 : 0)"\nindex_prime_to = [3]\n'
         'index_source = "stated for this test"\n[[jacobian.generators]]\n'
-        'divisor = [[1, "(1 : 1 : 0)"], [-1, "(1 : -1 : 0)"]]\n', encoding="utf-8")
+        'divisor = [[1, "(1 : 1 : 0)"], [-1, "(1 : -1 : 0)"]]\n',
+        encoding="utf-8",
+    )
     case = reference_case("quadratic_period_5")
     return run_to(directory, path, [write_candidates(case, directory, 7, 3, 3)], bound=200)[1]
 
@@ -164,7 +170,9 @@ def _mumford(directory: Path) -> Path:
                 f'format = "sieve-case/1"\nname = "closed point"\nknown_points = ["(1 : 1 : 0)"]\n[curve]\n'
                 f'equation = "{case.equation}"\n[jacobian]\nrank = 1\nrank_source = "the reference data"\n'
                 f'base = "(1 : 1 : 0)"\n[[jacobian.generators]]\ndivisor = [[1, {{ mumford = ["{shown[0]}", '
-                f'"{shown[1]}"] }}], [-1, {{ fibres = 1 }}]]\n', encoding="utf-8")
+                f'"{shown[1]}"] }}], [-1, {{ fibres = 1 }}]]\n',
+                encoding="utf-8",
+            )
             try:
                 run, log = run_to(directory, path, [write_candidates(case, directory, 5, 4, 6)], bound=200)
             except SieveError:
