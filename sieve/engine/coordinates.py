@@ -141,12 +141,13 @@ def generator_relations(
 
 
 def _combination(row: Sequence[int], rank: int) -> str:
-    """An integer combination of D1 .. Dr, T1 .. in the usual notation."""
-    text = ""
+    """A combination of D1 .. Dr, T1 .. in the usual notation, up to sign: the first coefficient is positive."""
+    text, leading = "", next((a for a in row if a), 1)
     for i, a in enumerate(row):
+        a = a if leading > 0 else -a
         if a:
             name = f"D{i + 1}" if i < rank else f"T{i + 1 - rank}"
-            sign = ("-" if a < 0 else "") if not text else (" - " if a < 0 else " + ")
+            sign = "" if not text else " - " if a < 0 else " + "
             text += sign + ("" if abs(a) == 1 else f"{abs(a)}*") + name
     return text
 
