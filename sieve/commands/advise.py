@@ -8,7 +8,7 @@ from dataclasses import dataclass, field
 from math import log
 
 from sieve.commands.common import Progress, StoredInvestigation, problem_of
-from sieve.commands.pursue import make_hunts, quick_orders
+from sieve.commands.pursue import make_hunts
 from sieve.commands.run import chabauty_place, locate
 from sieve.engine.advice import Advice, Offer, advise
 from sieve.engine.fates import visible_view
@@ -96,7 +96,7 @@ def execute(case_path: str, candidate_paths: Sequence[str], *, bound: int | None
         start = (f"{outcome.relation.count} classes of {outcome.relation.index}, primes below {FIRST_BOUND} "
                  "used")
     out = Advised(resolved.case.name, start)
-    offers = _offers(investigation, stored, hunts, limit, executor)
+    offers = _offers(stored, hunts, limit)
     known = [c.vector for c in investigation.coordinates.values() if c.denominator == 1]
     out.advice = advise(states, offers, top, known)
     if chabauty_bound is not None:
@@ -104,13 +104,13 @@ def execute(case_path: str, candidate_paths: Sequence[str], *, bound: int | None
     return out
 
 
-def _offers(investigation: Investigation, stored: StoredInvestigation, hunts: Sequence[Hunt], limit: int,
-            executor: Executor | None) -> list[Offer]:
+def _offers(stored: StoredInvestigation, hunts: Sequence[Hunt], limit: int) -> list[Offer]:
+    investigation = stored.investigation
     genus = investigation.problem.curve.genus
     wanted = [v for v in primes_below(min(limit, ALL_BELOW)) if v >= FIRST_BOUND]
     if limit > ALL_BELOW and genus == 2 and hunts:
         beyond = [v for v in primes_below(limit) if v >= ALL_BELOW]
-        orders = quick_orders(investigation, beyond, executor)
+        orders = stored.quick_orders(beyond)
         promising = ranked(hunts, {v: (q.points, q.orders) for v, q in orders.items()})
         wanted += sorted(p.prime for p in promising[:200])
     stored.gather(wanted)
@@ -118,7 +118,7 @@ def _offers(investigation: Investigation, stored: StoredInvestigation, hunts: Se
     out = []
     for v in wanted:
         record = investigation.records[v]
-        if record.usable:
+        if investigation.serves(record):
             relation = relation_from_condition(record.condition(investigation.images(record)), ells)
             out.append(Offer(v, relation, record.invariants, local_seconds(genus, v)))
     return out

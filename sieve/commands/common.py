@@ -9,6 +9,7 @@ from collections.abc import Callable, Iterator, Sequence
 from concurrent.futures import Executor, ProcessPoolExecutor
 from contextlib import contextmanager
 from dataclasses import dataclass, field
+from functools import partial
 
 from sieve.engine.investigation import Investigation
 from sieve.engine.problem import Problem
@@ -16,6 +17,7 @@ from sieve.errors import InputError
 from sieve.exact.primes import is_prime
 from sieve.files.resolve import ResolvedCase
 from sieve.files.store import Store, problem_key
+from sieve.local.quick_order import QuickOrder, quick_order
 from sieve.local.records import LocalRecord
 
 
@@ -120,6 +122,19 @@ class StoredInvestigation:
             part = missing[low : low + self.block]
             inner.gather(part, self._saver(key))
         return True
+
+    def quick_orders(self, primes: Sequence[int]) -> dict[int, QuickOrder]:
+        """The possible orders of J(F_v) for those of the primes where they are known, through the store."""
+        curve, executor = self.investigation.problem.curve, self.investigation.executor
+        known = {} if self.store is None else self.store.load_orders(curve.key, primes)
+        missing = [v for v in primes if v not in known]
+        work = partial(quick_order, curve.f, curve.h)
+        found = map(work, missing) if executor is None or len(missing) < 50 else executor.map(
+            work, missing, chunksize=16)
+        new = dict(zip(missing, found, strict=True))
+        if self.store is not None:
+            self.store.save_orders(curve.key, new)
+        return {v: order for v in primes if (order := known.get(v) or new.get(v)) is not None}
 
     def _saver(self, key: str) -> Callable[[LocalRecord], None] | None:
         store = self.store

@@ -4,17 +4,15 @@ from __future__ import annotations
 
 import time
 from collections.abc import Callable, Collection, Sequence
-from concurrent.futures import Executor
 from dataclasses import dataclass, field, replace
-from functools import partial
 
+from sieve.commands.common import StoredInvestigation
 from sieve.engine.explain import explain
 from sieve.engine.investigation import Investigation
 from sieve.engine.prime_hunt import Hunt, Prospect, ranked
 from sieve.engine.relation import relation_from_condition
 from sieve.engine.verdicts import CandidateList, Decision, candidate_relations, from_fate
 from sieve.exact.primes import primes_below
-from sieve.local.quick_order import QuickOrder, quick_order
 from sieve.local.records import local_record
 
 REACH = 4000
@@ -39,16 +37,6 @@ class Pursuit:
     stopped: bool = False
 
 
-def quick_orders(investigation: Investigation, primes: Sequence[int],
-                 executor: Executor | None) -> dict[int, QuickOrder]:
-    """The possible orders of J(F_v) for those of the primes where they are known, by prime."""
-    curve = investigation.problem.curve
-    work = partial(quick_order, curve.f, curve.h)
-    found = map(work, primes) if executor is None or len(primes) < 50 else executor.map(
-        work, primes, chunksize=16)
-    return {v: order for v, order in zip(primes, found, strict=True) if order is not None}
-
-
 def make_hunts(investigation: Investigation, lists: Sequence[CandidateList], decisions: dict[Key, Decision],
                ells: Sequence[int], bound: int | None,
                primes: Collection[int] | None = None) -> list[tuple[int, Hunt]]:
@@ -68,16 +56,16 @@ def make_hunts(investigation: Investigation, lists: Sequence[CandidateList], dec
     return out
 
 
-def pursue(investigation: Investigation, lists: Sequence[CandidateList], decisions: dict[Key, Decision],
-           ells: Sequence[int], start: int, bound: int, gather: Callable[[list[int]], bool],
-           primes: Collection[int] | None = None, executor: Executor | None = None,
+def pursue(lists: Sequence[CandidateList], decisions: dict[Key, Decision], ells: Sequence[int], start: int,
+           bound: int, stored: StoredInvestigation, primes: Collection[int] | None = None,
            deadline: float | None = None, say: Callable[[str], None] = lambda text: None) -> Pursuit:
     """Look for primes from `start` below `bound` that decide open candidates (genus 2).
 
-    Arguments: the decisions so far by (number of the list, id), not changed; `gather` adds local data and
-    returns False when it had to stop; `primes`, those that the decisions rest on (None: all below `start`).
+    Arguments: the decisions so far by (number of the list, id), not changed; `stored`, through which local
+    data come; `primes`, those that the decisions rest on (None: all below `start`).
     Every candidate that stays open gets an explanation.
     """
+    investigation = stored.investigation
     hunts = make_hunts(investigation, lists, decisions, ells, start, primes)
     result = Pursuit(dict(decisions), bound=start)
     _settle(result, lists, hunts)
@@ -85,18 +73,18 @@ def pursue(investigation: Investigation, lists: Sequence[CandidateList], decisio
     while low < bound and any(hunt.open for _, hunt in hunts) and not result.stopped:
         high = min(high, bound)
         fresh = [v for v in primes_below(high) if v >= low and v not in investigation.records]
-        orders = quick_orders(investigation, fresh, executor)
+        orders = stored.quick_orders(fresh)
         best = ranked([hunt for _, hunt in hunts], {v: (q.points, q.orders) for v, q in orders.items()})
         say(f"{len(best)} of {len(fresh)} primes from {low} to {high} may help {_open_count(hunts)} "
             "open candidates")
-        _use(result, investigation, hunts, best, ells, gather, deadline)
+        _use(result, investigation, hunts, best, ells, stored.gather, deadline)
         if not result.stopped:
             for _, hunt in hunts:
                 hunt.combine()
             result.bound = high
         low, high = high, 2 * high
         _settle(result, lists, hunts)
-    _explain(result, investigation, lists, hunts, ells, executor)
+    _explain(result, stored, lists, hunts, ells)
     return result
 
 
@@ -118,7 +106,7 @@ def _use(result: Pursuit, investigation: Investigation, hunts: Sequence[tuple[in
         for prospect in block:
             result.looked_at.append(prospect)
             record = investigation.records[prospect.prime]
-            if record.usable:
+            if investigation.serves(record):
                 relation = relation_from_condition(record.condition(investigation.images(record)), ells)
                 for _, hunt in hunts:
                     hunt.add(relation)
@@ -132,22 +120,22 @@ def _settle(result: Pursuit, lists: Sequence[CandidateList], hunts: Sequence[tup
             result.decisions[number, label] = from_fate(lists[number].place.prime, fate)
 
 
-def next_prime(investigation: Investigation, hunts: Sequence[Hunt], ells: Sequence[int], start: int,
-               executor: Executor | None, width: int = 4000, checks: int = 12) -> int | None:
+def next_prime(stored: StoredInvestigation, hunts: Sequence[Hunt], ells: Sequence[int], start: int,
+               width: int = 4000, checks: int = 12) -> int | None:
     """The first prime in start .. start + width that is expected to remove much of the classes left.
 
     Picked by its order, then confirmed by its group; at most `checks` groups are computed (None after that).
     """
-    problem = investigation.problem
+    investigation, problem = stored.investigation, stored.investigation.problem
     primes = [v for v in primes_below(start + width) if v >= start]
     for low in range(0, len(primes), 64):
-        orders = quick_orders(investigation, primes[low : low + 64], executor)
+        orders = stored.quick_orders(primes[low : low + 64])
         for v, order in orders.items():
             found = ranked(hunts, {v: (order.points, order.orders)})
             if not found or found[0].gain < 0.3:
                 continue
             record = local_record(problem.curve, problem.base, investigation.asked, v)
-            if record.usable:
+            if investigation.serves(record):
                 relation = relation_from_condition(record.condition(investigation.images(record)), ells)
                 if any(hunt.expected_gain(relation) > 0.3 for hunt in hunts):
                     return v
@@ -157,11 +145,12 @@ def next_prime(investigation: Investigation, hunts: Sequence[Hunt], ells: Sequen
     return None
 
 
-def _explain(result: Pursuit, investigation: Investigation, lists: Sequence[CandidateList],
-             hunts: Sequence[tuple[int, Hunt]], ells: Sequence[int], executor: Executor | None) -> None:
+def _explain(result: Pursuit, stored: StoredInvestigation, lists: Sequence[CandidateList],
+             hunts: Sequence[tuple[int, Hunt]], ells: Sequence[int]) -> None:
+    investigation = stored.investigation
     curve = investigation.problem.curve
     waiting = [hunt for _, hunt in hunts if hunt.open]
-    following = next_prime(investigation, waiting, ells, result.bound, executor) if waiting else None
+    following = next_prime(stored, waiting, ells, result.bound) if waiting else None
     for number, listing in enumerate(lists):
         p = listing.place.prime
         why_not = "" if p in ells else investigation.saturation_at(p).reason
@@ -176,4 +165,4 @@ def _explain(result: Pursuit, investigation: Investigation, lists: Sequence[Cand
             result.decisions[number, candidate.id] = replace(decision, reason=reason, hint=found.hint)
 
 
-__all__ = ["LONG_REACH", "REACH", "Pursuit", "make_hunts", "next_prime", "pursue", "quick_orders"]
+__all__ = ["LONG_REACH", "REACH", "Pursuit", "make_hunts", "next_prime", "pursue"]

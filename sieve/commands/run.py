@@ -232,8 +232,7 @@ def execute(
         reach = run.bound
         if primes is None and not run.stopped and resolved.curve.genus == 2:
             reach = max(reach, bound or (REACH if seconds is None else LONG_REACH))
-        pursuit = pursue(investigation, lists, decisions, run.ells, run.bound, reach, stored.gather, wanted,
-                         executor, deadline, say)
+        pursuit = pursue(lists, decisions, run.ells, run.bound, reach, stored, wanted, deadline, say)
         run.decisions = in_order(lists, pursuit.decisions)
         if pursuit.stopped:
             run.stopped = f"the time limit of {seconds:g} s stopped the run"

@@ -91,9 +91,10 @@ class Investigation:
     @property
     def usable(self) -> list[LocalRecord]:
         """The records that give conditions, by prime."""
-        return [self.records[v] for v in sorted(self.records) if self._serves(self.records[v])]
+        return [self.records[v] for v in sorted(self.records) if self.serves(self.records[v])]
 
-    def _serves(self, record: LocalRecord) -> bool:
+    def serves(self, record: LocalRecord) -> bool:
+        """Whether the record gives a condition here."""
         return record.usable and (record.expressible or not self.expressible)
 
     @property
@@ -104,7 +105,7 @@ class Investigation:
             record = self.records[v]
             if not record.usable:
                 out.append(record)
-            elif not self._serves(record):
+            elif not self.serves(record):
                 out.append(replace(record, skipped="no sections with rational zeros present the group"))
         return out
 
