@@ -141,7 +141,7 @@ def generator_relations(
 
 
 def _combination(row: Sequence[int], rank: int) -> str:
-    """A combination of D1 .. Dr, T1 .. in the usual notation, up to sign: the first coefficient is positive."""
+    """A combination of D1 .. Dr, T1 .. in the usual notation, its sign such that it starts without one."""
     text, leading = "", next((a for a in row if a), 1)
     for i, a in enumerate(row):
         a = a if leading > 0 else -a

@@ -42,26 +42,25 @@ def unit(n: int) -> list[list[int]]:
 
 @pytest.mark.parametrize("seed", range(20))
 def test_vanishing_lattice_against_enumeration(seed: int) -> None:
+    """All basis vectors vanish, and the index is the number of elements of the image of Z^3."""
     rng = random.Random(seed)
-    maps = [(m, [rng.randrange(m) for _ in range(2)]) for m in (rng.randint(2, 9) for _ in range(3))]
-    basis, _ = vanishing_lattice(2, maps)
-    index = abs(basis[0][0] * basis[1][1] - basis[0][1] * basis[1][0])
-    box = 2 * 9**3
-    inside = [
-        (x, y) for x in range(60) for y in range(60) if all((a * x + b * y) % m == 0 for m, (a, b) in maps)
-    ]
-    assert all((a * x + b * y) % m == 0 for m, (a, b) in maps for x, y in basis)
-    # the image of Z^2 has as many elements as the index says
-    images = {tuple((a * x + b * y) % m for m, (a, b) in maps) for x in range(box) for y in range(9)}
-    if all(m < 9 for m, _ in maps):
-        assert len(images) <= index and len(inside) >= 3600 // max(1, index) // 4
-    full = {
-        tuple((a * x + b * y) % m for m, (a, b) in maps)
-        for x in range(504)
-        for y in range(504)
-        if x < 80 or y < 8
-    }
-    assert len(full) <= index
+    maps = [(m, [rng.randrange(m) for _ in range(3)]) for m in (rng.randint(2, 9) for _ in range(3))]
+    basis, _ = vanishing_lattice(3, maps)
+
+    def image(vector: Sequence[int]) -> tuple[int, ...]:
+        return tuple(sum(a * c for a, c in zip(vector, row, strict=True)) % m for m, row in maps)
+
+    assert all(not any(image(row)) for row in basis)
+    steps = [image(row) for row in unit(3)]
+    seen, todo = {image([0, 0, 0])}, [image([0, 0, 0])]
+    while todo:
+        here = todo.pop()
+        for step in steps:
+            there = tuple((a + b) % m for a, b, (m, _) in zip(here, step, maps, strict=True))
+            if there not in seen:
+                seen.add(there)
+                todo.append(there)
+    assert abs(int(fmpz_mat(basis).det())) == len(seen)
 
 
 @pytest.mark.parametrize("seed", range(30))
