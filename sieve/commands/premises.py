@@ -21,7 +21,7 @@ def hypothesis_premises(investigation: Investigation, ells: list[int]) -> list[P
     if investigation.torsion_proved():
         out.append(
             Premise(
-                "torsion", "proved", f"J(Q) has {order} torsion points", "", _torsion_primes(investigation)
+                "torsion", "proved", f"the torsion of J(Q) has order {order}", "", _torsion_primes(investigation)
             )
         )
     for ell in ells:
