@@ -20,9 +20,14 @@ from sieve.files.candidates import FORMAT, MAX_PRECISION
 from sieve.files.resolve import ResolvedCase, read_case
 from sieve.local.chabauty import LocatedCandidate
 from sieve.local.linear_chabauty import ChabautyZeros, chabauty_zeros
+from sieve.local.records import divisor_log
+from sieve.proof.statement import mumford_places
+from sieve.proof.witness_padic import Inexpressible, PadicEvidence
 
 TRIED = 6
-"""Without --prime so many good odd primes are tried, the smallest ones."""
+"""Without --prime so many good odd primes that suit the sieve are tried, the smallest ones .."""
+MOST_TRIED = 20
+""".. but at most so many altogether."""
 SEARCH_HEIGHT = 200
 DEFAULT_SIZE = 10**12
 """Without --precision p^N is the first power above this."""
@@ -31,12 +36,16 @@ MAX_PRIME = 10**4
 
 @dataclass(frozen=True)
 class Trial:
-    """One prime: its zeros and which rational points each candidate agrees with, or why it was not used."""
+    """One prime: its zeros and which rational points each candidate agrees with, or why it was not used.
+
+    `unsuited`: why the sieve could do nothing with candidates at this prime (or empty).
+    """
 
     prime: int
     zeros: ChabautyZeros | None
     points: dict[str, tuple[Point, ...]]
     reason: str = ""
+    unsuited: str = ""
 
     @property
     def spurious(self) -> int:
@@ -80,12 +89,26 @@ def check_prime(curve: HyperellipticCurve, prime: int) -> None:
 def generators_in_use(
     resolved: ResolvedCase, executor: Executor | None, progress: Progress | None
 ) -> list[Divisor]:
-    """The free generators: those of the case, or of the group that the known points generate."""
+    """The generators, free ones first: those of the case, or of the group that the known points generate."""
     if resolved.case.generators_from is None:
-        return list(resolved.generators)
+        return [*resolved.generators, *[divisor for _, divisor in resolved.torsion]]
     investigation = Investigation(problem_of(resolved), executor, progress)
     investigation.establish(StoredInvestigation(investigation, None).gather)
-    return investigation.generators[: resolved.case.rank]
+    return investigation.generators
+
+
+def why_unsuited(zeros: ChabautyZeros, curve: HyperellipticCurve, divisors: Sequence[Divisor]) -> str:
+    """Why base and generators do not reduce at the prime so that the sieve and its proof log can use them."""
+    group = zeros.integrals.group
+    try:
+        for divisor in divisors:
+            divisor_log(group, divisor)
+        PadicEvidence(curve, group, mumford_places(divisors))
+    except (BadReduction, Uncertified) as error:
+        return error.reason
+    except Inexpressible as error:
+        return f"the proof log cannot express {error}"
+    return ""
 
 
 def execute(
@@ -115,7 +138,7 @@ def execute(
         primes = [prime]
     else:
         good = (p for p in primes_below(1000) if p > 2 and curve.is_smooth(p))
-        primes = [p for p in good if valuation(curve.y_scale, p) == 0][:TRIED]
+        primes = [p for p in good if valuation(curve.y_scale, p) == 0][:MOST_TRIED]
     known = set(resolved.known_points)
     found = tuple(p for p in search_points(curve, SEARCH_HEIGHT) if p not in known)
     generators = generators_in_use(resolved, executor, progress)
@@ -125,12 +148,14 @@ def execute(
             progress.say(f"zeros at p = {p}")
         digits = precision or default_precision(p)
         trials.append(_trial(resolved, generators, found, p, digits, prime is None))
+        if sum(t.zeros is not None and not t.unsuited for t in trials) == TRIED:
+            break
     usable = [t for t in trials if t.zeros is not None]
     if not usable:
         reasons = "; ".join(t.reason for t in trials) or "no good prime"
         what = f"no prime can be used ({reasons})"
         raise InputError("--prime", "", what, "more digits, or a prime by hand")
-    chosen = min(usable, key=lambda t: (t.spurious, t.prime))
+    chosen = min(usable, key=lambda t: (bool(t.unsuited), t.spurious, t.prime))
     assert chosen.zeros is not None
     return CandidateSearch(resolved, chosen, chosen.zeros, tuple(trials), found)
 
@@ -140,8 +165,9 @@ def _trial(
     several: bool,
 ) -> Trial:
     """One prime; with `several` a prime that cannot be used is no error."""
+    free = generators[: resolved.case.rank]
     try:
-        zeros = chabauty_zeros(resolved.curve, resolved.base, generators, p, digits)
+        zeros = chabauty_zeros(resolved.curve, resolved.base, free, p, digits)
     except PrecisionLost as error:
         if several:
             return Trial(p, None, {}, error.line)
@@ -164,7 +190,8 @@ def _trial(
                 "(wrong generators, rank or base)", shown,
             )
         points.setdefault(near[0].id, []).append(point)
-    return Trial(p, zeros, {name: tuple(sorted(here)) for name, here in points.items()})
+    unsuited = why_unsuited(zeros, resolved.curve, [resolved.base, *generators])
+    return Trial(p, zeros, {name: tuple(sorted(here)) for name, here in points.items()}, unsuited=unsuited)
 
 
 def _agrees(zeros: ChabautyZeros, candidate: LocatedCandidate, point: Point) -> bool:
@@ -234,7 +261,7 @@ def document(search: CandidateSearch) -> dict[str, Any]:
     out["tried"] = [
         {"prime": t.prime, "candidates": None, "spurious": None, "reason": t.reason}
         if t.zeros is None
-        else {"prime": t.prime, "candidates": t.zeros.count, "spurious": t.spurious, "reason": ""}
+        else {"prime": t.prime, "candidates": t.zeros.count, "spurious": t.spurious, "reason": t.unsuited}
         for t in search.trials
     ]
     out["not_in_case"] = [curve.format_point(p) for p in search.found_points]
@@ -251,6 +278,7 @@ def text(search: CandidateSearch) -> str:
         lines.append("Primes tried:")
         for t in search.trials:
             shown = t.reason if t.zeros is None else f"{t.zeros.count} zeros, {t.spurious} spurious"
+            shown += f" (unsuited: {t.unsuited})" if t.unsuited else ""
             lines.append(f"{t.prime:>6}  {shown}" + ("  (chosen)" if t is search.chosen else ""))
         lines.append("")
     lines.append(f"p = {p}, {zeros.digits} digits, {count} annihilating differential{'s' * (count != 1)}:")

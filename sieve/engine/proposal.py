@@ -9,12 +9,15 @@ from __future__ import annotations
 from collections.abc import Sequence
 from concurrent.futures import Executor
 from dataclasses import dataclass
+from itertools import combinations
+
+from flint import fmpz_mat
 
 from sieve.curves.base_search import base_from, closed_points, difference_from
 from sieve.curves.divisors import Divisor, FibrePlace, Place, Point, RationalPlace
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.curves.search import search_points
-from sieve.engine.coordinates import basis_of_classes
+from sieve.engine.coordinates import PointBasis, basis_of_classes
 from sieve.engine.hypotheses import saturation
 from sieve.exact.primes import primes_below
 from sieve.local.records import local_records
@@ -49,8 +52,9 @@ class Proposal:
 def propose(
     curve: HyperellipticCurve, rank: int | None, largest: int = 4, executor: Executor | None = None
 ) -> Proposal:
-    """Search with growing bounds until `rank` independent divisors that generate a group saturated at small
-    primes are found, or up to `largest`.
+    """Search until `rank` independent divisors that generate a group saturated at small primes are found.
+
+    With rational points a small search comes first; the last one has the bound `largest`.
 
     Arguments: `rank`, the number of generators wanted (None: whatever `largest` gives).  A proposal with
     fewer generators proves nothing.
@@ -60,24 +64,26 @@ def propose(
     ((), 2, 1, ())
     """
     points = tuple(search_points(curve, SEARCH_HEIGHT))
-    half = Divisor.of([(1, FibrePlace(1))])
-    found = Proposal(points, half, (), (), 0, SMALL_ELLS)
-    for size in range(1, largest + 1):
+    base = Divisor.of([(1, FibrePlace(1))])
+    size = 1 if points else largest
+    closed = closed_points(curve, size)
+    odd = [p for p in closed if p.degree % 2]
+    if points:
+        base = Divisor.of([(1, RationalPlace(points[0]))])
+    elif odd:
+        base = base_from(odd[0])
+    while True:
+        for used in (USED, 2 * USED):
+            places: list[Place] = [RationalPlace(p) for p in points[1:used]]
+            places += [p for p in closed if p.degree > 1][: used - len(places)]
+            found = _basis(curve, points, base, places, rank, size, executor)
+            reached = rank is not None and len(found.generators) >= rank
+            if (reached and not found.unsaturated) or len(places) < used:
+                break
+        if (reached and not found.unsaturated) or size == largest:
+            return found
+        size = largest
         closed = closed_points(curve, size)
-        odd = [p for p in closed if p.degree % 2]
-        if points:
-            base = Divisor.of([(1, RationalPlace(points[0]))])
-        elif odd:
-            base = base_from(odd[0])
-        else:
-            base = half
-        places: list[Place] = [RationalPlace(p) for p in points[1:USED]]
-        places += [p for p in closed if p.degree > 1][: USED - len(places)]
-        found = _basis(curve, points, base, places, rank, size, executor)
-        reached = rank is not None and len(found.generators) >= rank
-        if reached and not found.unsaturated and (points or odd):
-            break
-    return found
 
 
 def _basis(
@@ -124,8 +130,21 @@ def _basis(
                 total = total + a * divisor
         return total
 
+    free = _single(basis)
+    generators = [divisors[j] for j in free] or [combined(row) for row in basis.free]
     return Proposal(
-        points, base, tuple(combined(row) for row in basis.free),
+        points, base, tuple(generators),
         tuple((d, combined(row)) for d, row in zip(basis.orders, basis.torsion, strict=True)), size,
         unsaturated,
     )
+
+
+def _single(basis: PointBasis) -> list[int]:
+    """The first divisors that are themselves free generators, up to torsion (none when there are no such)."""
+    rank = len(basis.free)
+    for chosen in combinations(range(len(basis.coordinates)), rank):
+        matrix = fmpz_mat([list(basis.coordinates[j][0]) for j in chosen]) if rank else fmpz_mat(0, 0)
+        if abs(int(matrix.det())) == 1:
+            return list(chosen)
+    return []
+
