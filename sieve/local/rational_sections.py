@@ -10,6 +10,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from math import factorial
 
 import flint
 import numpy as np
@@ -86,6 +87,8 @@ def section_through(
     v, g = curve.prime, curve.genus
     if any(a.denominator % v == 0 for a in place.u + place.w):
         return None
+    if factorial(max(g, place.degree - 2)) > tries:
+        return None  # so many remaining zeros are hardly ever all rational
     u, w = (_poly([a.numerator * pow(a.denominator, -1, v) for a in part], v) for part in (place.u, place.w))
     f, h = _poly(curve.f, v), _poly(curve.h, v)
     rng = np.random.default_rng([v, *(int(a) for a in u.coeffs()), 5, *(int(a) for a in w.coeffs())])

@@ -93,6 +93,7 @@ def _layout(source: ProofInput) -> tuple[list[Record], set[int]]:
     if classes is not None:
         found, relation = classes
         vectors = [[int(c) for c in s.vector] for s in source.vectors[:VECTOR_LIMIT]]
+        vectors = [row for row in vectors if len(row) == source.size]
         empty = relation.count == 0
         records.append(
             {

@@ -154,7 +154,7 @@ def _multiple(view: LogView) -> str:
 def _primes(view: LogView) -> list[Block]:
     blocks: list[Block] = [Heading("Auxiliary primes")]
     ells = view.allowed_ells()
-    rows = []
+    rows: list[tuple[str, ...]] = []
     for local in view.of("local"):
         condition = view.condition(local)
         relation = relation_from_condition(condition, ells)
@@ -200,7 +200,7 @@ def _primes(view: LogView) -> list[Block]:
         blocks.append(Paragraph("No auxiliary prime is needed."))
     if view.of("saturated"):
         torsion = {r["ell"]: r for r in view.of("torsion")}
-        proved = []
+        proved: list[tuple[str, ...]] = []
         for r in view.of("saturated"):
             t = torsion[r["ell"]]
             by = "factors of $4f + h^{2}$" if t["by"] == "branch" else f"$v = {t['by']}$"
@@ -216,8 +216,8 @@ def _primes(view: LogView) -> list[Block]:
                 "$G/\\ell G = J(\\mathbb{Q})/\\ell J(\\mathbb{Q})$."
             )
         )
-        header = ("$\\ell$", "dimension of $J(\\mathbb{Q})[\\ell]$ at most", "$v$")
-        blocks.append(Table("Saturation", header, tuple(proved), "rlp", (0, 0, 0.4)))
+        columns = ("$\\ell$", "dimension of $J(\\mathbb{Q})[\\ell]$ at most", "$v$")
+        blocks.append(Table("Saturation", columns, tuple(proved), "rlp", (0, 0, 0.4)))
     return blocks
 
 

@@ -193,7 +193,7 @@ def as_tex(view: LogView) -> str:
 
     out = [
         "\\documentclass{article}", "\\usepackage{amssymb}", "\\pagestyle{empty}", "\\begin{document}",
-        "\\noindent\\hspace*{-24mm}\\setlength{\\unitlength}{1mm}%",
+        "\\noindent\\setlength{\\unitlength}{1mm}\\makebox[\\linewidth]{%",
         f"\\begin{{picture}}({scale * WIDTH:.0f},{scale * HEIGHT:.0f})\\scriptsize",
     ]  # fmt: skip
     labels = []
@@ -216,7 +216,7 @@ def as_tex(view: LogView) -> str:
         line = f"${middle}$" if graph.nodes[name]["kind"] == "prime" else middle
         box = f"\\shortstack{{${title}$\\\\{line}\\\\{last}}}"
         out.append(f"\\put{at(spot.x, spot.y)}{{\\makebox(0,0){{\\fbox{{{box}}}}}}}")
-    return "\n".join([*out, "\\end{picture}", "\\end{document}"]) + "\n"
+    return "\n".join([*out, "\\end{picture}}", "\\end{document}"]) + "\n"
 
 
 def as_graphml(view: LogView) -> str:
