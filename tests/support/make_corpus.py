@@ -7,11 +7,15 @@ never taken from the checker.
 
 from __future__ import annotations
 
+import itertools
 import json
 from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
+
+from sieve.exact.abelian import quotient_by
+from sieve.proof.checker import Proof, decode
 
 CORPUS = Path(__file__).resolve().parents[2] / "data" / "proofs"
 FOLDERS = ("malformed", "rejected", "declined")
@@ -382,6 +386,19 @@ def _traps() -> list[Trap]:
     malformed("unknown_key", "keys", lambda log: _key(log, "trust"))
     malformed("missing_key", "keys", lambda log: _without_key(log, "local", "close"))
     malformed("keys_in_another_order", "keys", lambda log: _reorder(log, "end"))
+    malformed("integer_as_true", "type", put("padic", "reduction", value=1))
+    malformed(
+        "fraction_as_a_decimal",
+        "type",
+        put("group", "free", 0, 1, 1, "mumford", 0, 0, value="0.5"),
+        "closed_point",
+    )
+    malformed(
+        "fraction_as_an_integer",
+        "type",
+        put("group", "free", 0, 1, 1, "mumford", 0, 0, value=1),
+        "closed_point",
+    )
     malformed("true_as_an_integer", "type", put("group", "rank", value=False))
     malformed("integer_as_text", "type", put("header", "genus", value="2"))
     malformed("text_as_integer", "type", put("premise", "source", value=7))
@@ -566,6 +583,12 @@ def _traps() -> list[Trap]:
         put("local", "mumford", 0, 1, 0, value=lambda c: (c + 1) % 5),
         "closed_point",
     )
+    rejected("logarithm_of_a_ramified_point", "relation-log", whole(_ramified), "odd_degree_at_three")
+    rejected("zero_at_the_other_infinity", "zero", _other_infinity, "demo")
+    rejected("zero_at_infinity_too_often", "zeros-infinity", _at_infinity, "demo")
+    rejected("place_with_a_denominator", "place-denominator", put("local", "prime", value=3), "closed_point")
+    rejected("too_few_points", "generation", whole(_few_points), "empty_modulo_three")
+    rejected("places_twice", "place-order", put("padic", "mumford", value=lambda m: m * 2), "closed_point")
     rejected("place_numbers", "place-order", put("local", "mumford", 0, 0, value=1), "closed_point")
     rejected(
         "points_where_there_are_none", "empty-record", put("local", "counts", value=2), "empty_modulo_three"
@@ -588,11 +611,23 @@ def _traps() -> list[Trap]:
     rejected("saturation_prime_twice", "duplicate", put("saturated", "primes", value=[5, 5]), "demo")
     rejected("torsion_generator_of_another_order", "torsion-order", _another_order, "odd_degree_at_three")
     rejected("factor_changed", "factor", put("branch", "factors", 0, 0, value=add(1)), "genus_three")
+    rejected(
+        "trivial_factors", "factor", put("branch", "factors", value=lambda f: [[1]] * 40 + f), "genus_three"
+    )
+    rejected("factors_of_even_degree_in_odd_genus", "branch", whole(_even_degrees))
     rejected("factor_missing", "factor", put("branch", "factors", value=without(0)), "genus_three")
     rejected("factors_multiplied", "irreducible", whole(_reducible), "genus_three")
     rejected("no_primes_for_the_factors", "irreducible", put("branch", "primes", value=[]), "genus_three")
     rejected("branch_twice", "duplicate", twice("branch"), "genus_three")
     # integrals
+    rejected("place_of_large_degree_for_its_section", "place-section", whole(_large_place), "closed_point")
+    rejected("place_section_with_irrational_zeros", "section-zeros", whole(_irrational), "closed_point")
+    rejected("coefficients_not_determined", "not-determined", whole(_not_determined), "sole_by_coefficients")
+    rejected("multiple_of_the_group_by_the_bound", "bound", whole(_multiple_by_bound), "demo")
+    rejected("multiple_of_the_group_by_counts", "order", whole(_multiple), "demo")
+    malformed("case_with_another_key", "keys", put("header", "case", value=lambda c: c | {"trust": "x"}))
+    declined("many_generators", whole(_many_generators))
+    declined("many_vectors", _vectors([[0]] * 1001))
     rejected("padic_twice", "duplicate", twice("padic"), "demo")
     rejected(
         "section_with_irrational_zeros",
@@ -683,6 +718,7 @@ def _traps() -> list[Trap]:
     rejected("records_miscounted", "records", put("end", "records", value=add(1)), "demo")
     rejected("record_left_out", "records", _unused_left_out, "demo")
     rejected("rational_point_left_out", "conclusion", put("end", "points", value=without(0)), "demo")
+    rejected("end_point_twice", "points", put("end", "points", value=lambda p: p + p[:1]), "demo")
     rejected("points_without_a_complete_list", "conclusion", drop("premise", 1, blame="end"), "demo")
     rejected("points_of_a_list_with_an_open_candidate", "conclusion", _conclude_from_open, "forms")
     rejected("points_and_no_conclusion", "conclusion", put("end", "conclusion", value="none"), "demo")
@@ -704,6 +740,9 @@ def _traps() -> list[Trap]:
     declined("precision_meant_to_hang", put("padic", "digits", value=10**9), "demo")
     declined("terms_meant_to_hang", put("padic", "terms", value=10**9), "demo")
     declined("digits_of_a_candidate_meant_to_hang", put("candidate", "digits", value=10**9))
+    declined("series_meant_to_hang", whole(_long_series), "demo")
+    declined("place_of_great_height", whole(_great_height), "closed_point")
+    declined("many_base_points", put("local", "base", value=lambda b: b * 300), "demo")
     declined("section_of_large_degree", whole(_long_list), "demo")
     declined("field_too_large", put("local", "counts", value=3, prime=103), "genus_three")
     declined("ell_beyond_the_limit", put("saturated", "ell", value=2**64 + 13), "demo")
@@ -866,6 +905,153 @@ def _empty_with_points(log: Log) -> int:
     log.records = [r for r in log.records if r["kind"] in ("header", "group", "premise", "end")]
     log.records[-1].update(records=4, eliminated=[], conclusion="empty", points=[[1, 1, 0]])
     return len(log.records) - 1
+
+
+def _at_infinity(log: Log) -> int:
+    """A zero at infinity is listed once more instead of a simple affine one."""
+    for i, record in enumerate(log.records):
+        if record["kind"] != "local":
+            continue
+        last = max(z for entry in record["define"] + record["close"] for z in entry[1])
+        for entry in record["close"]:
+            infinite = [z for z in entry[1] if z >= last - 1]
+            affine = [z for z in entry[1] if z < last - 1]
+            if infinite and affine:
+                entry[1] = sorted([*affine[1:], *infinite, infinite[0]])
+                return i
+    raise AssertionError("no section with zeros at infinity")
+
+
+def _other_infinity(log: Log) -> int:
+    """The other point at infinity is listed as a zero."""
+    for i, record in enumerate(log.records):
+        for entry in record["close"] if record["kind"] == "local" else []:
+            last = max(z for e in record["define"] + record["close"] for z in e[1])
+            if last in entry[1] and last - 1 not in entry[1]:
+                entry[1] = [last - 1 if z == last else z for z in entry[1]]
+                return i
+    raise AssertionError("no section with a zero at infinity")
+
+
+def _ramified(log: Log) -> int:
+    """2 P ~ U does not hold for the logarithm of a ramified base point, and no other relation says so."""
+    i = log.find("local")
+    record = log.records[i]
+    k = next(k for k, (_, value) in enumerate(record["base"]) if value == [1, 0])
+    record["base"][k][1] = [0, 1]
+    record["close"] = []
+    return i
+
+
+def _even_degrees(log: Log) -> int:
+    """Genus 3 and an irreducible polynomial of degree 8 (x^n - x - 1 is irreducible, Selmer 1956)."""
+    f = [-1, -1, 0, 0, 0, 0, 0, 0, 1]
+    log.records = log.records[:3]
+    log.records[0].update(f=f, genus=3)
+    log.records[1].update(base=[[1, {"point": [1, 1, 0]}]], torsion=[])
+    log.records.append({"kind": "branch", "factors": [[4 * c for c in f]], "primes": EVEN_PRIMES})
+    return 3
+
+
+def _few_points(log: Log) -> int:
+    """A curve with few points modulo 3, too few to generate J(F_3)."""
+    i = log.find("local")
+    log.records[0]["f"] = FEW
+    log.records[i].update(invariants=[2], origin=0, unit=[1])
+    return i
+
+
+def _long_series(log: Log) -> int:
+    """Terms and digits within their limits, but not both together."""
+    i = log.find("padic")
+    log.records[i].update(digits=1000, terms=5000)
+    return i
+
+
+def _great_height(log: Log) -> int:
+    """u of degree 60 over denominators of 3000 digits."""
+    i = log.find("group")
+    u = [f"1/{10**3000 + 2 * k + 1}" for k in range(60)] + ["1"]
+    log.records[i]["free"][0][1][1] = {"mumford": [u, []]}
+    return i
+
+
+def _large_place(log: Log) -> int:
+    """All six zeros of y - 2 as one place of degree 6, and the section y - 2 of degree 3 through it."""
+    f = log.records[0]["f"]
+    u = [str(c - 4 * (i == 0)) for i, c in enumerate(f)]
+    log.records[log.find("group")]["free"] = [[[1, {"mumford": [u, ["2"]]}], [-3, {"fibres": 1}]]]
+    for record in log.records:
+        if record["kind"] == "local":
+            record["mumford"] = [[0, [2], []]]
+    i = log.find("padic")
+    log.records[i]["mumford"] = [[0, [-2], [1]]]
+    return i
+
+
+def _irrational(log: Log) -> int:
+    """The section through the place times x^2 + 2, which has no zero modulo 5."""
+    i = log.find("padic")
+    k, *section = log.records[i]["mumford"][0]
+    widened = []
+    for c in section:
+        product = [0] * (len(c) + 2)
+        for j, a in enumerate(c):
+            product[j] += 2 * a
+            product[j + 2] += a
+        widened.append(product)
+    log.records[i]["mumford"] = [[k, *widened]]
+    return i
+
+
+def _not_determined(log: Log) -> int:
+    """More digits than the groups see."""
+    record = log.records[log.find("candidate", id="c4")]
+    record["coefficients"] = [[0, 9], [0, 9]]
+    return log.find("fate", id="c4")
+
+
+def _multiple(log: Log) -> int:
+    """Some of the relations at 7 only, and the group that they define: J(F_7) is a proper quotient of it."""
+    i = log.find("local", prime=7)
+    record = log.records[i]
+    proof = Proof()
+    for line in log.data().splitlines()[: i + 1]:
+        proof.read(decode(line))
+    local = proof.locals[7]
+    rows = [tuple(local.relation(c, zeros)) for c, zeros in record["close"]]
+    ramified = [k for k in range(local.points) if local.reduction.conjugate(k) == k]
+    fixed = [tuple(2 * a - (j == 0) for j, a in enumerate(local.vector(k))) for k in ramified]
+    for chosen in itertools.combinations(range(len(rows)), local.width - len(fixed)):
+        group = quotient_by(local.width, [*fixed, *(rows[k] for k in chosen)])
+        if group is None or group.order <= 91 or len(group.invariants) > 4:
+            continue
+        coordinates = [[int(a) for a in row] for row in group.coordinates]
+        record["invariants"] = list(group.invariants)
+        record["unit"] = coordinates[0]
+        record["base"] = [[k, row] for (k, _), row in zip(record["base"], coordinates[1:], strict=True)]
+        record["close"] = [record["close"][k] for k in chosen]
+        record["counts"] = 2
+        return i
+    raise AssertionError("no multiple of the group")
+
+
+def _multiple_by_bound(log: Log) -> int:
+    i = _multiple(log)
+    log.records[i]["counts"] = 0
+    return i
+
+
+def _many_generators(log: Log) -> int:
+    i = log.find("group")
+    log.records[i].update(rank=61, free=[[]] * 61)
+    return i
+
+
+EVEN_PRIMES = [2, 3]
+
+FEW = [0, 1, 0, 0, 0, 2, 2]
+"""f with one point modulo 3."""
 
 
 def _digits(log: Log, count: int) -> int:

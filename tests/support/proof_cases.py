@@ -90,6 +90,54 @@ def _forms(directory: Path) -> Path:
     return run_to(directory, write_case(case, directory), files, bound=200)[1]
 
 
+def _sole_by_coefficients(directory: Path) -> Path:
+    """A candidate by coefficients that the groups tell to be the base point, alone by a stated bound."""
+    records = [json.loads(line) for line in _forms(directory).read_text(encoding="utf-8").splitlines()]
+    base = next(r for r in records if r["kind"] == "group")["base"][0][1]["point"]
+    first = next(i for i, r in enumerate(records) if r["kind"] == "candidate")
+    records.insert(
+        first,
+        {
+            "kind": "premise",
+            "id": "bound 3 c4",
+            "statement": "at most one",
+            "source": "stated for this test",
+            "prime": 3,
+            "candidate": "c4",
+            "at_most": 1,
+        },
+    )
+    after = max(i for i, r in enumerate(records) if r["kind"] == "candidate")
+    records.insert(
+        after + 1,
+        {
+            "kind": "candidate",
+            "prime": 3,
+            "id": "c4",
+            "form": "coefficients",
+            "coefficients": [[0, 2], [0, 1]],
+            "torsion": None,
+            "disc": None,
+        },
+    )
+    records.insert(
+        -1,
+        {
+            "kind": "fate",
+            "prime": 3,
+            "id": "c4",
+            "verdict": "rational",
+            "points": [base],
+            "given": True,
+            "sole": True,
+        },
+    )
+    records[-1]["records"] = len(records) - 1
+    log = directory / "proof.jsonl"
+    log.write_text("".join(json.dumps(r, separators=(",", ":")) + "\n" for r in records), encoding="utf-8")
+    return log
+
+
 def _two_lists(directory: Path) -> Path:
     """A complete list of discs at 5 serves as a condition for candidates at 7."""
     case = reference_case("X0p67")
@@ -193,6 +241,7 @@ CASES: dict[str, Case] = {
     "empty_by_classes": _empty,
     "empty_modulo_three": _no_local_points,
     "forms": _forms,
+    "sole_by_coefficients": _sole_by_coefficients,
     "two_lists": _two_lists,
     "stated_index": _index,
     "closed_point": _mumford,
