@@ -59,7 +59,7 @@ def _case(view: LogView) -> list[Block]:
             "$p$-adic points "
             "are in those of the model."
         )
-    leading = [*curve.f, *[0] * 3][2 * curve.genus + 2] or [*curve.h, *[0] * 3][curve.genus + 1]
+    leading = len(curve.f) > 2 * curve.genus + 2 or len(curve.h) > curve.genus + 1
     if leading:
         text += (
             f" Points are written $(x, y)$, or $(1 : s : 0)$ at infinity, in coordinates $(X : Y : Z)$ of "

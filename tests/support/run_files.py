@@ -186,4 +186,4 @@ def run_to(
     return run, directory / "proof.jsonl"
 
 
-__all__ = ["EMPTY", "Fraction", "RUNNABLE", "chabauty_prime", "run_to", "write_case", "write_candidates"]
+__all__ = ["EMPTY", "RUNNABLE", "Fraction", "chabauty_prime", "run_to", "write_candidates", "write_case"]
