@@ -1,12 +1,15 @@
 """Ratios, taken in one run on one core: this engine next to the usual ways.
 
-    python scripts/bench.py [--quick] [local] [joins]
+    python scripts/bench.py [--quick] [local] [joins] [store] [cores] [advice]
 
 local   J(F_v) with the logarithms of all points of X(F_v), next to PARI's point count alone
         (`hyperellcharpoly`) and to the textbook way (order by PARI, Cantor arithmetic, Pohlig-Hellman for
         each point).
 joins   the sieve by joins next to lift-and-filter (Bruin and Stoll 2010) on the same conditions, up to the
-        modulus that the joins reach.
+        modulus that the joins reach, along the best path for it.
+store   local data computed next to local data read back.
+cores   local data with one and with two processes.
+advice  what the primes advised first remove, next to the best ones of all.
 
 Times are the minimum of several runs.  Every table carries a count that shows that the work was done.  Needs
 the test packages (`pip install -e '.[test]'`).
@@ -17,25 +20,36 @@ from __future__ import annotations
 import os
 import sys
 import time
+import tracemalloc
 from collections.abc import Callable, Sequence
+from concurrent.futures import Executor, ProcessPoolExecutor
+from functools import cache, partial
+from heapq import heappop, heappush
 from math import exp, lcm, log, prod
 from pathlib import Path
+from tempfile import TemporaryDirectory
 from typing import TypeVar
 
 os.environ.update(OMP_NUM_THREADS="1", OPENBLAS_NUM_THREADS="1")
 sys.path.insert(0, str(Path(__file__).resolve().parent.parent))
 
-import numpy as np
 from cypari import pari
 from flint import fmpz
 
+from sieve.curves.divisors import Divisor
 from sieve.curves.hyperelliptic import HyperellipticCurve
-from sieve.engine.lift_filter import lift_and_filter
+from sieve.engine.advice import Offer, advise
+from sieve.engine.investigation import FIRST_BOUND, Investigation
+from sieve.engine.join import semijoin
+from sieve.engine.lift_filter import Lifted, lift_and_filter
 from sieve.engine.plan import run_plan, sieve_classes
+from sieve.engine.problem import Problem
 from sieve.engine.relation import Relation, coarsen, relation_from_condition
 from sieve.errors import LimitReached
-from sieve.local.condition import Condition
+from sieve.exact.primes import primes_below
+from sieve.files.store import Store
 from sieve.local.picard import PicardGroup, picard_group
+from sieve.local.records import LocalRecord, local_records
 from tests.support.cantor import CantorJacobian
 from tests.support.pohlig_hellman import GroupOracle
 from tests.support.reference_cases import ReferenceCase, reference_case, reference_cases
@@ -108,29 +122,40 @@ def text(c: Sequence[int]) -> str:
 # ---- joins -----------------------------------------------------------------------------------------------
 
 
-def conditions(case: ReferenceCase, bound: int) -> list[Condition]:
-    """The conditions at good v < bound for the generators and base point stored with the case."""
-    curve = HyperellipticCurve(case.f, case.h)
-    stored = case.raw["sieve"]
-    base = case.from_stored(*stored["base"])
-    out = []
-    for v in case.good_primes(bound, 3):
-        group = picard_group(curve.modulo(v))
-        logs, d = group.point_logs, group.invariants
+def survivors_by_modulus(relations: Sequence[Relation], modulus: int, cap: int,
+                         seconds: float = 20.0) -> list[int] | None:
+    """The order of lifts whose largest set is least, found by best-first search with the real sizes.
 
-        def at(point: Sequence[int], v: int = v, group: PicardGroup = group) -> list[int]:
-            return [int(c) for c in group.point_logs[group.curve.index_of(*(int(c) % v for c in point))]]
+    The vectors that survive modulo M do not depend on the path to M: a path is as bad as its worst lift.
+    None when no path stays below the cap, or after some seconds (then `expected_path` has to do).
+    """
+    n = relations[0].n
+    factors = {int(ell): int(e) for ell, e in fmpz(modulus).factor()}
+    heap: list[tuple[int, float, tuple[int, ...]]] = [(1, 0.0, ())]
+    sizes: dict[int, int] = {1: 1}
+    done: set[int] = set()
+    began = time.perf_counter()
+    while heap:
+        peak, _, path = heappop(heap)
+        m = prod(path)
+        if m in done:
+            continue
+        done.add(m)
+        if m == modulus:
+            return list(path)
+        if time.perf_counter() - began > seconds:
+            return None
+        if m not in sizes:
+            sizes[m] = len(lift_and_filter(relations, path, cap).vectors)
+        for ell, e in factors.items():
+            if e and modulus % (m * ell) == 0:
+                lifted = sizes[m] * ell**n
+                if lifted <= cap:
+                    heappush(heap, (max(peak, lifted), -log(m * ell), (*path, ell)))
+    return None
 
-        images = []
-        for divisor in stored["gens"]:
-            rows = [(m, at(case.from_stored(*place))) for m, place in divisor]
-            images.append(tuple(sum(m * row[j] for m, row in rows) % d[j] for j in range(len(d))))
-        allowed = (logs - np.array(at(base), dtype=np.int64)) % np.array(d, dtype=np.int64)
-        out.append(Condition(f"v = {v}", v, d, tuple(images), allowed))
-    return out
 
-
-def greedy_path(relations: Sequence[Relation], modulus: int) -> list[int]:
+def expected_path(relations: Sequence[Relation], modulus: int) -> list[int]:
     """The order of lifts with the smallest expected size at each step."""
     n = relations[0].n
     left = [int(ell) for ell, e in fmpz(modulus).factor() for _ in range(int(e))]
@@ -148,39 +173,181 @@ def greedy_path(relations: Sequence[Relation], modulus: int) -> list[int]:
     return path
 
 
+def peak_memory(work: Callable[[], object]) -> float:
+    """The most memory that one run holds, in MB (not timed: tracing slows it down)."""
+    tracemalloc.start()
+    try:
+        work()
+    except LimitReached:
+        pass
+    found = tracemalloc.get_traced_memory()[1] / 1e6
+    tracemalloc.stop()
+    return found
+
+
 def bench_joins(quick: bool) -> None:
-    """The same conditions both ways: sizes and times."""
-    smooth = [2, 3, 5, 7, 11, 13]
+    """The same conditions both ways: largest sets, memory, times; estimates next to sizes found."""
+    smooth, cap = [2, 3, 5, 7, 11, 13], 2 * 10**7
     print("\njoins next to lift-and-filter on the same conditions (v < 420, 13-smooth parts, rank 2)")
-    cases = [c for c in reference_cases() if c.rank == 2 and "sieve" in c.raw]
-    for case in cases[: 1 if quick else None]:
-        relations = [relation_from_condition(c, smooth) for c in conditions(case, 420)]
+    cases = [c for c in reference_cases() if c.genus == 2 and c.rank == 2][: 2 if quick else 9]
+    factors: list[float] = []
+    ratios: list[tuple[float, float, float]] = []
+    for case in cases:
+        relations = relations_of(case, 420, smooth)
         seconds, outcome = best(lambda r=relations: sieve_classes(r), 1 if quick else 3)  # type: ignore[misc]
         final = outcome.relation
-        modulus = lcm(1, *final.moduli)
-        path = greedy_path(relations, modulus)
         again, _ = best(lambda r=relations, p=outcome.plan: run_plan(p, r), 3)  # type: ignore[misc]
-        joins = sum(step.kind == "join" for step in outcome.plan.steps)
-        print(f"{case.id}: {joins} joins, {final.count} classes of {final.index:.3e}, largest set "
-              f"{outcome.largest}, {seconds * 1e3:.1f} ms to plan and join, {again * 1e3:.1f} ms to join")
-        where = f"  lift-and-filter modulo {modulus}, steps {path}"
+        memory = peak_memory(lambda r=relations: sieve_classes(r))  # type: ignore[misc]
+        steps = [s for s in outcome.plan.steps if s.kind == "join" and s.actual is not None]
+        here = [max(s.predicted, 1) / max(s.actual or 0, 1) for s in steps]
+        factors += [max(x, 1 / x) for x in here]
+        print(f"{case.id}: {len(steps)} joins, {final.count} classes of {final.index:.3e}, largest set "
+              f"{outcome.largest}, {memory:.1f} MB, {seconds * 1e3:.0f} ms to plan and join, "
+              f"{again * 1e3:.1f} ms to join")
+        modulus = lcm(1, *final.moduli)
+        began = time.perf_counter()
+        searched = survivors_by_modulus(relations, modulus, cap)
+        search = time.perf_counter() - began
+        path = searched or expected_path(relations, modulus)
+        how = f"best path (found in {search:.1f} s)" if searched else "path by expected sizes"
+        where = f"  lift-and-filter modulo {modulus}, {how} {path}"
+
+        def lift(r: Sequence[Relation] = relations, p: Sequence[int] = path) -> Lifted:
+            return lift_and_filter(r, p, cap)
+
+        memory_there = peak_memory(lift)
         try:
-            slow, lifted = best(lambda r=relations, p=path: lift_and_filter(r, p, 3 * 10**7), 1)  # type: ignore[misc]
+            slow, lifted = best(lift, 1)
         except LimitReached as limit:
-            print(f"{where}: stopped at {limit.partial} classes, "
+            print(f"{where}: stopped at {limit.partial} classes, {memory_there:.0f} MB, "
                   f"{int(str(limit.partial)) / outcome.largest:.0f} times the largest set", flush=True)
+            ratios.append((int(str(limit.partial)) / outcome.largest, memory_there / memory, 0.0))
             continue
-        print(f"{where}: {len(lifted.vectors)} classes, largest set {lifted.largest}, {slow * 1e3:.0f} ms: "
-              f"{lifted.largest / outcome.largest:.0f} times the set, {slow / seconds:.1f} times the time",
-              flush=True)
+        ratios.append((lifted.largest / outcome.largest, memory_there / memory, slow / again))
+        print(f"{where}: {len(lifted.vectors)} classes, largest set {lifted.largest}, "
+              f"{memory_there:.0f} MB, {slow * 1e3:.0f} ms: {ratios[-1][0]:.0f} times the set, "
+              f"{ratios[-1][1]:.1f} times the memory, {ratios[-1][2]:.1f} times the time to join", flush=True)
+    factors.sort()
+    timed = [r[2] for r in ratios if r[2]]
+    print(f"largest set: lift-and-filter / joins {mean([r[0] for r in ratios]):.0f} (least "
+          f"{min(r[0] for r in ratios):.1f}); memory {mean([r[1] for r in ratios]):.1f}; "
+          f"time {mean(timed) if timed else float('nan'):.1f} (where it ended)")
+    if factors:
+        middle = factors[len(factors) // 2]
+        print(f"estimate against size of {len(factors)} joins: median factor {middle:.2f}, worst "
+              f"{factors[-1]:.1f}")
+
+
+# ---- store, cores, hunts, advice -------------------------------------------------------------------------
+
+
+def problem_of(case: ReferenceCase) -> Problem:
+    """The problem whose generators come from the known points."""
+    curve = HyperellipticCurve(case.f, case.h)
+    base = Divisor.of([(1, curve.place_of_point(case.known_points[0]))])
+    return Problem(case.id, curve, base, (), (), case.known_points, case.rank or 0, "literature",
+                   from_known_points=True)
+
+
+@cache
+def investigated(name: str, bound: int) -> Investigation:
+    """The investigation of a reference case with all primes below the bound."""
+    found = Investigation(problem_of(reference_case(name)))
+    found.gather(primes_below(bound))
+    found.establish()
+    return found
+
+
+def relations_of(case: ReferenceCase, bound: int, ells: Sequence[int]) -> list[Relation]:
+    """The relations at v < bound in the group that the known points generate."""
+    found = investigated(case.id, bound)
+    return found.relations([ell for ell in found.allowed_ells() if ell in ells], bound)
+
+
+def all_records(name: str, bound: int, executor: Executor | None = None) -> list[LocalRecord]:
+    """The local data of a reference case below the bound, computed."""
+    problem = problem_of(reference_case(name))
+    asked = Investigation(problem).asked
+    return list(local_records(problem.curve, problem.base, asked, primes_below(bound), executor))
+
+
+def bench_store(quick: bool) -> None:
+    """Local data below 1000: computed, and read from a warm store."""
+    print("\nstore: local data at v < 1000, computed and read back; seconds")
+    ratios = []
+    for name in ["X0p67", "lmfdb13689", "integral_g2"][: 1 if quick else None]:
+        cold, records = best(partial(all_records, name, 1000), 2)
+        with TemporaryDirectory() as directory:
+            path = Path(directory) / "store"
+            with Store(path) as store:
+                for record in records:
+                    store.save("key", record)
+
+            def read(path: Path = path) -> int:
+                with Store(path) as store:
+                    return len(store.load("key", primes_below(1000)))
+
+            warm, count = best(read, 5)
+        ratios.append(cold / warm)
+        print(f"{name:24}{count:5} records {cold:8.3f} {warm:8.4f} {ratios[-1]:7.0f} times")
+    print(f"computed / read: {mean(ratios):.0f} (least {min(ratios):.0f})")
+
+
+def bench_cores(quick: bool) -> None:
+    """Local data below 1000 with one and with two processes."""
+    print("\ncores: local data at v < 1000 for one and two processes (started before); seconds")
+    ratios = []
+    for name in ["X0p67", "lmfdb13689", "integral_g2"][: 1 if quick else None]:
+        with ProcessPoolExecutor(2) as pool:
+            list(pool.map(abs, range(4)))
+            two, records = best(partial(all_records, name, 1000, pool), 3)
+        one, again = best(partial(all_records, name, 1000), 3)
+        if [(r.prime, r.order) for r in records] != [(r.prime, r.order) for r in again]:
+            raise SystemExit(f"{name}: one and two processes differ")
+        ratios.append(one / two)
+        print(f"{name:24}{len(records):5} primes {one:8.3f} {two:8.3f} {ratios[-1]:7.2f} times")
+    print(f"one / two: {mean(ratios):.2f} (least {min(ratios):.2f})")
+
+
+def bench_advice(quick: bool) -> None:
+    """The first five primes advised next to the five that remove most when tried alone, 150 <= v < 1000."""
+    print("\nadvice: classes removed by the first five advised, by the best five of all tried alone")
+    shares, factors = [], []
+    cases = [c for c in reference_cases() if c.genus == 2 and c.rank and c.known_points]
+    for case in cases[: 2 if quick else 14]:
+        found = investigated(case.id, 1000)
+        ells = found.allowed_ells()
+        state = sieve_classes(found.relations(ells, FIRST_BOUND)).relation
+        offers = [
+            Offer(r.prime, relation_from_condition(r.condition(found.images(r)), ells), r.invariants, 0.01)
+            for r in found.usable if r.prime >= FIRST_BOUND
+        ]
+        known = [c.vector for c in found.coordinates.values() if c.denominator == 1]
+        advice = advise([state], offers, 5, known)
+        alone = sorted(offers, key=lambda o: (semijoin(state, o.relation).count, o.prime))[:5]
+        after = state
+        for offer in alone:
+            after = semijoin(after, offer.relation)
+        removed, most = state.count - (advice[-1].left if advice else state.count), state.count - after.count
+        if not most:
+            continue
+        shares.append(removed / most)
+        here = [a.estimated / max(a.left, 1) for a in advice]
+        factors += [max(x, 1 / x) for x in here if x]
+        print(f"{case.id:24} {state.count:6} classes: {removed:6} removed, best five alone {most:6}, "
+              f"share {shares[-1]:.2f}; advised {[a.prime for a in advice]}", flush=True)
+    factors.sort()
+    print(f"share: least {min(shares):.2f} on {len(shares)} curves; estimate from sizes against classes "
+          f"left: median factor {factors[len(factors) // 2]:.2f}")
 
 
 def main() -> None:
     words = sys.argv[1:]
     quick = "--quick" in words
-    wanted = [w for w in words if w != "--quick"] or ["local", "joins"]
-    for word in wanted:
-        {"local": bench_local, "joins": bench_joins}[word](quick)
+    sections = {"local": bench_local, "joins": bench_joins, "store": bench_store, "cores": bench_cores,
+                "advice": bench_advice}
+    for word in [w for w in words if w != "--quick"] or list(sections):
+        sections[word](quick)
 
 
 if __name__ == "__main__":

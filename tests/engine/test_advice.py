@@ -54,7 +54,6 @@ def test_promises_are_kept_and_the_first_is_best(seed):
 
 
 def test_decided_candidates_are_named_and_idle_primes_left_out():
-    rng = random.Random(5)
     z = relation_from_condition(make("p = 3", [9], [[1], [0]], [[0], [3], [4]], [["a"], ["b"], ["c"]]))
     idle = relation_from_condition(make("v = 5", [5], [[1], [0]], [[0]]))
     kills = relation_from_condition(make("v = 7", [9], [[1], [0]], [[0], [4]]))
