@@ -194,3 +194,48 @@ def test_a_torsion_class_as_generator_never_gets_enough_digits() -> None:
     base = Divisor.of([(1, RationalPlace((1, 1, 0)))])
     with pytest.raises(PrecisionLost, match="generator"):
         chabauty_zeros(curve, base, [Divisor.of([(1, RationalPlace((0, 1, 1)))]) - base], 5, 4)
+
+
+# ---- genus 3: several differentials ---------------------------------------------------------------------
+
+# The rank of the group that points of small height generate (found here; the rank of J is not proved).
+GENUS_THREE = {
+    (0, -3, 3, 3, -2, -1, -2, 1, 1): 1,
+    (1, -1, 3, 0, -3, 1, 2, 1): 2,
+    (1, 0, 2, 3, 2, -3, -3, 1): 2,
+}
+
+
+@pytest.mark.parametrize("p", [5, 7, 11])
+@pytest.mark.parametrize("f", sorted(GENUS_THREE))
+def test_genus_three(f: tuple[int, ...], p: int) -> None:
+    """g - r differentials; every point whose class is in the span of the generators is a common zero."""
+    curve = HyperellipticCurve(f)
+    if not curve.is_smooth(p):
+        pytest.skip("bad reduction")
+    found = proposal(curve, GENUS_THREE[f])
+    assert len(found.generators) == GENUS_THREE[f]
+    few = chabauty_zeros(curve, found.base, found.generators, p, 6)
+    many = chabauty_zeros(curve, found.base, found.generators, p, 12)
+    assert len(few.annihilators) == 3 - GENUS_THREE[f]
+    assert [[(b.value, b.multiplicity) for b in d.balls] for d in few.discs] == [
+        sorted((b.value % p**6, b.multiplicity) for b in d.balls) for d in many.discs
+    ]
+    for point in found.points:
+        assert len(near(many, point)) == 1
+    if p > 6:
+        # Coleman 1985, for each differential alone
+        assert sum(d.count for d in few.discs) <= len(few.discs) + 4
+
+
+def test_more_generators_leave_more_zeros() -> None:
+    """The zeros for a larger group contain those for a smaller one: the span of one generator of two."""
+    curve = HyperellipticCurve((1, -1, 3, 0, -3, 1, 2, 1))
+    found = proposal(curve, 2)
+    one = chabauty_zeros(curve, found.base, found.generators[:1], 7, 8)
+    two = chabauty_zeros(curve, found.base, found.generators, 7, 8)
+    assert (len(one.annihilators), len(two.annihilators)) == (2, 1)
+    for small, large in zip(one.discs, two.discs, strict=True):
+        values = {b.value for b in large.balls}
+        assert all(b.value in values for b in small.balls)
+    assert one.count < two.count
