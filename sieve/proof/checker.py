@@ -904,9 +904,9 @@ class Disc:
     def integral(self, monic: Row) -> Ball:
         """The integrals from the centre, summed over the roots of a polynomial t^m + .. = t^m modulo p.
 
-        The terms are a_{k-1} s_k / k, s_k the sum of the k-th powers of the roots, v(s_k) >= k / m.  Those with
-        k <= K = m N are known modulo p^(N - e), p^e <= K < p^(e+1).  The others vanish there: if p^(e+j) <= k,
-        j >= 1, then k / m > p^(j-1) N >= N + j - 1, so v(s_k / k) >= N + j - (e + j).
+        The terms are a_{k-1} s_k / k, s_k the sum of the k-th powers of the roots, v(s_k) >= k / m.  Those
+        with k <= K = m N are known modulo p^(N - e), p^e <= K < p^(e+1).  The others vanish there: if
+        p^(e+j) <= k < p^(e+j+1), j >= 1, then k / m > p^(j-1) N >= N + j - 1, so v(s_k / k) >= N - e.
         """
         padic, p, q, m = self.padic, self.padic.prime, self.padic.modulus, len(monic) - 1
         g = padic.proof.curve.genus

@@ -28,7 +28,9 @@ def refused(path: Path) -> tuple[int, str]:
         resource.setrlimit(resource.RLIMIT_AS, (MEMORY, MEMORY))
 
     done = subprocess.run(
-        [sys.executable, "-I", "-S", "-O", str(SOURCE), str(path)], capture_output=True, timeout=SECONDS,
+        [sys.executable, "-I", "-S", "-O", str(SOURCE), str(path)],
+        capture_output=True,
+        timeout=SECONDS,
         preexec_fn=limit,
     )
     text = (done.stdout or done.stderr).decode()
@@ -86,8 +88,10 @@ def _backslashes(file: BinaryIO) -> None:
 def _many_records(file: BinaryIO) -> None:
     file.write(START)
     for i in range(210_000):
-        file.write(b'{"kind":"premise","id":"bound 5 c%d","statement":"a","source":"b","prime":5,'
-                   b'"candidate":"c%d","at_most":2}\n' % (i, i))
+        file.write(
+            b'{"kind":"premise","id":"bound 5 c%d","statement":"a","source":"b","prime":5,'
+            b'"candidate":"c%d","at_most":2}\n' % (i, i)
+        )
 
 
 def _many_factors(file: BinaryIO) -> None:
@@ -105,15 +109,35 @@ def _wide_factor(file: BinaryIO) -> None:
 
 def _wide_section(file: BinaryIO) -> None:
     file.write(START)
-    record = {"kind": "local", "prime": 5, "invariants": [19], "origin": 0, "unit": [0], "base": [],
-              "define": [[[1] * 1_000_000, []]], "close": [], "mumford": [], "counts": 0}
+    record = {
+        "kind": "local",
+        "prime": 5,
+        "invariants": [19],
+        "origin": 0,
+        "unit": [0],
+        "base": [],
+        "define": [[[1] * 1_000_000, []]],
+        "close": [],
+        "mumford": [],
+        "counts": 0,
+    }
     file.write(json.dumps(record, separators=(",", ":")).encode() + b"\n")
 
 
 def _wide_vector(file: BinaryIO) -> None:
     file.write(START)
-    record = {"kind": "local", "prime": 1009, "invariants": [2] * 1_000_000, "origin": 0, "unit": [0] * 1_000_000,
-              "base": [], "define": [], "close": [], "mumford": [], "counts": 0}
+    record = {
+        "kind": "local",
+        "prime": 1009,
+        "invariants": [2] * 1_000_000,
+        "origin": 0,
+        "unit": [0] * 1_000_000,
+        "base": [],
+        "define": [],
+        "close": [],
+        "mumford": [],
+        "counts": 0,
+    }
     file.write(json.dumps(record, separators=(",", ":")).encode() + b"\n")
 
 
@@ -130,8 +154,13 @@ def _large_coefficients(file: BinaryIO) -> None:
 
 def _large_multiplicities(file: BinaryIO) -> None:
     file.write(HEADER)
-    record = {"kind": "group", "rank": 0, "base": [[int("9" * 3999), {"fibres": int("9" * 3999)}]], "free": [],
-              "torsion": []}
+    record = {
+        "kind": "group",
+        "rank": 0,
+        "base": [[int("9" * 3999), {"fibres": int("9" * 3999)}]],
+        "free": [],
+        "torsion": [],
+    }
     file.write(json.dumps(record, separators=(",", ":")).encode() + b"\n")
 
 
@@ -149,10 +178,28 @@ def _terminal(file: BinaryIO) -> None:
 
 
 HOSTILE: tuple[Callable[[BinaryIO], None], ...] = (
-    _gigabyte_line, _deep, _deep_and_closed, _deep_in_a_text, _broad, _many_keys, _million_digits,
-    _million_digits_after_a_sign, _power_of_ten, _quotation_marks, _backslashes, _many_records, _many_factors,
-    _wide_factor, _wide_section, _wide_vector, _large_coordinates, _large_coefficients, _large_multiplicities,
-    _large_prime, _surrogates, _terminal,
+    _gigabyte_line,
+    _deep,
+    _deep_and_closed,
+    _deep_in_a_text,
+    _broad,
+    _many_keys,
+    _million_digits,
+    _million_digits_after_a_sign,
+    _power_of_ten,
+    _quotation_marks,
+    _backslashes,
+    _many_records,
+    _many_factors,
+    _wide_factor,
+    _wide_section,
+    _wide_vector,
+    _large_coordinates,
+    _large_coefficients,
+    _large_multiplicities,
+    _large_prime,
+    _surrogates,
+    _terminal,
 )
 
 
@@ -169,5 +216,7 @@ def test_hostile_logs_are_refused(make: Callable[[BinaryIO], None], tmp_path: Pa
 
 @pytest.mark.parametrize("kind", ["malformed", "declined"])
 def test_bad_texts_and_limits_are_refused_cheaply(kind: str) -> None:
-    for path in sorted((CORPUS / kind).glob("*meant_to_hang*.jsonl")) + sorted((CORPUS / kind).glob("*nest*.jsonl")):
+    for path in sorted((CORPUS / kind).glob("*meant_to_hang*.jsonl")) + sorted(
+        (CORPUS / kind).glob("*nest*.jsonl")
+    ):
         assert refused(path)[0] in (2, 3)

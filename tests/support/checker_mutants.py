@@ -61,7 +61,7 @@ def expected() -> list[tuple[bytes, tuple[int, int, str], str]]:
     return rows
 
 
-def _refusals(tree: ast.AST) -> Iterator[tuple[ast.stmt, str]]:
+def refusals(tree: ast.AST) -> Iterator[tuple[ast.stmt, str]]:
     """Every `raise` and every call of `need`, with the reason code if it is spelt there."""
     for node in ast.walk(tree):
         call: ast.expr | None = None
@@ -84,10 +84,10 @@ def mutants() -> Iterator[tuple[str, str, CodeType]]:
     """(description, reason code of the refusal that is touched or "", compiled module)."""
     text = SOURCE.read_text(encoding="utf-8")
     lines = text.splitlines()
-    count = len(list(_refusals(ast.parse(text))))
+    count = len(list(refusals(ast.parse(text))))
     for i in range(count):
         tree = ast.parse(text)
-        node, code = list(_refusals(tree))[i]
+        node, code = list(refusals(tree))[i]
         name = f"line {node.lineno}: without: {lines[node.lineno - 1].strip()}"
         for parent in ast.walk(tree):
             for field in ("body", "orelse", "finalbody"):
@@ -99,7 +99,7 @@ def mutants() -> Iterator[tuple[str, str, CodeType]]:
     for i in range(comparisons):
         tree = ast.parse(text)
         compare = [node for node in ast.walk(tree) if isinstance(node, ast.Compare)][i]
-        inside = [c for n, c in _refusals(tree) if any(inner is compare for inner in ast.walk(n))]
+        inside = [c for n, c in refusals(tree) if any(inner is compare for inner in ast.walk(n))]
         for k, op in enumerate(compare.ops):
             old = ast.unparse(compare)
             compare.ops[k] = NEGATED[type(op)]()

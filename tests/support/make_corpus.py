@@ -414,6 +414,9 @@ def _traps() -> list[Trap]:
     malformed("order_one", "range", put("group", "torsion", 0, 0, value=1))
     malformed("negative_exponent", "range", put("fate", "uses", 0, 1, "3", value=-1, id="r1"), "forms")
     malformed("exponent_zero", "range", put("fate", "uses", 0, 1, "3", value=0, id="r1"), "forms")
+    malformed(
+        "place_of_two_kinds", "place", put("group", "base", 0, 1, value={"point": [1, 1, 0], "fibres": 1})
+    )
     malformed("unknown_place", "place", put("group", "base", 0, 1, value={"places": [1, 1, 0]}))
     malformed("unknown_form", "form", put("candidate", "form", value="guess"))
     malformed("unknown_premise", "premise", put("premise", "id", value="truth"))
@@ -622,6 +625,7 @@ def _traps() -> list[Trap]:
     # integrals
     rejected("place_of_large_degree_for_its_section", "place-section", whole(_large_place), "closed_point")
     rejected("place_section_with_irrational_zeros", "section-zeros", whole(_irrational), "closed_point")
+    rejected("place_in_a_ramified_disc", "place-ramified", whole(_ramified_place), "closed_point")
     rejected("coefficients_not_determined", "not-determined", whole(_not_determined), "sole_by_coefficients")
     rejected("multiple_of_the_group_by_the_bound", "bound", whole(_multiple_by_bound), "demo")
     rejected("multiple_of_the_group_by_counts", "order", whole(_multiple), "demo")
@@ -986,6 +990,19 @@ def _large_place(log: Log) -> int:
             record["mumford"] = [[0, [2], []]]
     i = log.find("padic")
     log.records[i]["mumford"] = [[0, [-2], [1]]]
+    return i
+
+
+def _ramified_place(log: Log) -> int:
+    """The six Weierstrass points as one place; the section (x - 1)^2 y has more zeros in one of their discs."""
+    u = [str(c) for c in log.records[0]["f"]]
+    log.records[log.find("group")]["free"] = [[[1, {"mumford": [u, []]}], [-3, {"fibres": 1}]]]
+    for record in log.records:
+        if record["kind"] == "local":
+            record["mumford"] = [[0, [], []]]
+    i = log.find("padic")
+    log.records[i]["mumford"] = [[0, [], [1, -2, 1]]]
+    log.records[i]["terms"] = 60
     return i
 
 
