@@ -19,11 +19,8 @@ def hypothesis_premises(investigation: Investigation, ells: list[int]) -> list[P
     for t in investigation.orders:
         order *= t
     if investigation.torsion_proved():
-        out.append(
-            Premise(
-                "torsion", "proved", f"the torsion of J(Q) has order {order}", "", _torsion_primes(investigation)
-            )
-        )
+        statement = f"the torsion of J(Q) has order {order}"
+        out.append(Premise("torsion", "proved", statement, "", _torsion_primes(investigation)))
     for ell in ells:
         saturation = investigation.saturation_at(ell)
         if saturation.proved:

@@ -71,9 +71,7 @@ def divisor_log(group: PicardGroup, divisor: Divisor) -> tuple[int, ...]:
 def expressible(group: PicardGroup, base: Divisor, divisors: Sequence[Divisor]) -> bool:
     """Whether the group and the classes of the divisors can be shown by sections with rational zeros."""
     places = dict.fromkeys(place for d in (base, *divisors) for _, place in d.terms)
-    if not all(
-        section_through(group.curve, place) for place in places if isinstance(place, MumfordPlace)
-    ):
+    if not all(section_through(group.curve, place) for place in places if isinstance(place, MumfordPlace)):
         return False
     v, g = group.prime, group.curve.genus
     if v >= FAST_FROM.get(g, 60) and not group.higher_logs:
@@ -87,7 +85,8 @@ def local_record(
     """The record at the prime v.
 
     Arguments: `base` of degree 1 or 2, `divisors` of degree 0, v a prime below 2^20.  Never raises for a
-    prime that cannot be used: the record says why.  A prime without points gives a record with no allowed class.
+    prime that cannot be used: the record says why.  A prime without points gives a record with no allowed
+    class.
     The allowed classes are those of deg(B) P - B.
     """
     try:

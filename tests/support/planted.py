@@ -138,7 +138,7 @@ class Planted:
 
 
 def plant(rng: random.Random, genus: int) -> Planted:
-    """A random curve, a base among its planted points (sometimes a divisor), the group of the differences."""
+    """A random curve, a base among its planted points or a divisor, the group of the differences."""
     curve, points = planted_curve(rng, genus)
     place = curve.place_of_point
     base = Divisor.of([(1, place(rng.choice(points)))])
@@ -148,6 +148,9 @@ def plant(rng: random.Random, genus: int) -> Planted:
             [(1, place(rng.choice(points))), (1, place(rng.choice(points))), (1, place(rng.choice(points)))]
         )
         base = base - Divisor.of([(1, curve.double_cover_place())])
+    elif rng.random() < 0.15:
+        # a fibre, of degree 2
+        base = Divisor.of([(1, curve.double_cover_place())])
     first = Investigation(
         Problem("planted", curve, base, (), (), points, 0, "a premise", from_known_points=True)
     )
@@ -271,9 +274,9 @@ def survive(
 
 
 def check_logarithms(planted: Planted, place: ChabautyPlace, tally: Tally) -> None:
-    """Log(P - B) = sum a_i Log(D_i) and the same in J(F_p), for all planted points."""
+    """Log(d P - B) = sum a_i Log(D_i), d = deg B, and the same in J(F_p), for all planted points."""
     for point, coordinates in planted.coordinates.items():
-        left = place.integrals.log_point(point) - place.base_log
+        left = place.degree * place.integrals.log_point(point) - place.base_log
         terms = [(Fraction(a), log) for a, log in zip(coordinates.vector, place.logs, strict=True)]
         total = [0] * len(place.group.invariants)
         for a, image in zip(coordinates.vector, place.classes, strict=True):
