@@ -28,7 +28,7 @@ SMALL_LIMIT = 4000
 """Sections tried at a small prime."""
 
 PLACE_LIMIT = 3000
-"""Sections tried through a divisor."""
+"""About as many sections at most are tried through a divisor."""
 
 
 @dataclass(frozen=True)
@@ -76,9 +76,7 @@ def zeros_of(curve: ReducedHyperelliptic, c: flint.nmod_poly) -> tuple[int, ...]
     return tuple(i for i, multiplicity in divisor.points for _ in range(multiplicity))
 
 
-def section_through(
-    curve: ReducedHyperelliptic, place: MumfordPlace, tries: int = PLACE_LIMIT
-) -> Section | None:
+def section_through(curve: ReducedHyperelliptic, place: MumfordPlace) -> Section | None:
     """A section that vanishes on a divisor over Q and whose other zeros, those listed, are rational.
 
     The zeros outside the divisor are the roots of the norm divided by u (and the point at infinity).  None
@@ -87,14 +85,17 @@ def section_through(
     v, g = curve.prime, curve.genus
     if any(a.denominator % v == 0 for a in place.u + place.w):
         return None
-    if factorial(max(g, place.degree - 2)) > tries:
-        return None  # so many remaining zeros are hardly ever all rational
+    # `free` coefficients are left for points to go through; the other zeros must happen to be rational
+    free = g + 2 - place.degree
+    chance = factorial(g if free > 0 else place.degree - 1)
+    if chance > PLACE_LIMIT // 4:
+        return None
     u, w = (_poly([a.numerator * pow(a.denominator, -1, v) for a in part], v) for part in (place.u, place.w))
     f, h = _poly(curve.f, v), _poly(curve.h, v)
     rng = np.random.default_rng([v, *(int(a) for a in u.coeffs()), 5, *(int(a) for a in w.coeffs())])
     outside = [i for i in range(curve.affine_count) if int(u(int(curve.x[i])))]
-    for attempt in range(tries):
-        size = max(0, g + 2 - u.degree()) + (attempt // 50) % 4
+    for attempt in range(200 + 4 * chance):
+        size = free + (attempt // 50) % 4 if free > 0 else min(attempt, 1 + attempt % 2)
         c = w + u * _multiplier(curve, u, w, outside, size, rng)
         norm = c * c + h * c - f
         rest, remainder = divmod(norm, u)
@@ -132,7 +133,10 @@ def _multiplier(
     """A random t with `size` coefficients such that w + u t goes through up to that many rational points."""
     v = curve.prime
     values: dict[int, int] = {}
-    for k in rng.permutation(len(outside))[:size]:
+    picks = rng.integers(0, len(outside), 2 * size) if outside else []
+    for k in picks:
+        if len(values) == size:
+            break
         x, y = int(curve.x[outside[int(k)]]), int(curve.y[outside[int(k)]])
         values.setdefault(x, (y - int(w(x))) * pow(int(u(x)), -1, v) % v)
     t = curve.interpolate(sorted(values.items()))
