@@ -301,6 +301,9 @@ def spoil(rng: random.Random, planted: Planted, tally: Tally) -> None:
         kinds += ["infinite torsion", "dependent"]
     if orders:
         kinds += ["torsion dropped", "torsion order", "torsion order"]
+    if not kinds:
+        # the trivial group has no wrong subgroup
+        return
     kind = rng.choice(kinds)
     rows, claimed_rank, claimed = unit, rank, orders
     if kind == "multiple":
