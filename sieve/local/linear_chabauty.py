@@ -143,9 +143,7 @@ def _at_precision(
             Ball(prime * b.value, b.digits + 1, b.multiplicity)
             for b in common_zeros(series, prime, precision, max(1, digits - 1))
         ]
-        balls = [_cut(b, prime, digits) for b in balls]
-        if len({b.value for b in balls}) < len(balls):
-            raise InternalError("zeros that agree to all digits were told apart")
+        balls = _cut(balls, prime, digits)
         found.append(DiscZeros(disc.number, disc.point, min(known), tuple(balls)))
         alone += [
             (disc.number, b.value) for b in balls if b.multiplicity == 2 and _alone(curve, disc, forms, b)
@@ -153,9 +151,14 @@ def _at_precision(
     return ChabautyZeros(prime, digits, working, tuple(forms), integrals, tuple(found), tuple(alone))
 
 
-def _cut(ball: Ball, prime: int, digits: int) -> Ball:
-    digits = min(digits, ball.digits)
-    return Ball(ball.value % prime**digits, digits, ball.multiplicity)
+def _cut(balls: Sequence[Ball], prime: int, digits: int) -> list[Ball]:
+    """The balls to at most `digits` digits; those that become one are counted together."""
+    total: dict[tuple[int, int], int] = {}
+    for ball in balls:
+        known = min(digits, ball.digits)
+        key = (ball.value % prime**known, known)
+        total[key] = total.get(key, 0) + ball.multiplicity
+    return [Ball(value, known, total[value, known]) for value, known in sorted(total)]
 
 
 def _series(

@@ -123,6 +123,14 @@ def test_published_bounds(name: str, p: int) -> None:
     assert zeros.count >= len(case.known_points)
 
 
+def test_one_digit_means_whole_discs() -> None:
+    """At p = 3 two discs of the first curve hold two zeros each, all four of them known points."""
+    zeros = reference_zeros("quadratic_period_5", 3, 1)
+    balls = [ball for d in zeros.discs for ball in d.balls]
+    assert sorted((b.value, b.digits, b.multiplicity) for b in balls) == [(0, 1, 1)] * 2 + [(0, 1, 2)] * 2
+    assert zeros.count == len(zeros.discs) == 4
+
+
 def test_the_bound_of_coleman_is_sharp_once() -> None:
     """Gordon and Grant 1993, in McCallum and Poonen's survey: #X(F_7) + 2 = 10 points (from memory)."""
     zeros = reference_zeros("five_roots_0_1_2_5_6", 7, 10)
