@@ -151,12 +151,19 @@ def test_coefficients_and_discs(tmp_path: Path) -> None:
 def test_a_place_that_meets_a_ramified_disc_blocks_the_list(tmp_path: Path) -> None:
     """(2, 3) reduces to a branch point modulo 3, and lies on the generator x^2 = 4, y = x + 1."""
     curve = HyperellipticCurve(_plus(_times([-4, 0, 1], [-1, -1, -1, 1, 1]), [1, 2, 1]))
+    place = '{ mumford = ["x^2 - 4", "x + 1"] }'
     lines = [
-        'format = "sieve-case/1"', 'name = "blocked"', "[curve]", f'equation = "y^2 = {_text(curve.f)}"',
-        "[jacobian]", "rank = 1", 'rank_source = "assumed"', f'base = "{curve.format_point((1, 1, 0))}"',
-        "[[jacobian.generators]]", 'divisor = [[1, { mumford = ["x^2 - 4", "x + 1"] }], [-1, { fibres = 1
-        }]]',
-    ]  # fmt: skip
+        'format = "sieve-case/1"',
+        'name = "blocked"',
+        "[curve]",
+        f'equation = "y^2 = {_text(curve.f)}"',
+        "[jacobian]",
+        "rank = 1",
+        'rank_source = "assumed"',
+        f'base = "{curve.format_point((1, 1, 0))}"',
+        "[[jacobian.generators]]",
+        f"divisor = [[1, {place}], [-1, {{ fibres = 1 }}]]",
+    ]
     case = tmp_path / "case.toml"
     case.write_text("\n".join(lines) + "\n", encoding="utf-8")
     assert curve.is_smooth(3)
