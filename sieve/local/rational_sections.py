@@ -133,11 +133,11 @@ def _multiplier(
     """A random t with `size` coefficients such that w + u t goes through up to that many rational points."""
     v = curve.prime
     values: dict[int, int] = {}
-    picks = rng.integers(0, len(outside), 2 * size) if outside else []
+    picks: list[int] = rng.integers(0, len(outside), 2 * size).tolist() if outside else []
     for k in picks:
         if len(values) == size:
             break
-        x, y = int(curve.x[outside[int(k)]]), int(curve.y[outside[int(k)]])
+        x, y = int(curve.x[outside[k]]), int(curve.y[outside[k]])
         values.setdefault(x, (y - int(w(x))) * pow(int(u(x)), -1, v) % v)
     t = curve.interpolate(sorted(values.items()))
     if len(values) < size:
