@@ -51,16 +51,18 @@ def test_number_of_mutants() -> None:
 
 
 HARMLESS = {
-    'Rejected("field"': "there is always a primitive polynomial; without the refusal None would be unpacked",
+    'Rejected("field"': "there is always a primitive polynomial",
     'Rejected("expansion"': "Newton's iteration converges; the result is used only if it was verified",
     '"roots", "the zeros': "Weierstrass preparation gives this; the lines above it are checked a second time",
     '"place-roots"': "the zeros of u in a disc are the multiple root of its reduction",
     "divide(series, monic, q)": "continuation of the refusal `roots`",
-    '"terms", f"': "a place with no section and fewer terms than digits; small_roots refuses the others before",
+    '"terms", f"': "fewer terms than digits and no section; small_roots refuses the rest before",
     "more work than": "a limit, tests/proof/test_checker_hostile.py",
     "nesting deeper": "the depth was counted before",
     "MAX_RECORDS": "a limit, tests/proof/test_checker_hostile.py",
     "MAX_LINE": "a limit, tests/proof/test_checker_hostile.py",
+    "MAX_PLACES": "a limit on time alone",
+    "points far from": "a limit on memory alone",
     "MAX_CLASSES": "a limit on memory alone",
     "len(total) <= len(self.curve.square)": "saves time alone: the product is compared at the end",
 }

@@ -126,7 +126,7 @@ def noticed(code: CodeType, hint: str, corpus: list[tuple[bytes, tuple[int, int,
         signal.setitimer(signal.ITIMER_REAL, SECONDS)
         try:
             exec(code, module.__dict__)
-        except Exception:
+        except (Exception, SystemExit):
             return "import"
         for data, verdict, name in sorted(corpus, key=lambda row: (row[1][2] != hint, len(row[0]))):
             signal.setitimer(signal.ITIMER_REAL, SECONDS)

@@ -994,7 +994,7 @@ def _large_place(log: Log) -> int:
 
 
 def _ramified_place(log: Log) -> int:
-    """The six Weierstrass points as one place; the section (x - 1)^2 y has more zeros in one of their discs."""
+    """The six Weierstrass points as one place; the section (x - 1)^2 y has more zeros in one disc."""
     u = [str(c) for c in log.records[0]["f"]]
     log.records[log.find("group")]["free"] = [[[1, {"mumford": [u, []]}], [-3, {"fibres": 1}]]]
     for record in log.records:
