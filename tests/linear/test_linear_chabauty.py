@@ -214,7 +214,7 @@ GENUS_THREE = {
 }
 
 
-@pytest.mark.parametrize("p", [5, 7, 11])
+@pytest.mark.parametrize("p", [5, 7])
 @pytest.mark.parametrize("f", sorted(GENUS_THREE))
 def test_genus_three(f: tuple[int, ...], p: int) -> None:
     """g - r differentials; every point whose class is in the span of the generators is a common zero."""
