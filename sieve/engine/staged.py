@@ -11,7 +11,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from heapq import heappop, heappush
-from math import exp, expm1, log
+from math import exp, expm1, log, log1p
 
 import numpy as np
 
@@ -25,14 +25,18 @@ Exponents = tuple[int, ...]
 def expected_log_size(relations: Sequence[Relation], modulus: Mapping[int, int], known: int = 1) -> float:
     """log of the number of classes expected modulo M = prod l^e, from counts; at least log(known).
 
-    A condition with N classes that is cut to a quotient of order n keeps n (1 - exp(-N/n)) of them.
+    N classes thrown at random into a quotient of order n occupy n (1 - exp(-N/n)) of it; N follows from the
+    classes of the condition in its own quotient by the same formula.
     """
     rank = relations[0].n if relations else 0
     total = rank * sum(e * log(ell) for ell, e in modulus.items())
     for relation in relations:
         order = sum(min(e, modulus.get(part.prime, 0)) * log(part.prime)
                     for part in relation.parts for e in part.exponents)
-        load = relation.count * exp(-order)
+        if relation.count >= relation.index:
+            continue
+        thrown = -log1p(-relation.count / relation.index) * relation.index
+        load = thrown * exp(-order)
         if load < 20:
             total += log(max(-expm1(-load), 1e-300))
     return max(total, log(max(known, 1)))
