@@ -130,8 +130,8 @@ def lift_factor(poly: fmpz_mod_poly, factor: Sequence[int], prime: int, exponent
 def distinguished_polynomial(series: fmpz_mod_poly, prime: int, exponent: int) -> fmpz_mod_poly:
     """The distinguished factor of a series given modulo (p^exponent, t^T): its zeros are those with |t| < 1.
 
-    The degree is m, the order of vanishing modulo p; exact modulo p^exponent when T > m * exponent, because t^T
-    is a multiple of p^floor(T/m) modulo the factor.  Raises `InternalError` if the series vanishes modulo p.
+    The degree is m, the order of vanishing modulo p; exact modulo p^exponent when T > m * exponent, because
+    t^T is a multiple of p^floor(T/m) modulo the factor.  Raises `InternalError` if the series vanishes modulo p.
     Source: the Weierstrass preparation theorem.
 
     >>> coefficients(distinguished_polynomial(polynomial([5, 1, 1], 25), 5, 2), 2)
