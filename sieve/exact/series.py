@@ -131,7 +131,7 @@ def distinguished_polynomial(series: fmpz_mod_poly, prime: int, exponent: int) -
     """The distinguished factor of a series given modulo (p^exponent, t^T): its zeros are those with |t| < 1.
 
     The degree is m, the order of vanishing modulo p; exact modulo p^exponent when T > m * exponent, because
-    t^T is a multiple of p^floor(T/m) modulo the factor.  Raises `InternalError` if the series vanishes modulo p.
+    t^T is a multiple of p^floor(T/m) modulo the factor.  Raises `InternalError` if it vanishes modulo p.
     Source: the Weierstrass preparation theorem.
 
     >>> coefficients(distinguished_polynomial(polynomial([5, 1, 1], 25), 5, 2), 2)
