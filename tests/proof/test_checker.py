@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import ast
 import json
+import random
 import re
 import shutil
 import subprocess
@@ -16,6 +17,9 @@ import pytest
 from click.testing import CliRunner
 
 from sieve.cli import main
+from sieve.curves.discs import ResidueDisc
+from sieve.curves.hyperelliptic_mod import smooth_modulo
+from sieve.exact.series import coefficients
 from sieve.proof import checker
 from tests.support.checker_mutants import CORPUS, ROOT, SOURCE, expected, judge, refusals
 from tests.support.make_corpus import corpus
@@ -274,3 +278,64 @@ def _slow_count(curve: checker.Curve, v: int, degree: int) -> int:
             left = [(a + b) % v for a, b in zip(multiply(y, y), multiply(hx, y), strict=True)]
             total += tuple(left) == fx
     return total
+
+
+def test_primes() -> None:
+    small = [n for n in range(2, 3000) if all(n % d for d in range(2, n))]
+    assert [n for n in range(3000) if checker.is_prime(n)] == small
+    # strong pseudoprimes to the bases 2, 3, 5 and to the first seven primes (Jaeschke 1993)
+    assert not checker.is_prime(25326001) and not checker.is_prime(341550071728321)
+    assert checker.is_prime(2**61 - 1)
+
+
+def test_smoothness_agrees_with_the_engine() -> None:
+    rng, seen = random.Random(5), set()
+    for _ in range(300):
+        g = rng.choice([2, 3])
+        f = [rng.randint(-3, 3) for _ in range(2 * g + 2)] + [rng.choice([0, 1, 2])]
+        h = [rng.randint(-1, 1) for _ in range(g + 1)] + [rng.choice([0, 1])]
+        while f and f[-1] == 0:
+            f.pop()
+        while h and h[-1] == 0:
+            h.pop()
+        try:
+            curve = checker.Curve(f, h, g)
+        except checker.Rejected:
+            continue
+        for v in (2, 3, 5, 7):
+            expect = smooth_modulo(f, h, g, v)
+            assert curve.smooth(v) == expect
+            seen.add((v, expect))
+    assert len(seen) == 8
+
+
+def test_statement_in_words() -> None:
+    done = alone([str(CORPUS / "accepted" / "stated_index.jsonl")]).stdout
+    assert "X: y^2 = x^6 + 8*x^5 + 22*x^4 + 22*x^3 + 5*x^2 + 6*x + 1, of genus 2." in done
+    assert "rank: the rank of J(Q) is at most 1" in done
+    assert "complete 7: every rational point agrees with a candidate of the list at 7" in done
+    for line in (CORPUS / "accepted" / "stated_index.jsonl").read_text(encoding="utf-8").splitlines():
+        record = json.loads(line)
+        if record["kind"] == "fate" and record["verdict"] == "eliminated":
+            assert f"{record['id']} (p = 7)" in done.split("Candidate")[0]
+        if record["kind"] == "fate" and record["verdict"] == "rational":
+            assert f"Candidate {record['id']} (p = 7) agrees with" in done
+    empty = alone([str(CORPUS / "accepted" / "empty_by_classes.jsonl")]).stdout
+    assert "X: y^2 = -5*x^6 - 5*x^4 + x^2 + 2, of genus 2. X(Q) is empty.\n" in empty
+
+
+@pytest.mark.parametrize(
+    "name", ["closed_point", "residue_characteristic_two", "odd_degree_at_three", "genus_three"]
+)
+def test_discs_agree_with_the_engine(name: str) -> None:
+    """All digits of the differentials, in every disc, ramified ones and those at infinity included."""
+    with (CORPUS / "accepted" / f"{name}.jsonl").open("rb") as stream:
+        proof = checker.check(stream)
+    curve = proof.curve
+    for p, padic in proof.padics.items():
+        for number, point in enumerate(padic.reduction.points):
+            disc = ResidueDisc(curve.f, curve.h, curve.genus, p, point, number)
+            own = padic.disc(number)
+            assert own.centre == disc.centre(padic.digits)
+            forms = disc.expansion(padic.digits, padic.terms).forms
+            assert own.forms == [coefficients(form, padic.terms) for form in forms]
