@@ -19,6 +19,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from sieve.curves.hyperelliptic_mod import HigherPlace, LocalDivisor, ReducedHyperelliptic
+from sieve.curves.protocol import ReducedCurve
 from sieve.errors import InternalError, Uncertified
 from sieve.exact.abelian import FiniteQuotient, quotient_by
 from sieve.local.exact_sections import close_lattice
@@ -143,7 +144,7 @@ def picard_group(curve: ReducedHyperelliptic) -> PicardGroup:
 class _Definitions:
     """What is known of every orbit: combinations of the base, and definitions to be evaluated later."""
 
-    def __init__(self, curve: ReducedHyperelliptic, base: IntArray) -> None:
+    def __init__(self, curve: ReducedCurve, base: IntArray) -> None:
         self.curve = curve
         self.base = base
         self.width = 1 + len(base)
@@ -229,12 +230,12 @@ def _base_size(orbits: int, genus: int) -> int:
     return max(genus + 4, int(1.1 * orbits**0.5) + 2 + 4 * (genus - 2))
 
 
-def _batch_size(curve: ReducedHyperelliptic, state: _Definitions, attempt: int) -> int:
+def _batch_size(curve: ReducedCurve, state: _Definitions, attempt: int) -> int:
     base = 220 if curve.genus == 2 else 1500
     return int(base + (6 if curve.genus == 2 else 20) * curve.orbit_count)
 
 
-def _use(curve: ReducedHyperelliptic, state: _Definitions, divisors: IntArray, chosen: int) -> list[IntArray]:
+def _use(curve: ReducedCurve, state: _Definitions, divisors: IntArray, chosen: int) -> list[IntArray]:
     """Define unknown orbits from sections with one unknown zero; return closing relations of short ones."""
     orbit, sign, fibre = curve.orbit[divisors], curve.sign[divisors], curve.fibre[divisors]
     unknown = ~state.known[orbit]
@@ -276,7 +277,7 @@ def _use(curve: ReducedHyperelliptic, state: _Definitions, divisors: IntArray, c
 
 
 def _close(
-    curve: ReducedHyperelliptic, state: _Definitions, closing: list[IntArray], lower: int
+    curve: ReducedCurve, state: _Definitions, closing: list[IntArray], lower: int
 ) -> FiniteQuotient | None:
     """Pic / <P0> from the closing relations, or None while their index is not yet certainly #J(F_v)."""
     n = state.width - 1

@@ -1,0 +1,126 @@
+"""What the layers above ask of a curve model: three small protocols.
+
+`Curve` (equation, points, smoothness, reduction), `ReducedCurve` (a linear system over F_v with all rational
+points) and `Disc` (centres, parameters, expansions at p).  `HyperellipticCurve`, `ReducedHyperelliptic` and
+`ResidueDisc` implement them; `tests/curves/test_protocol.py` checks that.  A new model implements the same three.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any, Protocol
+
+import numpy as np
+from numpy.typing import NDArray
+
+from sieve.curves.divisors import Divisor, Place, Point
+
+IntArray = NDArray[np.int64]
+
+
+class LocalDivisorLike(Protocol):
+    """An effective divisor over F_v: `units` times U, points by number, other places, with multiplicities."""
+
+    @property
+    def units(self) -> int:
+        """The multiple of U."""
+
+    @property
+    def points(self) -> tuple[tuple[int, int], ...]:
+        """Pairs (point number, multiplicity)."""
+
+    @property
+    def places(self) -> tuple[tuple[Any, int], ...]:
+        """Pairs (place of degree >= 2, multiplicity)."""
+
+
+class ReducedCurve(Protocol):
+    """A smooth curve over F_v with a linear system and all its rational points, numbered 0 .. count - 1.
+
+    The class of point i is sign[i] * (class of the first point of orbit[i]) + fibre[i] * U, where U is a fixed
+    class such that a section has class `section_units` * U.  (A model without an involution: every point is its
+    own orbit, sign 1, fibre 0, and U is the section class itself.)  `ramified` lists orbits whose point P satisfies
+    2 P ~ U.
+    """
+
+    prime: int
+    genus: int
+    count: int
+    affine_count: int
+    orbit_count: int
+    section_units: int
+    orbit: IntArray
+    sign: IntArray
+    fibre: IntArray
+    ramified: IntArray
+
+    def usable(self, choice: IntArray) -> NDArray[np.bool_]:
+        """Rows of point numbers, shape (T, k), that fix a section; k = `points_per_section`."""
+
+    @property
+    def points_per_section(self) -> int:
+        """How many points fix a section."""
+
+    def residuals(self, choice: IntArray) -> IntArray:
+        """The remaining zeros of sections through usable rows, shape (T, g); -1 where not all are rational."""
+
+    def reduce(self, place: Place) -> LocalDivisorLike:
+        """The reduction of a place over Q; raises `BadReduction`."""
+
+    def higher_partner(self, place: Any) -> Any:
+        """The conjugate of a place of degree >= 2 (itself for a model without an involution)."""
+
+    def substitute(self, place: Any, rng: np.random.Generator) -> tuple[Any, Any] | None:
+        """A section through a place of degree >= 2 and the divisor of its zeros, or None."""
+
+    def index_of(self, x: int, y: int, z: int) -> int:
+        """The number of a point given by coordinates modulo v."""
+
+
+class Disc(Protocol):
+    """A residue disc at p: centre, local parameter t, expansions of coordinates and regular differentials."""
+
+    prime: int
+    genus: int
+    number: int
+    ramified: bool
+
+    def centre(self, exponent: int) -> tuple[int, int]:
+        """Chart coordinates of the centre modulo p^exponent."""
+
+    def coordinates(self, t: int, exponent: int) -> tuple[int, int]:
+        """Chart coordinates of the point with parameter t, p | t."""
+
+    def parameter(self, a: int, b: int, exponent: int) -> int:
+        """The parameter of a point given by chart coordinates modulo p^exponent."""
+
+    def expansion(self, exponent: int, length: int) -> Any:
+        """Coordinates and differentials as series modulo (p^exponent, t^length)."""
+
+
+class Curve(Protocol):
+    """A smooth projective curve of genus >= 2 over Q, given by an integral model."""
+
+    genus: int
+
+    @property
+    def key(self) -> str:
+        """A text that determines the model."""
+
+    def contains(self, point: Sequence[int]) -> bool:
+        """Is this tuple of integers a point of the curve?"""
+
+    def format_point(self, point: Point) -> str:
+        """The point as interface files write it."""
+
+    def is_smooth(self, v: int) -> bool:
+        """Is the reduction of the model modulo the prime v smooth?"""
+
+    def modulo(self, v: int) -> ReducedCurve:
+        """The reduction; raises `BadReduction` when it is not smooth."""
+
+    def difference(self, point: Point, base: Divisor) -> Divisor:
+        """The divisor P - B, or d P - B for a base divisor of degree d."""
+
+    def two_torsion_dimension(self) -> int | None:
+        """dim J(Q)[2], where the model tells (with a proof that the log can express), else None."""
