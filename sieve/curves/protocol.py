@@ -2,7 +2,7 @@
 
 `Curve` (equation, points, smoothness, reduction), `ReducedCurve` (a linear system over F_v with all rational
 points) and `Disc` (centres, parameters, expansions at p).  `HyperellipticCurve`, `ReducedHyperelliptic` and
-`ResidueDisc` implement them; `tests/curves/test_protocol.py` checks that.  A new model implements the same three.
+`ResidueDisc` implement them, and `tests/curves/test_protocol.py` checks that.  So does every new model.
 """
 
 from __future__ import annotations
@@ -37,10 +37,10 @@ class LocalDivisorLike(Protocol):
 class ReducedCurve(Protocol):
     """A smooth curve over F_v with a linear system and all its rational points, numbered 0 .. count - 1.
 
-    The class of point i is sign[i] * (class of the first point of orbit[i]) + fibre[i] * U, where U is a fixed
-    class such that a section has class `section_units` * U.  (A model without an involution: every point is its
-    own orbit, sign 1, fibre 0, and U is the section class itself.)  `ramified` lists orbits whose point P satisfies
-    2 P ~ U.
+    The class of point i is sign[i] * (class of the first point of orbit[i]) + fibre[i] * U, where U is a
+    fixed class such that a section has class `section_units` * U.  (A model without an involution: every
+    point is its own orbit, sign 1, fibre 0, and U is the section class itself.)  `ramified` lists orbits whose
+    point P satisfies 2 P ~ U.
     """
 
     prime: int
@@ -62,7 +62,7 @@ class ReducedCurve(Protocol):
         """How many points fix a section."""
 
     def residuals(self, choice: IntArray) -> IntArray:
-        """The remaining zeros of sections through usable rows, shape (T, g); -1 where not all are rational."""
+        """The other zeros of sections through usable rows, shape (T, g); -1 where not all are rational."""
 
     def reduce(self, place: Place) -> LocalDivisorLike:
         """The reduction of a place over Q; raises `BadReduction`."""
