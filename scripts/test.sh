@@ -28,4 +28,4 @@ export OMP_NUM_THREADS=1 OPENBLAS_NUM_THREADS=1
 
 ruff check .
 mypy sieve
-exec pytest -q -n 2 ${select[@]+"${select[@]}"} ${arguments[@]+"${arguments[@]}"}
+exec pytest -q -n 2 --dist worksteal ${select[@]+"${select[@]}"} ${arguments[@]+"${arguments[@]}"}
