@@ -13,6 +13,7 @@ accepted by default: the verdict is built after the last record has been checked
 from __future__ import annotations
 
 import json
+import os
 import re
 import sys
 import unicodedata
@@ -1904,7 +1905,15 @@ def main(arguments: list[str]) -> int:
         return 2
     for output in (sys.stdout, sys.stderr):
         output.reconfigure(encoding="utf-8", errors="backslashreplace")  # type: ignore[union-attr]
-    return run(paths[0], "--json" in arguments)
+    try:
+        code = run(paths[0], "--json" in arguments)
+        sys.stdout.flush()
+    except OSError as error:
+        # nobody saw the verdict, so it is none; what is left in the buffer must not be written at exit
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        sys.stderr.write(f"sieve: error: standard output: {error.strerror}, expected somebody who reads it\n")
+        return 2
+    return code
 
 
 if __name__ == "__main__":

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import ast
 import json
+import os
 import random
 import re
 import shutil
@@ -147,6 +148,21 @@ def test_declined_and_unreadable_are_one_line_and_exit_2(arguments: list[str]) -
     assert re.fullmatch(
         r"sieve: error: .+, expected .+\n|sieve: error: command line: expected .+\n", done.stderr
     )
+
+
+@pytest.mark.parametrize(
+    "name", ["accepted/forms", "rejected/another_rank", "malformed/not_a_number", "declined/another_version"]
+)
+@pytest.mark.parametrize("flags", [[], ["--json"]])
+def test_verdict_that_nobody_reads_is_no_acceptance(name: str, flags: list[str]) -> None:
+    """The reader of the pipe has gone: one line on standard error, no traceback, never exit code 0."""
+    reader, writer = os.pipe()
+    os.close(reader)
+    command = [sys.executable, "-I", "-S", "-O", str(SOURCE), str(CORPUS / f"{name}.jsonl"), *flags]
+    done = subprocess.run(command, stdout=writer, stderr=subprocess.PIPE, text=True, timeout=60, cwd="/")
+    os.close(writer)
+    assert done.returncode == 2
+    assert re.fullmatch(r"sieve: error: .+, expected .+\n", done.stderr)
 
 
 def test_source_is_one_plain_file() -> None:

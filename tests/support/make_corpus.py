@@ -732,7 +732,54 @@ def _traps() -> list[Trap]:
     rejected("index_of_classes", "index", _classes(1, 2), "demo")
     rejected("class_twice", "vector", _vectors([[0], [1]]), "demo")
     rejected("emptiness_without_classes", "conclusion", drop("classes", blame="end"), "empty_by_classes")
+    # classes that remain
+    rejected(
+        "vector_of_another_class", "vector", put("classes", "vectors", 1, 0, value=add(7)), "classes_left"
+    )
+    rejected("vector_of_a_class_twice", "vector", whole(_same_class), "classes_left")
+    rejected("class_left_out", "count", put("classes", "count", value=add(-1)), "classes_left")
+    rejected(
+        "larger_index_of_classes", "index", put("classes", "index", value=lambda n: 2 * n), "classes_left"
+    )
+    rejected("classes_not_refined", "count", put("classes", "uses", 1, 2, value="semijoin"), "classes_left")
+    malformed(
+        "vector_too_short", "length", put("classes", "vectors", 1, value=lambda v: v[:1]), "classes_left"
+    )
+    # coefficients with torsion coordinates and discs
+    rejected("another_torsion_coordinate", "not-eliminated", _candidate_of("a2", torsion=[0]), *TORSION)
+    rejected("torsion_coordinate_left_out", "not-eliminated", _candidate_of("a2", torsion=None), *TORSION)
+    rejected("disc_of_coefficients_left_out", "not-eliminated", _candidate_of("a3", disc=None), *TORSION)
+    rejected("another_disc_of_coefficients", "point-elsewhere", _candidate_of("a4", disc=[1, 0, 1]), *TORSION)
+    rejected(
+        "point_with_another_torsion_coordinate", "point-elsewhere", _candidate_of("a5", torsion=[2]), *TORSION
+    )
+    rejected("contradictory_disc_left_out", "not-eliminated", _candidate_of("a7", disc=None), *TORSION)
+    malformed("torsion_coordinates_too_many", "length", _torsion_coordinates, *TORSION)
+    # places that meet discs
+    rejected(
+        "point_eliminated_by_a_place_in_discs", "not-eliminated", _known_point_eliminated, "place_in_discs"
+    )
+    rejected(
+        "point_eliminated_by_a_place_partly_in_discs",
+        "not-eliminated",
+        _known_point_eliminated,
+        "place_partly_in_discs",
+    )
+    rejected(
+        "place_in_a_disc_without_logarithm", "disc-missing", whole(_place_without_a_disc), "place_in_discs"
+    )
+    rejected(
+        "place_partly_in_discs_without_a_section",
+        "place-missing",
+        put("padic", "mumford", value=[]),
+        "place_partly_in_discs",
+    )
+    rejected("place_with_a_section_of_many_zeros", "terms", whole(_many_zeros), "place_partly_in_discs")
     # limits
+    declined(
+        "many_digits_of_a_coefficient", put("candidate", "coefficients", 0, 1, value=5000, id="c1"), "forms"
+    )
+    declined("many_digits_of_a_candidate", put("candidate", "digits", value=5000))
     declined("another_version", put("header", "format", value="sieve-proof/2"))
     declined("another_format", put("header", "format", value="survey/1"))
     declined(
@@ -1064,6 +1111,50 @@ def _many_generators(log: Log) -> int:
     log.records[i].update(rank=61, free=[[]] * 61)
     return i
 
+
+def _same_class(log: Log) -> int:
+    """The first vector again, moved by a vector of the subgroup."""
+    i = log.find("classes")
+    record = log.records[i]
+    record["vectors"][1] = [record["vectors"][0][0] + 3 * record["index"], record["vectors"][0][1]]
+    return i
+
+
+def _candidate_of(name: str, **fields: Any) -> Edit:
+    """Change a candidate; the blame goes to its fate."""
+
+    def edit(log: Log) -> int:
+        log.records[log.find("candidate", id=name)].update(fields)
+        return log.find("fate", id=name)
+
+    return edit
+
+
+def _torsion_coordinates(log: Log) -> int:
+    i = log.find("candidate", id="a2")
+    log.records[i]["torsion"] = [1, 1]
+    return i
+
+
+def _place_without_a_disc(log: Log) -> int:
+    """No logarithm in the disc of (6, 4) modulo 11, which holds two points of the place."""
+    i = log.find("padic")
+    discs = log.records[i]["discs"]
+    log.records[i]["discs"] = [entry for entry in discs if entry[0] != DOUBLE_DISC]
+    return i
+
+
+def _many_zeros(log: Log) -> int:
+    """The section through the place times x^2 vanishes too often in one disc for the number of terms."""
+    i = log.find("padic")
+    k, even, odd = log.records[i]["mumford"][0]
+    log.records[i]["mumford"] = [[k, [0, 0, *even], [0, 0, *odd]]]
+    return i
+
+
+TORSION = ("torsion_coordinates",)
+
+DOUBLE_DISC = 8
 
 EVEN_PRIMES = [2, 3]
 

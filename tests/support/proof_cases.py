@@ -1,16 +1,18 @@
 """Small runs of different kinds, whose logs are the accepted part of the corpus in data/proofs.
 
-Run as `python -m tests.support.proof_cases` to write data/proofs/accepted anew; the stored logs are fixtures
-and need not be what today's engine writes.
+Run as `python -m tests.support.proof_cases [NAME ..]` to write data/proofs/accepted anew, all logs or those
+named; the stored logs are fixtures and need not be what today's engine writes.
 """
 
 from __future__ import annotations
 
 import json
+import sys
 import tempfile
 from collections.abc import Callable, Sequence
 from itertools import combinations
 from pathlib import Path
+from typing import Any
 
 from flint import fmpq, fmpq_poly
 
@@ -230,6 +232,76 @@ def _mumford(directory: Path) -> Path:
     raise AssertionError("no such generator")
 
 
+def _classes(directory: Path) -> Path:
+    """No candidates, and classes that remain."""
+    return run_to(directory, write_case(reference_case("lmfdb2059"), directory), [], bound=20)[1]
+
+
+def _torsion_coordinates(directory: Path) -> Path:
+    """Coefficients with a torsion coordinate, and discs without which candidates would remain."""
+    chosen: list[tuple[str, int, int, str]] = [
+        ("a1", 0, 0, ""),
+        ("a2", 0, 1, ""),
+        ("a3", 1, 0, "(0 : 0 : 1)"),
+        ("a4", 1, 1, "(0 : 0 : 1)"),
+        ("a5", 1, 1, ""),
+        ("a6", 1, 1, "(1 : 0 : 1)"),
+        ("a7", 0, 1, "(0 : 0 : 1)"),
+        ("a8", 2, 2, ""),
+    ]
+    candidates: list[dict[str, object]] = [
+        {"id": name, "coefficients": [f"{a} + O(3)"], "torsion": [e], **({"disc": disc} if disc else {})}
+        for name, a, e, disc in chosen
+    ]
+    file = write_json(directory / "c3.json", 3, 1, candidates, False)
+    return run_to(directory, write_case(reference_case("lmfdb2059"), directory), [file], bound=60)[1]
+
+
+def _cubic_place(directory: Path, p: int, u: str, w: str) -> Path:
+    """A generator (u, w) - U - (1 : 1 : 0), deg u = 3, and candidates at p."""
+    case = reference_case("quadratic_period_5")
+    path = directory / "case.toml"
+    path.write_text(
+        f'format = "sieve-case/1"\nname = "cubic place"\nknown_points = ["(1 : 1 : 0)"]\n[curve]\n'
+        f'equation = "{case.equation}"\n[jacobian]\nrank = 1\nrank_source = "the reference data"\n'
+        f'base = "(1 : 1 : 0)"\n[[jacobian.generators]]\ndivisor = [[1, {{ mumford = ["{u}", "{w}"] }}], '
+        '[-1, { fibres = 1 }], [-1, "(1 : 1 : 0)"]]\n',
+        encoding="utf-8",
+    )
+    return run_to(directory, path, [write_candidates(case, directory, p, 4, 6)], bound=200)[1]
+
+
+def _padic_changed(log: Path, change: Callable[[dict[str, Any]], None]) -> Path:
+    """The log with another record of integrals at the one prime that has some."""
+    records = [json.loads(line) for line in log.read_text(encoding="utf-8").splitlines()]
+    (record,) = (r for r in records if r["kind"] == "padic")
+    change(record)
+    log.write_text("".join(json.dumps(r, separators=(",", ":")) + "\n" for r in records), encoding="utf-8")
+    return log
+
+
+def _place_in_discs(directory: Path) -> Path:
+    """u = (x - 7) (x - 6)^2 modulo 11: the place is integrated directly, without a section of its own."""
+
+    def change(record: dict[str, Any]) -> None:
+        record["mumford"] = []
+
+    return _padic_changed(_cubic_place(directory, 11, "x^3 + 3*x^2 - x + 1", "x^2 + 2*x"), change)
+
+
+def _place_partly_in_discs(directory: Path) -> Path:
+    """u has one root modulo 7, and the section through the place has another zero in the disc there."""
+
+    def change(record: dict[str, Any]) -> None:
+        k, even, odd = record["mumford"][0]
+        a = next(a for a in range(7) if (2 * a**3 + 8 * a**2 + 3 * a - 14) % 7 == 0)
+        widened = [[x - a * y for x, y in zip([0, *c], [*c, 0], strict=True)] for c in (even, odd)]
+        record["mumford"] = [[k, *widened]]
+
+    log = _cubic_place(directory, 7, "x^3 + 4*x^2 + 3/2*x - 7", "5/2*x + 6")
+    return _padic_changed(log, change)
+
+
 CASES: dict[str, Case] = {
     "demo": _demo,
     "torsion": _reference("X1_13", 4, 6),
@@ -245,14 +317,20 @@ CASES: dict[str, Case] = {
     "two_lists": _two_lists,
     "stated_index": _index,
     "closed_point": _mumford,
+    "classes_left": _classes,
+    "torsion_coordinates": _torsion_coordinates,
+    "place_in_discs": _place_in_discs,
+    "place_partly_in_discs": _place_partly_in_discs,
 }
 
 
-def main() -> None:
-    """Write the accepted logs."""
+def main(names: Sequence[str]) -> None:
+    """Write the accepted logs, all or those named."""
     target = CORPUS / "accepted"
     target.mkdir(parents=True, exist_ok=True)
     for name, case in CASES.items():
+        if names and name not in names:
+            continue
         with tempfile.TemporaryDirectory() as directory:
             data = case(Path(directory)).read_bytes()
         (target / f"{name}.jsonl").write_bytes(data)
@@ -261,4 +339,4 @@ def main() -> None:
 
 
 if __name__ == "__main__":
-    main()
+    main(sys.argv[1:])
