@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
-import os
 import sys
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from concurrent.futures import Executor
+from contextlib import ExitStack, contextmanager
 from pathlib import Path
 from typing import Any
 
@@ -97,6 +98,20 @@ def _bound(value: int | None, option: str = "--bound") -> int | None:
     if value is not None and not 3 <= value <= 2**20:
         raise InputError(option, "", str(value), "a bound between 3 and 2^20")
     return value
+
+
+@contextmanager
+def _resources(store: str | None, jobs: int) -> Iterator[tuple[Store | None, Executor | None]]:
+    """The store, if one is named, and the workers of a command."""
+    with ExitStack() as stack:
+        kept = stack.enter_context(Store(store)) if store else None
+        yield kept, stack.enter_context(workers(jobs))
+
+
+def _show(as_json: bool, document: Any, text: Callable[[], str]) -> int:
+    """Print the outcome of a command in one of its two forms; the exit code of success."""
+    click.echo(json_text(document) if as_json else text(), nl=False)
+    return 0
 
 
 @main.command("run", epilog="Example: sieve run case.toml -c candidates7.json -o out --bound 1000")
@@ -197,34 +212,23 @@ def inspect(
         if propose:
             with workers(jobs) as executor:
                 proposed = propose_command.execute(case, executor)
-            if as_json:
-                click.echo(json_text(propose_command.document(proposed)), nl=False)
-            else:
-                click.echo(propose_command.text(proposed), nl=False)
-            return 0
+            return _show(
+                as_json, propose_command.document(proposed), lambda: propose_command.text(proposed)
+            )
         wanted = None if primes is None else parse_primes(primes)
         limit = _bound(bound)
-        kept = Store(store) if store else None
-        try:
-            with workers(jobs) as executor:
-                done = inspect_command.execute(
-                    case,
-                    bound=limit,
-                    primes=wanted,
-                    padic=padic,
-                    store=kept,
-                    executor=executor,
-                    progress=progress,
-                )
-        finally:
-            if kept is not None:
-                kept.close()
+        with _resources(store, jobs) as (kept, executor):
+            done = inspect_command.execute(
+                case,
+                bound=limit,
+                primes=wanted,
+                padic=padic,
+                store=kept,
+                executor=executor,
+                progress=progress,
+            )
         progress.close()
-        if as_json:
-            click.echo(json_text(inspect_command.document(done)), nl=False)
-        else:
-            click.echo(inspect_command.text(done), nl=False)
-        return 0
+        return _show(as_json, inspect_command.document(done), lambda: inspect_command.text(done))
 
     return _guard(case, work)
 
@@ -254,28 +258,19 @@ def advise(
         limit = _bound(bound)
         most = advise_command.check_top(top)
         chabauty = _bound(chabauty_bound, "--chabauty-bound")
-        kept = Store(store) if store else None
-        try:
-            with workers(jobs) as executor:
-                done = advise_command.execute(
-                    case,
-                    candidates,
-                    bound=limit,
-                    top=most,
-                    chabauty_bound=chabauty,
-                    store=kept,
-                    executor=executor,
-                    progress=progress,
-                )
-        finally:
-            if kept is not None:
-                kept.close()
+        with _resources(store, jobs) as (kept, executor):
+            done = advise_command.execute(
+                case,
+                candidates,
+                bound=limit,
+                top=most,
+                chabauty_bound=chabauty,
+                store=kept,
+                executor=executor,
+                progress=progress,
+            )
         progress.close()
-        if as_json:
-            click.echo(json_text(advise_command.document(done)), nl=False)
-        else:
-            click.echo(advise_command.text(done), nl=False)
-        return 0
+        return _show(as_json, advise_command.document(done), lambda: advise_command.text(done))
 
     return _guard(case, work)
 
@@ -308,11 +303,11 @@ def candidates(
         file = json_text(candidates_command.candidate_document(done))
         if output is not None:
             write_whole(output, file)
-        if as_json:
-            click.echo(json_text(candidates_command.document(done)), nl=False)
-        else:
-            click.echo(file if output is None else candidates_command.text(done), nl=False)
-        return 0
+        return _show(
+            as_json,
+            candidates_command.document(done),
+            lambda: file if output is None else candidates_command.text(done),
+        )
 
     return _guard(case, work)
 
@@ -365,9 +360,3 @@ def _from_log(
         return 0
 
     return _guard(proof, work)
-
-
-def entry() -> None:
-    """Entry point that keeps numerical libraries to one thread for each process."""
-    os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
-    main()

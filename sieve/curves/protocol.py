@@ -38,9 +38,8 @@ class ReducedCurve(Protocol):
     """A smooth curve over F_v with a linear system and all its rational points, numbered 0 .. count - 1.
 
     The class of point i is sign[i] * (class of the first point of orbit[i]) + fibre[i] * U, where U is a
-    fixed class such that a section has class `section_units` * U.  (A model without an involution: every
-    point is its own orbit, sign 1, fibre 0, and U is the section class itself.)  `ramified` lists orbits whose
-    point P satisfies 2 P ~ U.
+    fixed class such that a section has class `section_units` * U.  Without an involution every point is its
+    own orbit, sign 1, fibre 0, and U is the section class.  `ramified` lists orbits with 2 P ~ U.
     """
 
     prime: int
