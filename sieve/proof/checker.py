@@ -5,8 +5,9 @@ library (3.11 or later) and shares no code with the program that writes the logs
 the premises, prints both, and checks everything else.
 
 Exit codes: 0 accepted; 3 rejected or malformed (line, record, reason code and reason on standard output); 2
-declined (beyond a limit or of an unknown version) or unreadable, one line on standard error.  Nothing is
-accepted by default: the verdict is built after the last record has been checked.
+declined (beyond a limit or of an unknown version), unreadable, or with a verdict that cannot be printed, one
+line on standard error.  Nothing is accepted by default: the verdict is built after the last record has been
+checked.
 """
 
 # ruff: noqa: B905

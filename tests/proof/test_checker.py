@@ -22,7 +22,16 @@ from sieve.curves.discs import ResidueDisc
 from sieve.curves.hyperelliptic_mod import smooth_modulo
 from sieve.exact.series import coefficients
 from sieve.proof import checker
-from tests.support.checker_mutants import CORPUS, ROOT, SOURCE, expected, judge, refusals
+from tests.support.checker_mutants import (
+    CORPUS,
+    ROOT,
+    SOURCE,
+    expected,
+    expected_words,
+    judge,
+    refusals,
+    words,
+)
 from tests.support.make_corpus import corpus
 
 FORMAT_PAGE = ROOT / "sieve" / "proof" / "FORMAT.md"
@@ -323,6 +332,11 @@ def test_smoothness_agrees_with_the_engine() -> None:
             assert curve.smooth(v) == expect
             seen.add((v, expect))
     assert len(seen) == 8
+
+
+@pytest.mark.parametrize("name", sorted(expected_words()))
+def test_statements_and_premises(name: str) -> None:
+    assert words(checker, name) == expected_words()[name]
 
 
 def test_statement_in_words() -> None:

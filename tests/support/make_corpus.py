@@ -493,6 +493,12 @@ def _traps() -> list[Trap]:
     rejected(
         "index_premise_of_a_composite", "not-prime", _premise(id="index 6", statement="a", source="b", ell=6)
     )
+    # 41 * 61 * 101 passes Fermat's test to every base prime to it (Carmichael 1912)
+    rejected(
+        "index_premise_of_a_carmichael_number",
+        "not-prime",
+        _premise(id="index 252601", statement="a", source="b", ell=252601),
+    )
     rejected(
         "index_premise_with_another_id",
         "premise-id",
@@ -502,6 +508,12 @@ def _traps() -> list[Trap]:
     rejected("candidate_twice", "duplicate", twice("candidate"))
     rejected("candidate_off_the_curve", "point-off-curve", put("candidate", "point", 1, value=add(5), n=1))
     rejected("candidate_at_a_bad_prime", "not-smooth", put("candidate", "prime", value=13))
+    rejected(
+        "candidate_singular_at_infinity_modulo_two",
+        "not-smooth",
+        whole(_singular_at_infinity),
+        "residue_characteristic_two",
+    )
     rejected("candidate_at_a_composite", "not-prime", put("candidate", "prime", value=9))
     rejected("candidate_not_in_normal_form", "point-form", put("candidate", "point", value=[2, 1, 2]))
     rejected(
@@ -620,6 +632,7 @@ def _traps() -> list[Trap]:
     rejected("factors_of_even_degree_in_odd_genus", "branch", whole(_even_degrees))
     rejected("factor_missing", "factor", put("branch", "factors", value=without(0)), "genus_three")
     rejected("factors_multiplied", "irreducible", whole(_reducible), "genus_three")
+    rejected("factors_multiplied_at_chosen_primes", "irreducible", whole(_cubic_times_quartic))
     rejected("no_primes_for_the_factors", "irreducible", put("branch", "primes", value=[]), "genus_three")
     rejected("branch_twice", "duplicate", twice("branch"), "genus_three")
     # integrals
@@ -732,6 +745,7 @@ def _traps() -> list[Trap]:
     rejected("index_of_classes", "index", _classes(1, 2), "demo")
     rejected("class_twice", "vector", _vectors([[0], [1]]), "demo")
     rejected("emptiness_without_classes", "conclusion", drop("classes", blame="end"), "empty_by_classes")
+    rejected("too_few_terms_for_a_point", "terms", whole(_no_sections), "odd_degree_at_three")
     # classes that remain
     rejected(
         "vector_of_another_class", "vector", put("classes", "vectors", 1, 0, value=add(7)), "classes_left"
@@ -1004,6 +1018,25 @@ def _even_degrees(log: Log) -> int:
     return 3
 
 
+def _cubic_times_quartic(log: Log) -> int:
+    """x^3 - x - 1 times x^4 - x - 1 as one factor, at primes where its degrees are 3, 4 and 2, 2, 3."""
+    f = [0] * 8
+    for i, c in enumerate([-1, -1, 0, 1]):
+        for j, d in enumerate([-1, -1, 0, 0, 1]):
+            f[i + j] += c * d
+    log.records = log.records[:3]
+    log.records[0].update(f=f, genus=3)
+    log.records[1].update(base=[[1, {"point": [1, 0, 0]}]], torsion=[])
+    log.records.append({"kind": "branch", "factors": [[4 * c for c in f]], "primes": SEVEN_PRIMES})
+    return 3
+
+
+def _singular_at_infinity(log: Log) -> int:
+    """y^2 + y = f with an even coefficient of x^5: smooth modulo 2 except at infinity."""
+    log.records[0]["f"] = [0, -1, 0, 4, -5, 2]
+    return log.find("candidate")
+
+
 def _few_points(log: Log) -> int:
     """A curve with few points modulo 3, too few to generate J(F_3)."""
     i = log.find("local")
@@ -1112,6 +1145,13 @@ def _many_generators(log: Log) -> int:
     return i
 
 
+def _no_sections(log: Log) -> int:
+    """Fewer terms than digits, and no section that would need more."""
+    record = log.records[log.find("padic")]
+    record.update(digits=8, terms=5, sections=[], discs=[])
+    return log.find("fate", verdict="eliminated")
+
+
 def _same_class(log: Log) -> int:
     """The first vector again, moved by a vector of the subgroup."""
     i = log.find("classes")
@@ -1157,6 +1197,8 @@ TORSION = ("torsion_coordinates",)
 DOUBLE_DISC = 8
 
 EVEN_PRIMES = [2, 3]
+
+SEVEN_PRIMES = [3, 71]
 
 FEW = [0, 1, 0, 0, 0, 2, 2]
 """f with one point modulo 3."""
