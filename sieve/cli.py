@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import sys
 from collections.abc import Callable, Iterator
 from concurrent.futures import Executor
@@ -64,6 +65,10 @@ def _guard(case: str, work: Callable[[], int]) -> int:
         _fail(f"{error.file or case}: {where}{error}, expected {error.expected}")
     except SieveError as error:
         _fail(f"{case}: {error}")
+    except BrokenPipeError:
+        # nothing can be printed any more, not even at exit
+        sys.stdout = open(os.devnull, "w")
+        _fail("standard output: closed before everything was written, expected a reader to the end")
     except OSError as error:
         what = f"{error.filename or case}: {error.strerror or error}"
         _fail(f"{what}, expected a readable file and a writable directory")
