@@ -15,7 +15,10 @@ def test_nobody_reads_the_verdict() -> None:
     os.close(reader)
     try:
         done = subprocess.run(
-            [sys.executable, "-m", "sieve", "check", str(LOG)], stdout=writer, stderr=subprocess.PIPE, timeout=120
+            [sys.executable, "-m", "sieve", "check", str(LOG)],
+            stdout=writer,
+            stderr=subprocess.PIPE,
+            timeout=120,
         )
     finally:
         os.close(writer)
