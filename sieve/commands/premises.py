@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from math import gcd
 from typing import TYPE_CHECKING
 
 from sieve.engine.investigation import Investigation
@@ -59,8 +60,6 @@ def hypothesis_premises(investigation: Investigation, ells: list[int]) -> list[P
 
 def _torsion_primes(investigation: Investigation) -> tuple[int, ...]:
     """A few primes whose group orders have the same greatest common divisor as all of them."""
-    from math import gcd
-
     records = [r for r in investigation.usable if r.points and r.prime != 2]
     goal = 0
     for record in records:
@@ -79,12 +78,9 @@ def premises_of(run: Run) -> list[Premise]:
     """All premises of a run, in a fixed order."""
     out = hypothesis_premises(run.investigation, run.ells)
     for file in run.files:
-        statement = (
-            f"every rational point of X is near one of the {len(file.candidates)} candidates at {file.prime}"
-            if file.complete
-            else f"the {len(file.candidates)} candidates at {file.prime} are as stated"
-        )
         if file.complete:
+            among = f"the {len(file.candidates)} candidates at {file.prime}"
+            statement = f"every rational point of X is near one of {among}"
             out.append(Premise(f"complete at {file.prime}", "assumed", statement, file.source))
         for candidate in file.candidates:
             if candidate.at_most is not None:

@@ -41,7 +41,7 @@ def make_hunts(investigation: Investigation, lists: Sequence[CandidateList], dec
                ells: Sequence[int], bound: int | None,
                primes: Collection[int] | None = None) -> list[tuple[int, Hunt]]:
     """A hunt for every labelled relation with open candidates, with the number of its list."""
-    labelled, _, lists_of = candidate_relations(investigation, lists, ells)
+    labelled, lists_of = candidate_relations(investigation, lists, ells)
     auxiliary = investigation.relations(ells, bound, primes)
     known = [c.vector for c in investigation.coordinates.values() if c.denominator == 1]
     out = []

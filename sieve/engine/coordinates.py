@@ -10,7 +10,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
-from math import gcd, isqrt, lcm
+from math import gcd, isqrt
 
 import flint
 
@@ -290,16 +290,10 @@ def _preimage(
     raise Inconsistent("no short combination of the known points gives a generator", "known points")
 
 
-def common_denominator(points: Sequence[PointCoordinates]) -> int:
-    """The least common multiple of the denominators (1 for an empty list)."""
-    return lcm(1, *[point.denominator for point in points])
-
-
 __all__ = [
     "PointBasis",
     "PointCoordinates",
     "basis_of_classes",
-    "common_denominator",
     "generator_relations",
     "point_coordinates",
     "true_relations",

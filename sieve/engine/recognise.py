@@ -3,20 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
 
 from sieve.curves.divisors import Point
 from sieve.curves.search import points_over
 from sieve.engine.coordinates import PointCoordinates
 from sieve.exact.padic_number import PadicNumber
 from sieve.local.chabauty import ChabautyPlace, LocatedCandidate
-
-
-@dataclass(frozen=True)
-class Match:
-    """The rational points that a candidate cannot be told apart from, at its precision (at least one)."""
-
-    points: tuple[Point, ...]
 
 
 def matching_points(

@@ -118,8 +118,8 @@ def match_rational(
 
 def candidate_relations(
     investigation: Investigation, lists: Sequence[CandidateList], ells: Sequence[int]
-) -> tuple[list[Relation], list[Relation], dict[str, int]]:
-    """Labelled relations, unlabelled ones of complete lists, and the list number of every labelled one."""
+) -> tuple[list[Relation], dict[str, int]]:
+    """The labelled relations of all lists, and for the name of each the number of its list."""
     labelled: list[Relation] = []
     lists_of: dict[str, int] = {}
     for number, listing in enumerate(lists):
@@ -127,7 +127,7 @@ def candidate_relations(
             relation = relation_from_condition(condition, ells)
             labelled.append(relation)
             lists_of[condition.name] = number
-    return labelled, [], lists_of
+    return labelled, lists_of
 
 
 def prime_of(name: str) -> int:
@@ -148,14 +148,14 @@ def decide_candidates(
 
     Auxiliary primes: those below `bound` (among `primes`).
     """
-    labelled, extra, lists_of = candidate_relations(investigation, lists, ells)
+    labelled, lists_of = candidate_relations(investigation, lists, ells)
     rational = [
         (relation.name, label)
         for relation in labelled
         for label in {*relation.labels, *relation.outside}
         if (lists_of[relation.name], label) in matched
     ]
-    auxiliary = [*investigation.relations(ells, bound, primes), *extra]
+    auxiliary = investigation.relations(ells, bound, primes)
     out: dict[tuple[int, str], Decision] = {}
     known = set(investigation.problem.known_points)
     for number, listing in enumerate(lists):

@@ -12,7 +12,6 @@ from flint import fmpz_mat
 
 from sieve.engine.coordinates import (
     basis_of_classes,
-    common_denominator,
     generator_relations,
     point_coordinates,
     true_relations,
@@ -84,7 +83,6 @@ def test_points_outside_a_group_of_finite_index(denominator: int) -> None:
     found = point_coordinates(2, [], maps)
     assert found is not None and found.denominator == denominator
     assert found.coefficients == tuple(Fraction(a, denominator) for a in point)
-    assert common_denominator([found, found]) == denominator and common_denominator([]) == 1
 
 
 def test_a_point_that_is_independent_has_no_coordinates() -> None:
