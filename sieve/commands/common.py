@@ -86,12 +86,13 @@ def workers(jobs: int) -> Iterator[Executor | None]:
     if count == 1:
         yield None
         return
-    with ProcessPoolExecutor(max_workers=count) as pool:
-        try:
-            yield pool
-        except BaseException:
-            pool.shutdown(wait=False, cancel_futures=True)
-            raise
+    pool = ProcessPoolExecutor(max_workers=count)
+    try:
+        yield pool
+    finally:
+        # wait even when interrupted: a pool left behind is woken through closed pipes at exit; the few
+        # primes in work are soon done, the others are cancelled
+        pool.shutdown(wait=True, cancel_futures=True)
 
 
 @dataclass
