@@ -10,7 +10,7 @@ from typing import Any
 from sieve import __version__
 from sieve.commands.common import Progress, StoredInvestigation, problem_of
 from sieve.curves.divisors import Divisor, Point
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 from sieve.curves.search import search_points
 from sieve.engine.investigation import Investigation
 from sieve.errors import BadReduction, Inconsistent, InputError, PrecisionLost, Uncertified
@@ -21,7 +21,7 @@ from sieve.files.resolve import ResolvedCase, read_case
 from sieve.local.chabauty import LocatedCandidate
 from sieve.local.linear_chabauty import ChabautyZeros, chabauty_zeros
 from sieve.local.records import divisor_log
-from sieve.proof.statement import mumford_places
+from sieve.proof.statement import closed_places
 from sieve.proof.witness_padic import Inexpressible, PadicEvidence
 
 TRIED = 6
@@ -72,7 +72,7 @@ def default_precision(prime: int) -> int:
     return digits
 
 
-def check_prime(curve: HyperellipticCurve, prime: int) -> None:
+def check_prime(curve: Curve, prime: int) -> None:
     """Refuse a prime that cannot be used; raises `InputError`."""
     if not 2 <= prime <= MAX_PRIME or not is_prime(prime):
         raise InputError("--prime", "", str(prime), f"an odd prime up to {MAX_PRIME}")
@@ -97,13 +97,13 @@ def generators_in_use(
     return investigation.generators
 
 
-def why_unsuited(zeros: ChabautyZeros, curve: HyperellipticCurve, divisors: Sequence[Divisor]) -> str:
+def why_unsuited(zeros: ChabautyZeros, curve: Curve, divisors: Sequence[Divisor]) -> str:
     """Why base and generators do not reduce at the prime so that the sieve and its proof log can use them."""
     group = zeros.integrals.group
     try:
         for divisor in divisors:
             divisor_log(group, divisor)
-        PadicEvidence(curve, group, mumford_places(divisors))
+        PadicEvidence(curve, group, closed_places(divisors))
     except (BadReduction, Uncertified) as error:
         return error.reason
     except Inexpressible as error:
@@ -204,7 +204,7 @@ def _agrees(zeros: ChabautyZeros, candidate: LocatedCandidate, point: Point) -> 
 # ---- output ----------------------------------------------------------------------------------------------
 
 
-def _point_text(curve: HyperellipticCurve, zeros: ChabautyZeros, candidate: LocatedCandidate) -> str:
+def _point_text(curve: Curve, zeros: ChabautyZeros, candidate: LocatedCandidate) -> str:
     """The candidate in the user's coordinates, each to the candidate's digits."""
     p, n = zeros.prime, candidate.digits
     x, y, z = zeros.integrals.point_at(int(candidate.disc or 0), candidate.parameter, n)

@@ -36,6 +36,7 @@ def problem_of(resolved: ResolvedCase) -> Problem:
         case.index_prime_to,
         case.index_source,
         case.generators_from is not None,
+        case.integral,
     )
 
 
@@ -127,9 +128,12 @@ class StoredInvestigation:
     def quick_orders(self, primes: Sequence[int]) -> dict[int, QuickOrder]:
         """The possible orders of J(F_v) for those of the primes where they are known, through the store."""
         curve, executor = self.investigation.problem.curve, self.investigation.executor
+        if curve.weight != 3:
+            # only genus 2 has a quick way to the order
+            return {}
         known = {} if self.store is None else self.store.load_orders(curve.key, primes)
         missing = [v for v in primes if v not in known]
-        work = partial(quick_order, curve.f, curve.h)
+        work = partial(quick_order, [-c for c in curve.rows[0]], curve.rows[1])
         found = map(work, missing) if executor is None or len(missing) < 50 else executor.map(
             work, missing, chunksize=16)
         new = dict(zip(missing, found, strict=True))

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 from sieve import __version__
 from sieve.engine.investigation import Investigation
 from sieve.engine.verdicts import CandidateList
-from sieve.proof.statement import ProofInput, ProofPremise, mumford_places
+from sieve.proof.statement import ProofInput, ProofPremise, closed_places
 from sieve.proof.witness_padic import Inexpressible, PadicEvidence
 from sieve.proof.writer import ProofLog, write_proof
 
@@ -23,7 +23,7 @@ def restrict_to_log(investigation: Investigation, listing: CandidateList) -> Non
     place.reduction = record.usable and record.expressible
     if all(c.kind == "coefficients" for c in listing.candidates):
         return
-    places = mumford_places([investigation.problem.base, *investigation.generators])
+    places = closed_places([investigation.problem.base, *investigation.generators])
     try:
         PadicEvidence(place.curve, place.group, places)
     except Inexpressible as error:
@@ -84,6 +84,7 @@ def proof_of(run: Run, full: bool) -> ProofLog:
             vectors=[] if outlook is None else outlook.vectors,
             branch=investigation.branch,
             two_torsion=investigation.exact_two,
+            integral=problem.integral,
         ),
         full,
     )

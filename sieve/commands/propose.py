@@ -8,12 +8,12 @@ from dataclasses import dataclass
 from typing import Any
 
 from sieve.curves.divisors import Divisor, RationalPlace
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 from sieve.engine.proposal import Proposal, propose
 from sieve.errors import Inconsistent
 from sieve.files.case import FORMAT, HALF_FIBRE, Sketch, load_sketch
 from sieve.files.notation_out import divisor_document
-from sieve.files.resolve import hyperelliptic_curve
+from sieve.files.resolve import curve_of
 
 
 @dataclass(frozen=True)
@@ -21,14 +21,14 @@ class Proposed:
     """A case file in part, its curve, and what was found for it."""
 
     sketch: Sketch
-    curve: HyperellipticCurve
+    curve: Curve
     proposal: Proposal
 
 
 def execute(case_path: str, executor: Executor | None = None) -> Proposed:
     """Read the curve and perhaps the rank, search; raises `Inconsistent` when more generators are found."""
     sketch = load_sketch(case_path)
-    curve = hyperelliptic_curve(sketch.equation, sketch.equation_origin)
+    curve = curve_of(sketch.equation)
     found = propose(curve, sketch.rank, executor=executor)
     if sketch.rank is not None and len(found.generators) > sketch.rank:
         raise Inconsistent(
@@ -79,7 +79,7 @@ def text(done: Proposed) -> str:
         f"known_points = {_toml([curve.format_point(p) for p in proposal.points])}",
         "",
         "[curve]",
-        f"equation = {_toml(sketch.equation_text)}",
+        f"equation = {_toml(sketch.equation.text)}",
         "",
         "[jacobian]",
     ]

@@ -13,7 +13,7 @@ from sieve.commands.premises import premises_of
 from sieve.commands.prooflog import proof_of, restrict_to_log
 from sieve.commands.pursue import LONG_REACH, REACH, pursue
 from sieve.curves.divisors import Point
-from sieve.curves.search import search_points
+from sieve.curves.search import by_height, search_points
 from sieve.engine.investigation import FIRST_BOUND, Investigation
 from sieve.engine.plan import Step
 from sieve.engine.verdicts import (
@@ -281,7 +281,7 @@ def rational_points(run: Run) -> list[Point]:
     points = set(run.resolved.known_points) | set(run.found_points)
     for decision in run.decisions:
         points |= set(decision.points)
-    return sorted(points, key=lambda p: (max(abs(p[0]), abs(p[2])), p))
+    return by_height(run.resolved.curve, points)
 
 
 def result_of(run: Run) -> Result:

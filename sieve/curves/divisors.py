@@ -51,7 +51,26 @@ class FibrePlace:
         return 2 * self.count
 
 
-Place = RationalPlace | MumfordPlace | FibrePlace
+@dataclass(frozen=True, order=True)
+class ClosedPlace:
+    """All conjugates of the point (x(t) : y(t) : z(t)), t a root of u.
+
+    Coefficients low degree first; u monic and squarefree of degree >= 1, coordinates of degree < deg u; different
+    roots give different points.
+    """
+
+    u: tuple[Fraction, ...]
+    x: tuple[Fraction, ...]
+    y: tuple[Fraction, ...]
+    z: tuple[Fraction, ...]
+
+    @property
+    def degree(self) -> int:
+        """deg u."""
+        return len(self.u) - 1
+
+
+Place = RationalPlace | MumfordPlace | ClosedPlace | FibrePlace
 
 
 @dataclass(frozen=True)

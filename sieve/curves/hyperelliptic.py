@@ -77,6 +77,10 @@ class HyperellipticCurve:
         if len(self.h) > self.genus + 2 or len(self.f) > 2 * self.genus + 3:
             raise ValueError("deg h must be at most g + 1 and deg f at most 2 g + 2")
         self.square_form: Coefficients = tuple(int(c) for c in square.coeffs())
+        #: F(x, y, 1) by powers of y, weighted homogeneous of degree 2 g + 2 for the weights 1, g + 1, 1
+        self.rows: tuple[Coefficients, ...] = (tuple(-c for c in self.f), self.h, (1,))
+        self.weight, self.degree = self.genus + 1, 2 * self.genus + 2
+        self.variables = ("x", "y", "z")
 
     @staticmethod
     def from_rational(

@@ -372,6 +372,15 @@ def parse_polynomial(text: str, variables: Sequence[str], origin: Origin) -> Pol
     return result
 
 
+def names_in(text: str, origin: Origin) -> tuple[str, ...]:
+    """The different names in a text, in the order in which they occur; errors as for `parse_polynomial`.
+
+    >>> names_in("u^3*v = w^4 - u^4", Origin("here"))
+    ('u', 'v', 'w')
+    """
+    return tuple(dict.fromkeys(token.text for token in _tokens(text, origin) if token.kind == "name"))
+
+
 def parse_equation(text: str, variables: Sequence[str], origin: Origin) -> Polynomial:
     """An equation, as left side minus right side.
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 from sieve.engine.algebraic import AlgebraicPoint, recognise_algebraic
 from sieve.engine.prime_hunt import Hunt
 from sieve.local.chabauty import LocatedCandidate
@@ -26,7 +26,7 @@ class Explanation:
     point: AlgebraicPoint | None = None
 
 
-def explain(curve: HyperellipticCurve, prime: int, candidate: LocatedCandidate, hunt: Hunt | None, *,
+def explain(curve: Curve, prime: int, candidate: LocatedCandidate, hunt: Hunt | None, *,
             bound: int, ells: Sequence[int], why_not: str = "", following: int | None = None) -> Explanation:
     """The first cause that applies, in the order of `Explanation`.
 

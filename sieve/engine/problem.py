@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from sieve.curves.divisors import Divisor, Point
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 
 
 @dataclass(frozen=True)
@@ -17,11 +17,12 @@ class Problem:
     by the differences of the known points, and by
     `torsion`, is computed); `torsion`, pairs (claimed order, divisor of degree 0); `known_points`,
     normalised, distinct; `rank`, the claimed rank of J(Q), with its source; `index_prime_to`, primes that
-    do not divide [J(Q) : G] on the user's word, with the source.
+    do not divide [J(Q) : G] on the user's word, with the source; `integral`, whether the integral points of the
+    affine equation are asked for, and not all rational points.
     """
 
     name: str
-    curve: HyperellipticCurve
+    curve: Curve
     base: Divisor
     generators: tuple[Divisor, ...]
     torsion: tuple[tuple[int, Divisor], ...]
@@ -31,3 +32,4 @@ class Problem:
     index_prime_to: tuple[int, ...] = ()
     index_source: str = ""
     from_known_points: bool = False
+    integral: bool = False

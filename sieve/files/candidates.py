@@ -6,15 +6,24 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from fractions import Fraction
 from pathlib import Path
 from typing import Literal
 
-from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.curves.notation import Origin, ParsedPoint, parse_padic, parse_padic_point, quote
+from sieve.curves.protocol import Curve
 from sieve.errors import NotSupported
 from sieve.exact.padic_number import PadicNumber, valuation
 from sieve.files.case import check_coordinates, check_format, is_prime
+from sieve.files.coordinates import (
+    PadicPoint,
+    chart_coordinates,
+    form_value,
+    nonzero_text,
+    residue_value,
+    scaled,
+    weighted,
+    zeros_text,
+)
 from sieve.files.reading import Table, as_table, check_integer, describe, read_json
 
 FORMAT = "sieve-candidates/1"
@@ -100,7 +109,7 @@ def load_candidates(path: str | Path) -> CandidateFile:
 
 
 def check_candidates(
-    file: CandidateFile, curve: HyperellipticCurve, rank: int, torsion_orders: tuple[int, ...]
+    file: CandidateFile, curve: Curve, rank: int, torsion_orders: tuple[int, ...]
 ) -> None:
     """Compare a candidate file with its case.
 
@@ -123,87 +132,61 @@ def check_candidates(
             _check_counts(candidate, rank, torsion_orders)
 
 
-def check_on_curve(curve: HyperellipticCurve, candidate: Candidate) -> None:
+def check_on_curve(curve: Curve, candidate: Candidate) -> None:
     """Refuse a candidate point that is not on the curve modulo its known digits."""
     model_coordinates(curve, candidate)
 
 
-def model_coordinates(
-    curve: HyperellipticCurve, candidate: Candidate
-) -> tuple[PadicNumber, PadicNumber, PadicNumber]:
+def model_coordinates(curve: Curve, candidate: Candidate) -> PadicPoint:
     """The candidate's point in weighted coordinates of the integral model.
 
-    Returns (X, Y, Z), known at least modulo p, X or Z a unit and both integral.  The unit is 1 to more digits
-    than the others have when the point was given in affine coordinates with x integral.  Raises
-    `InputError` when some residue of the normalised point is not known or when it is not on the curve.
+    Returns (X, Y, Z), known at least modulo p, integral, X or Z (on a plane curve X, Y or Z) a unit.  The unit is
+    1 to more digits than the others have when the point was given in affine coordinates with x integral.
+    Raises `InputError` when some residue of the normalised point is not known or when it is not on the curve.
     """
     if candidate.point is None:
         raise candidate.origin.error("no point", "a candidate given by a point")
-    x, y, z = _weighted(candidate.point, curve.genus)
-    y = y * curve.y_scale
+    weight = curve.weight
+    x, y, z = weighted(candidate.point, weight)
     origin = candidate.origin.at("point", ".")
-    x, y, z = _scaled(curve.genus, x, y, z, min(x.valuation, z.valuation))
-    if not any(c.digits > 0 and c.valuation == 0 for c in (x, z)) or min(c.precision for c in (x, y, z)) < 1:
+    y = y * curve.y_scale
+    charts = chart_coordinates(curve)
+    if all((x, y, z)[i].is_zero for i in charts):
+        found = "X, Y and Z" if len(charts) == 3 else "X and Z"
+        raise origin.error(f"{found} that are zero to the known digits", nonzero_text(curve))
+    point = scaled(weight, (x, y, z), min((x, y, z)[i].valuation for i in charts))
+    units = [point[i] for i in charts]
+    if not any(c.digits > 0 and c.valuation == 0 for c in units) or min(c.precision for c in point) < 1:
         found = "a point of which no residue modulo the prime is known"
-        raise origin.error(found, "coordinates, X or Z nonzero, with more digits")
-    value = y * y + _form(curve.h, curve.genus + 1, x, z) * y - _form(curve.f, 2 * curve.genus + 2, x, z)
-    if not value.is_zero:
-        found = f"a point that is not on the curve (the equation has valuation {value.valuation})"
-        raise origin.error(found, f"agreement modulo {value.prime}^{value.precision}")
-    return x, y, z
+        raise origin.error(found, f"coordinates, {nonzero_text(curve)}, with more digits")
+    outcome = form_value(curve, point)
+    if not outcome.is_zero:
+        found = f"a point that is not on the curve (the equation has valuation {outcome.valuation})"
+        raise origin.error(found, f"agreement modulo {outcome.prime}^{outcome.precision}")
+    return point
 
 
-def disc_residues(curve: HyperellipticCurve, candidate: Candidate) -> tuple[int, int, int]:
+def disc_residues(curve: Curve, candidate: Candidate) -> tuple[int, int, int]:
     """The point modulo p that names the candidate's residue disc, in the integral model.
 
-    Returns (x, y, 1) or (1, y, 0), entries in [0, p).  Raises `InputError` when it is not on the curve modulo
-    p or when X and Z are both zero.
+    Returns (x, y, 1), (1, y, 0) or, on a plane curve, (0, 1, 0), entries in [0, p).  Raises `InputError` when it is
+    not on the curve modulo p or when X and Z (and Y) are zero.
     """
     if candidate.disc is None:
         raise candidate.origin.error("no disc", "a candidate given by a residue disc")
     origin = candidate.origin.at("disc", ".")
-    x, y, z = _weighted(candidate.disc, curve.genus)
+    x, y, z = weighted(candidate.disc, curve.weight)
     p = x.prime
-    a, b, c = x.residue(1), (y * curve.y_scale).residue(1), z.residue(1)
-    if a == c == 0:
-        raise origin.error("X = Z = 0", f"X or Z nonzero modulo {p}")
-    unit = pow(c or a, -1, p)
-    a, b, c = a * unit % p, b * pow(unit, curve.genus + 1, p) % p, c * unit % p
-    left = b * b + sum(k * a**i * c ** (curve.genus + 1 - i) for i, k in enumerate(curve.h)) * b
-    right = sum(k * a**i * c ** (2 * curve.genus + 2 - i) for i, k in enumerate(curve.f))
-    if (left - right) % p:
+    residues = [x.residue(1), (y * curve.y_scale).residue(1), z.residue(1)]
+    unit = next((residues[i] for i in chart_coordinates(curve) if residues[i]), 0)
+    if not unit:
+        raise origin.error(zeros_text(curve), f"{nonzero_text(curve)} modulo {p}")
+    inverse = pow(unit, -1, p)
+    a, b, c = residues
+    a, b, c = a * inverse % p, b * pow(inverse, curve.weight, p) % p, c * inverse % p
+    if residue_value(curve, (a, b, c), p):
         raise origin.error(f"a point that is not on the curve modulo {p}", "a point of the reduced curve")
     return a, b, c
-
-
-def _weighted(point: ParsedPoint[PadicNumber], genus: int) -> tuple[PadicNumber, PadicNumber, PadicNumber]:
-    if not point.affine:
-        x, y, z = point.entries
-        return x, y, z
-    x, y = point.entries
-    # exact 1, to more digits than any operation on x and y can use
-    digits = max(1, *(c.precision + abs(c.valuation) for c in (x, y))) + (genus + 1) * abs(x.valuation)
-    return x, y, PadicNumber.padic(x.prime, 1, 0, digits)
-
-
-def _scaled(
-    genus: int, x: PadicNumber, y: PadicNumber, z: PadicNumber, low: int
-) -> tuple[PadicNumber, PadicNumber, PadicNumber]:
-    unit = Fraction(x.prime) ** -low
-    return x * unit, y * unit ** (genus + 1), z * unit
-
-
-def _form(coefficients: tuple[int, ...], degree: int, x: PadicNumber, z: PadicNumber) -> PadicNumber:
-    one = PadicNumber.padic(x.prime, 1, 0, max(x.precision, z.precision))
-    powers_x, powers_z = [one], [one]
-    for _ in range(degree):
-        powers_x.append(powers_x[-1] * x)
-        powers_z.append(powers_z[-1] * z)
-    total = PadicNumber.zero(x.prime, max(x.precision, z.precision))
-    for i, coefficient in enumerate(coefficients):
-        if coefficient:
-            total = total + coefficient * powers_x[i] * powers_z[degree - i]
-    return total
 
 
 def _check_counts(candidate: Candidate, rank: int, torsion_orders: tuple[int, ...]) -> None:
@@ -252,8 +235,6 @@ def _point(table: Table, prime: int, precision: int) -> ParsedPoint[PadicNumber]
     for name, value in zip("xy" if point.affine else "XYZ", point.entries, strict=True):
         if value.is_zero and value.precision < 1:
             raise origin.error(f"{name} = {value}, of which no digit is known", "at least one digit")
-    if not point.affine and point.entries[0].is_zero and point.entries[2].is_zero:
-        raise origin.error("X and Z that are zero to the known digits", "X or Z nonzero")
     return point
 
 

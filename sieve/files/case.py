@@ -15,20 +15,20 @@ import flint
 from sieve.curves.notation import (
     Origin,
     ParsedPoint,
-    Polynomial,
-    parse_equation,
     parse_point,
     parse_polynomial_point,
     parse_univariate,
     quote,
 )
 from sieve.errors import NotSupported
+from sieve.files.equation import WrittenEquation, read_equation
 from sieve.files.reading import Table, as_table, check_integer, describe, read_toml
 
 FORMAT = "sieve-case/1"
 MAX_RANK = 50
 MAX_MULTIPLICITY = 10**6
 MAX_ORDER = 10**9
+KEYS = ("format", "name", "known_points", "integral", "curve", "field", "jacobian")
 JACOBIAN_KEYS = (
     "rank", "rank_source", "base", "index_prime_to", "index_source", "generators", "generators_from",
     "torsion",
@@ -90,8 +90,8 @@ class WrittenDivisor:
 class Case:
     """The content of a case file.
 
-    Fields: `equation` (left side minus right side in x, y, z) and its text; `base` (one point is a divisor
-    with one term, half a fibre is one whole fibre); `index_prime_to` (sorted primes that do not divide
+    Fields: `equation`; `integral`, whether the integral points of the affine equation are asked for and not all
+    rational points; `base` (one point is a divisor with one term, half a fibre is one whole fibre); `index_prime_to` (sorted primes that do not divide
     [J(Q) : G] on the user's word); `generators` (as many as the rank, or none); `generators_from`
     ("known_points" or None); `torsion` (pairs of an order >= 2 and a divisor).
     """
@@ -99,9 +99,8 @@ class Case:
     path: str
     sha256: str
     name: str
-    equation: Polynomial
-    equation_text: str
-    equation_origin: Origin
+    equation: WrittenEquation
+    integral: bool
     known_points: tuple[WrittenPoint, ...]
     rank: int
     rank_source: str
@@ -127,11 +126,12 @@ def load_case(path: str | Path) -> Case:
     document = read_toml(path)
     table = document.table
     check_format(table, FORMAT)
-    table.restrict(["format", "name", "known_points", "curve", "field", "jacobian"])
+    table.restrict(KEYS)
     name = _name(table)
     if table.has("field"):
         _refuse_field(table)
-    text, equation, origin = _equation(table)
+    equation = read_equation(table)
+    integral = table.has("integral") and table.boolean("integral")
     points = table.array("known_points", "a list of points", [])
     known = tuple(_point(entry, table.at(f"known_points no. {i}")) for i, entry in enumerate(points, 1))
 
@@ -153,7 +153,7 @@ def load_case(path: str | Path) -> Case:
     )
     source = _generators_from(jacobian, rank, len(generators))
     return Case(
-        str(path), document.sha256, name, equation, text, origin, known, rank, rank_source, base, index,
+        str(path), document.sha256, name, equation, integral, known, rank, rank_source, base, index,
         index_source, generators, source, torsion,
     )  # fmt: skip
 
@@ -163,9 +163,8 @@ class Sketch:
     """The part of a case file that says what the curve is; the rank and its source where they are given."""
 
     name: str
-    equation: Polynomial
-    equation_text: str
-    equation_origin: Origin
+    equation: WrittenEquation
+    integral: bool
     rank: int | None
     rank_source: str
 
@@ -177,11 +176,12 @@ def load_sketch(path: str | Path) -> Sketch:
     """
     table = read_toml(path).table
     check_format(table, FORMAT)
-    table.restrict(["format", "name", "known_points", "curve", "field", "jacobian"])
+    table.restrict(KEYS)
     name = _name(table)
     if table.has("field"):
         _refuse_field(table)
-    text, equation, origin = _equation(table)
+    equation = read_equation(table)
+    integral = table.has("integral") and table.boolean("integral")
     rank, source = None, ""
     if table.has("jacobian"):
         jacobian = table.table("jacobian", "a table [jacobian]", JACOBIAN_KEYS)
@@ -189,7 +189,7 @@ def load_sketch(path: str | Path) -> Sketch:
             rank = jacobian.integer("rank", 0, MAX_RANK)
         if jacobian.has("rank_source"):
             source = jacobian.text("rank_source", blank=True)
-    return Sketch(name, equation, text, origin, rank, source)
+    return Sketch(name, equation, integral, rank, source)
 
 
 def check_format(table: Table, known: str) -> None:
@@ -224,41 +224,6 @@ def _refuse_field(table: Table) -> None:
     raise NotSupported(origin.file, origin.place, "a number field", "a curve over Q in this version")
 
 
-def _equation(table: Table) -> tuple[str, Polynomial, Origin]:
-    curve = table.table("curve", "a table [curve]", ["equation", "equations", "variables"])
-    if curve.has("equations") or curve.has("variables"):
-        if curve.has("equation"):
-            raise curve.origin.error("equation and equations", "one of the two")
-        _refuse_canonical(curve)
-    text, origin = curve.notation("equation", "an equation y^2 + h(x)*y = f(x)")
-    equation = parse_equation(text, ["x", "y", "z"], origin)
-    if any(exponents[2] for exponents in equation):
-        if len({sum(exponents) for exponents in equation}) > 1:
-            raise origin.error("an equation in x, y, z that is not homogeneous", "y^2 + h(x)*y = f(x)")
-        raise NotSupported(
-            origin.file, origin.place, "a plane curve in x, y, z", "y^2 + h(x)*y = f(x) in this version"
-        )
-    return text, equation, origin
-
-
-def _refuse_canonical(curve: Table) -> None:
-    variables = curve.array("variables", "a list of names")
-    for i, name in enumerate(variables, 1):
-        if not isinstance(name, str) or not (name.isascii() and name.isidentifier()):
-            raise curve.at(f"variables no. {i}").error(describe(name), "a name")
-    if len(set(variables)) < max(len(variables), 3):
-        raise curve.at("variables").error(describe(variables), "at least three different names")
-    equations = curve.array("equations", "a list of equations")
-    for i, text in enumerate(equations, 1):
-        place = curve.at(f"equations no. {i}")
-        if not isinstance(text, str):
-            raise place.error(describe(text), "an equation, as a text")
-        parse_equation(text, variables, place)
-    raise NotSupported(
-        curve.origin.file, curve.origin.place, "a canonical model", "y^2 + h(x)*y = f(x) in this version"
-    )
-
-
 def _point(value: object, origin: Origin) -> WrittenPoint:
     if not isinstance(value, str):
         raise origin.error(describe(value), f"{_POINT}, as a text")
@@ -271,7 +236,7 @@ def check_coordinates(point: ParsedPoint[Any], origin: Origin) -> None:
     """Refuse a point that has not three coordinates, or two when they are affine."""
     wanted = 2 if point.affine else 3
     if len(point.entries) != wanted:
-        kind = "affine" if point.affine else "weighted"
+        kind = "affine" if point.affine else "projective"
         raise origin.error(f"{len(point.entries)} coordinates", f"{wanted} {kind} coordinates")
 
 

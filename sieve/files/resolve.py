@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
-from math import gcd
+from math import gcd, lcm
 from pathlib import Path
 
 import flint
@@ -12,19 +12,26 @@ import flint
 from sieve.curves.divisors import Divisor, FibrePlace, Place, Point, RationalPlace
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.curves.notation import Origin, Polynomial, dense, format_univariate, quote
+from sieve.curves.protocol import Curve
+from sieve.errors import NotSupported
 from sieve.files.case import (
+    HALF_FIBRE,
     Case,
+    WrittenClosedPoint,
     WrittenDivisor,
     WrittenFibres,
-    WrittenMumford,
     WrittenPlace,
     WrittenPoint,
     load_case,
 )
+from sieve.files.coordinates import chart_coordinates, nonzero_text, zeros_text
+from sieve.files.equation import WANTED, WrittenEquation
 
-_FORM = "an equation y^2 + h(x)*y = f(x)"
 MAX_DENOMINATOR_BITS = 128
 """Bits of a denominator in an equation: it is factored to find the smallest integral model."""
+MAX_PLANE_DEGREE = 8
+MAX_PLANE_BITS = 2000
+"""Bits of a coefficient of a plane curve, without common factors and denominators."""
 
 
 @dataclass(frozen=True)
@@ -38,7 +45,7 @@ class ResolvedCase:
     """
 
     case: Case
-    curve: HyperellipticCurve
+    curve: Curve
     known_points: tuple[Point, ...]
     base: Divisor
     base_point: Point | None
@@ -49,11 +56,13 @@ class ResolvedCase:
 def resolve(case: Case) -> ResolvedCase:
     """Check a case against its curve.
 
-    Raises `InputError` for an equation that is not hyperelliptic of genus >= 2, a singular curve, a point off
-    the curve, a Mumford pair or closed point that is none, a divisor of the wrong degree or equal to zero,
-    and for fewer known points than `generators_from` needs.
+    Raises `InputError` for an equation of no model, a singular curve or one of genus below 2, a point off
+    the curve, a Mumford pair or closed point that is none, a place of another model, a divisor of the wrong
+    degree or equal to zero, and for fewer known points than `generators_from` needs.
     """
-    curve = hyperelliptic_curve(case.equation, case.equation_origin)
+    curve = curve_of(case.equation)
+    if case.integral:
+        check_integral(curve, case.origin.at("integral"))
     known: dict[Point, None] = {}
     for written in case.known_points:
         known[_rational_point(curve, written)] = None
@@ -78,6 +87,51 @@ def read_case(path: str | Path) -> ResolvedCase:
     return resolve(load_case(path))
 
 
+def curve_of(equation: WrittenEquation) -> Curve:
+    """The curve of an equation, of either model; raises `InputError` and `NotSupported`."""
+    if equation.plane:
+        return plane_curve(equation)
+    return hyperelliptic_curve(equation.polynomial, equation.origin)
+
+
+def check_integral(curve: Curve, origin: Origin) -> None:
+    """Refuse integral points where they are not meaningful: on a plane curve, or with denominators."""
+    if not isinstance(curve, HyperellipticCurve):
+        raise origin.error("integral points of a plane curve", "integral = true for y^2 + h(x)*y = f(x) only")
+    if curve.y_scale != 1:
+        found = "integral points of an equation that is not monic in y with integer coefficients"
+        raise origin.error(found, "y^2 + h(x)*y = f(x) with integer coefficients")
+
+
+def plane_curve(equation: WrittenEquation) -> Curve:
+    """The smooth plane curve of a homogeneous equation with rational coefficients.
+
+    Raises `InputError` when its degree is below 4 or it is singular, `NotSupported` beyond the degrees and
+    sizes of this version.
+    """
+    from sieve.curves.plane import PlaneCurve, SingularPlaneCurve
+
+    origin, degree = equation.origin, equation.degree
+    if degree < 4:
+        raise origin.error(f"a plane curve of degree {degree}", "degree at least 4 (genus at least 2)")
+    if degree > MAX_PLANE_DEGREE:
+        expected = f"degree at most {MAX_PLANE_DEGREE} in this version"
+        raise NotSupported(origin.file, origin.place, f"a plane curve of degree {degree}", expected)
+    denominator = lcm(*(c.denominator for c in equation.polynomial.values()))
+    terms = {
+        (i, j, k): int(c * denominator) for (i, j, k), c in equation.polynomial.items()
+    }
+    content = gcd(*terms.values())
+    terms = {exponents: c // content for exponents, c in terms.items()}
+    if max(c.bit_length() for c in terms.values()) > MAX_PLANE_BITS:
+        raise origin.error("a very large coefficient", f"at most {MAX_PLANE_BITS} bits")
+    try:
+        return PlaneCurve(terms, equation.variables)
+    except SingularPlaneCurve as error:
+        expected = "a smooth plane curve (y^2 = f(x) is written without z)"
+        raise origin.error(f"a singular curve ({error})", expected) from None
+
+
 def hyperelliptic_curve(equation: Polynomial, origin: Origin) -> HyperellipticCurve:
     """The curve c*y^2 + h(x)*y - f(x) = 0, any nonzero rational c, sides in any order.
 
@@ -90,10 +144,10 @@ def hyperelliptic_curve(equation: Polynomial, origin: Origin) -> HyperellipticCu
         by_power.setdefault(exponents[1], {})[exponents] = coefficient
     degree = max(by_power)
     if degree != 2:
-        raise origin.error("an equation without y^2" if degree < 2 else f"a term with y^{degree}", _FORM)
+        raise origin.error("an equation without y^2" if degree < 2 else f"a term with y^{degree}", WANTED)
     leading = dense(by_power[2])
     if len(leading) > 1:
-        raise origin.error("a coefficient of y^2 that is not constant", _FORM)
+        raise origin.error("a coefficient of y^2 that is not constant", WANTED)
     h = [c / leading[0] for c in dense(by_power.get(1, {}))]
     f = [-c / leading[0] for c in dense(by_power.get(0, {}))]
     if max((c.denominator.bit_length() for c in h + f), default=0) > MAX_DENOMINATOR_BITS:
@@ -122,10 +176,10 @@ def _repeated_factor(f: list[Fraction], h: list[Fraction]) -> list[int]:
     return [c // content for c in repeated]
 
 
-def _rational_point(curve: HyperellipticCurve, written: WrittenPoint) -> Point:
+def _rational_point(curve: Curve, written: WrittenPoint) -> Point:
     entries = written.point.entries
-    if not written.point.affine and entries[0] == entries[2] == 0:
-        raise written.origin.error("a point with X = Z = 0", "X or Z nonzero")
+    if not written.point.affine and not any(entries[i] for i in chart_coordinates(curve)):
+        raise written.origin.error(f"a point with {zeros_text(curve)}", nonzero_text(curve))
     try:
         return curve.from_user(*entries)
     except ValueError:
@@ -133,27 +187,33 @@ def _rational_point(curve: HyperellipticCurve, written: WrittenPoint) -> Point:
         raise written.origin.error(found, "a point of the curve") from None
 
 
-def _place(curve: HyperellipticCurve, written: WrittenPlace) -> Place:
+def _place(curve: Curve, written: WrittenPlace) -> Place:
     if isinstance(written, WrittenPoint):
         return RationalPlace(_rational_point(curve, written))
+    if isinstance(written, WrittenClosedPoint):
+        x, y = written.point.entries[:2]
+        z = (Fraction(1),) if written.point.affine else written.point.entries[2]
+        try:
+            return curve.closed_point(written.modulus, x, [curve.y_scale * c for c in y], z)
+        except ValueError as error:
+            raise written.origin.error(f"closed point: {error}", "a closed point of the curve") from None
+    if not isinstance(curve, HyperellipticCurve):
+        name = "fibres" if isinstance(written, WrittenFibres) else "mumford"
+        if isinstance(written, WrittenFibres) and written.half:
+            name = quote(HALF_FIBRE)
+        expected = "a point, or a table with root_of and point"
+        raise written.origin.error(f"{name} on a plane curve", expected)
     if isinstance(written, WrittenFibres):
         return FibrePlace(written.count)
-    if isinstance(written, WrittenMumford):
-        if len(written.w) >= max(len(written.u), 1):
-            raise written.origin.error("mumford with deg w >= deg u", "deg w < deg u")
-        try:
-            return curve.mumford(written.u, [curve.y_scale * c for c in written.w])
-        except ValueError as error:
-            raise written.origin.error(f"mumford: {error}", "a Mumford pair of the curve") from None
-    x, y = written.point.entries[:2]
-    z = (Fraction(1),) if written.point.affine else written.point.entries[2]
+    if len(written.w) >= max(len(written.u), 1):
+        raise written.origin.error("mumford with deg w >= deg u", "deg w < deg u")
     try:
-        return curve.closed_point(written.modulus, x, [curve.y_scale * c for c in y], z)
+        return curve.mumford(written.u, [curve.y_scale * c for c in written.w])
     except ValueError as error:
-        raise written.origin.error(f"closed point: {error}", "a closed point of the curve") from None
+        raise written.origin.error(f"mumford: {error}", "a Mumford pair of the curve") from None
 
 
-def _divisor(curve: HyperellipticCurve, written: WrittenDivisor, degree: int) -> Divisor:
+def _divisor(curve: Curve, written: WrittenDivisor, degree: int) -> Divisor:
     divisor = Divisor.of((multiplicity, _place(curve, place)) for multiplicity, place in written.terms)
     if divisor.degree != degree:
         raise written.origin.error(f"a divisor of degree {divisor.degree}", f"degree {degree}")

@@ -19,7 +19,7 @@ from urllib.parse import quote
 import numpy as np
 
 from sieve.curves.divisors import Divisor
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 from sieve.errors import InputError
 from sieve.local.quick_order import QuickOrder
 from sieve.local.records import LocalRecord
@@ -40,7 +40,7 @@ WAIT = 60.0
 T = TypeVar("T")
 
 
-def problem_key(curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor]) -> str:
+def problem_key(curve: Curve, base: Divisor, divisors: Sequence[Divisor]) -> str:
     """A digest of everything a local record depends on but its prime."""
     text = "\n".join([curve.key, repr(base), *map(repr, divisors)])
     return hashlib.sha256(text.encode()).hexdigest()

@@ -16,23 +16,24 @@ from typing import Any
 
 import numpy as np
 
-from sieve.curves.divisors import Divisor, FibrePlace, MumfordPlace, Place, RationalPlace
+from sieve.curves.divisors import ClosedPlace, Divisor, FibrePlace, MumfordPlace, Place, RationalPlace
 from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 from sieve.errors import InputError, SieveError
 from sieve.local.condition import Condition
-from sieve.proof.statement import mumford_places
+from sieve.proof.statement import closed_places
 
 FORMAT = "sieve-proof/1"
 LONGEST_LOG = 400_000_000
 
 _KEYS: dict[str, tuple[str, ...]] = {
-    "header": ("format", "program", "case", "f", "h", "genus", "y_scale"),
-    "group": ("rank", "base", "free", "torsion"),
+    "header": ("format", "program", "case", "equation", "weight", "genus", "y_scale", "variables"),
+    "group": ("rank", "base", "free", "torsion", "integral"),
     "premise": ("id", "statement", "source"),
     "candidate": ("prime", "id", "form"),
-    "local": ("prime", "invariants", "origin", "unit", "base", "define", "close", "mumford", "counts"),
+    "local": ("prime", "invariants", "origin", "unit", "base", "define", "close", "places", "counts"),
     "branch": ("factors", "primes"),
-    "padic": ("prime", "digits", "terms", "sections", "discs", "mumford", "reduction"),
+    "padic": ("prime", "digits", "terms", "sections", "discs", "places", "reduction"),
     "torsion": ("ell", "dimension", "by"),
     "saturated": ("ell", "primes"),
     "fate": ("prime", "id", "verdict"),
@@ -48,17 +49,19 @@ class LogView:
     """What a log says.
 
     Fields: `sha256` and `size` of the file; `lines`, the number of records; `curve`, `base`, `free`,
-    `torsion` (pairs of order and divisor) in model coordinates; the records of the other kinds as they stand.
+    `torsion` (pairs of order and divisor) in model coordinates; `integral`, whether integral points are meant;
+    the records of the other kinds as they stand.
     """
 
     sha256: str
     size: int
     lines: int
     header: Record
-    curve: HyperellipticCurve
+    curve: Curve
     base: Divisor
     free: list[Divisor]
     torsion: list[tuple[int, Divisor]]
+    integral: bool
     records: dict[str, list[Record]]
 
     def of(self, kind: str) -> list[Record]:
@@ -145,15 +148,33 @@ def _record(name: str, number: int, line: str) -> Record:
 
 def _view(digest: str, size: int, lines: int, records: dict[str, list[Record]]) -> LogView:
     header, group = records["header"][0], records["group"][0]
-    curve = HyperellipticCurve(
-        [_int(c) for c in header["f"]], [_int(c) for c in header["h"]], Fraction(header["y_scale"])
-    )
-    free = [_divisor(d) for d in group["free"]]
-    torsion = [(_int(t), _divisor(d)) for t, d in group["torsion"]]
+    curve = _curve(header)
+    if curve.genus != header["genus"] or not isinstance(group["integral"], bool):
+        raise ValueError("genus, integral")
+    free = [_divisor(d, curve.weight) for d in group["free"]]
+    torsion = [(_int(t), _divisor(d, curve.weight)) for t, d in group["torsion"]]
     for fate in records.get("fate", []):
         if fate["verdict"] not in ("eliminated", "rational", "open"):
             raise ValueError(fate["verdict"])
-    return LogView(digest, size, lines, header, curve, _divisor(group["base"]), free, torsion, records)
+    base, integral = _divisor(group["base"], curve.weight), group["integral"]
+    return LogView(digest, size, lines, header, curve, base, free, torsion, integral, records)
+
+
+def _curve(header: Record) -> Curve:
+    rows = [[_int(c) for c in row] for row in header["equation"]]
+    if _int(header["weight"]) == 1:
+        from sieve.curves.plane import PlaneCurve
+
+        x, y, z = (str(name) for name in header["variables"])
+        terms = {}
+        degree = max(i + k for k, row in enumerate(rows) for i, c in enumerate(row) if c)
+        for k, row in enumerate(rows):
+            terms |= {(i, k, degree - i - k): c for i, c in enumerate(row) if c}
+        return PlaneCurve(terms, (x, y, z))
+    f, h, one = rows
+    if one != [1]:
+        raise ValueError("an equation of another form")
+    return HyperellipticCurve([-c for c in f], h, Fraction(header["y_scale"]))
 
 
 def _int(value: Any) -> int:
@@ -162,17 +183,19 @@ def _int(value: Any) -> int:
     return value
 
 
-def _divisor(terms: Any) -> Divisor:
-    return Divisor.of((_int(m), _place(place)) for m, place in terms)
+def _divisor(terms: Any, weight: int) -> Divisor:
+    return Divisor.of((_int(m), _place(place, weight)) for m, place in terms)
 
 
-def _place(place: Any) -> Place:
+def _place(place: Any, weight: int) -> Place:
     if "point" in place:
         x, y, z = (_int(c) for c in place["point"])
         return RationalPlace((x, y, z))
-    if "mumford" in place:
-        u, w = (tuple(Fraction(c) for c in part) for part in place["mumford"])
-        return MumfordPlace(u, w)
+    if "closed" in place:
+        u, x, y, z = (tuple(Fraction(c) for c in part) for part in place["closed"])
+        if weight > 1 and z == (1,) and x == ((0, 1) if len(u) > 2 else (-u[0],)):
+            return MumfordPlace(u, y)
+        return ClosedPlace(u, x, y, z)
     return FibrePlace(_int(place["fibres"]))
 
 
@@ -187,12 +210,11 @@ def _condition(view: LogView, local: Record) -> Condition:
         nothing = np.zeros((0, 0), dtype=np.int64)
         return Condition(f"v = {v}", v, (), ((),) * len(view.generators), nothing)
     logs = _point_logs(view, local)
-    places = mumford_places([view.base, *view.generators])
+    places = closed_places([view.base, *view.generators])
     unit = list(local["unit"])
     closed: dict[Place, list[int]] = {}
-    for k, c, zeros in local["mumford"]:
-        m = _units(view, c)
-        closed[places[k]] = [m * a - sum(logs[i][j] for i in zeros) for j, a in enumerate(unit)]
+    for k, section, zeros in local["places"]:
+        closed[places[k]] = [_int(section[0]) * a - sum(logs[i][j] for i in zeros) for j, a in enumerate(unit)]
 
     def log(divisor: Divisor) -> list[int]:
         total = [0] * len(moduli)
@@ -214,30 +236,31 @@ def _condition(view: LogView, local: Record) -> Condition:
     return Condition(f"v = {v}", v, moduli, tuple(tuple(log(d)) for d in view.generators), allowed)
 
 
-def _units(view: LogView, c: Sequence[int]) -> int:
-    degree = max((i for i, a in enumerate(c) if a), default=0)
-    return max(degree, view.curve.genus + 1)
-
-
 def _point_logs(view: LogView, local: Record) -> list[list[int]]:
     """The classes of all points from the base and the defining sections."""
     curve = view.curve.modulo(local["prime"])
     moduli, unit = local["invariants"], local["unit"]
-    partner = curve.partner
+    orbits: dict[int, list[int]] = {}
+    for i, orbit in enumerate(curve.orbit.tolist()):
+        orbits.setdefault(orbit, []).append(i)
     known: dict[int, list[int]] = {}
 
     def learn(number: int, value: Sequence[int]) -> None:
+        # the class of a point is sign * (class of the first of its orbit) + fibre * U
         known[number] = [a % d for a, d in zip(value, moduli, strict=True)]
-        other = int(partner[number])
-        if other != number:
-            known[other] = [(u - a) % d for u, a, d in zip(unit, value, moduli, strict=True)]
+        sign, fibre = int(curve.sign[number]), int(curve.fibre[number])
+        first = [sign * (a - fibre * u) for a, u in zip(value, unit, strict=True)]
+        for other in orbits[int(curve.orbit[number])]:
+            if other != number:
+                s, f = int(curve.sign[other]), int(curve.fibre[other])
+                known[other] = [(s * a + f * u) % d for a, u, d in zip(first, unit, moduli, strict=True)]
 
     learn(local["origin"], [0] * len(moduli))
     for number, value in local["base"]:
         learn(number, value)
-    for c, zeros in local["define"]:
+    for section, zeros in local["define"]:
         (target,) = [i for i in zeros if i not in known]
-        total = [_units(view, c) * u for u in unit]
+        total = [_int(section[0]) * u for u in unit]
         for i in zeros:
             if i != target:
                 total = [t - a for t, a in zip(total, known[i], strict=True)]

@@ -6,8 +6,8 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
 from sieve.curves.branch import BranchFactors
-from sieve.curves.divisors import Divisor, MumfordPlace
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.divisors import ClosedPlace, Divisor, MumfordPlace
+from sieve.curves.protocol import Curve
 from sieve.engine.fates import Use
 from sieve.engine.plan import Outcome
 from sieve.engine.survivors import Survivor
@@ -33,13 +33,14 @@ class ProofInput:
     generators of the `orders`; `premises`; `lists` with their `decisions`, in the order of the candidates;
     `records` of the usable primes and the `images` of the generators there; `ells`, the allowed primes l,
     `stated` those among them that rest on the user's word; `outcome` and `vectors`, the classes left without
-    candidates (None: not part of the log); `branch`, the factors of 4 f + h^2 where they tell J(Q)[2].
+    candidates (None: not part of the log); `branch`, the factors of the branch polynomial where they tell
+    J(Q)[2]; `integral`, whether integral points of the affine equation are meant.
     """
 
     program: str
     case_name: str
     case_sha256: str
-    curve: HyperellipticCurve
+    curve: Curve
     rank: int
     base: Divisor
     generators: Sequence[Divisor]
@@ -55,20 +56,21 @@ class ProofInput:
     vectors: Sequence[Survivor] = field(default_factory=tuple)
     branch: BranchFactors | None = None
     two_torsion: int | None = None
+    integral: bool = False
 
     @property
     def size(self) -> int:
         """n = r + s."""
         return len(self.generators)
 
-    def places(self) -> list[MumfordPlace]:
-        """The different Mumford places in the order of the `group` record."""
-        return mumford_places([self.base, *self.generators])
+    def places(self) -> list[MumfordPlace | ClosedPlace]:
+        """The different closed places in the order of the `group` record."""
+        return closed_places([self.base, *self.generators])
 
 
-def mumford_places(divisors: Sequence[Divisor]) -> list[MumfordPlace]:
-    """The different Mumford places, in order of first occurrence."""
-    found = [p for d in divisors for _, p in d.terms if isinstance(p, MumfordPlace)]
+def closed_places(divisors: Sequence[Divisor]) -> list[MumfordPlace | ClosedPlace]:
+    """The different places given by a polynomial, in order of first occurrence."""
+    found = [p for d in divisors for _, p in d.terms if isinstance(p, MumfordPlace | ClosedPlace)]
     return list(dict.fromkeys(found))
 
 

@@ -9,9 +9,11 @@ from __future__ import annotations
 import json
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
+from fractions import Fraction
 from typing import Any
 
-from sieve.curves.divisors import Divisor, FibrePlace, MumfordPlace, Place, RationalPlace
+from sieve.curves.divisors import ClosedPlace, Divisor, FibrePlace, MumfordPlace, Place, RationalPlace
+from sieve.curves.search import by_height
 from sieve.engine.verdicts import CandidateList, Decision
 from sieve.errors import InternalError
 from sieve.local.chabauty import LocatedCandidate, useful_digits
@@ -153,10 +155,11 @@ def _header(source: ProofInput) -> Record:
         "format": FORMAT,
         "program": source.program,
         "case": {"name": _text(source.case_name), "sha256": source.case_sha256},
-        "f": list(curve.f),
-        "h": list(curve.h),
+        "equation": [list(row) for row in curve.rows],
+        "weight": curve.weight,
         "genus": curve.genus,
         "y_scale": str(curve.y_scale),
+        "variables": list(curve.variables),
     }
 
 
@@ -168,6 +171,7 @@ def _group(source: ProofInput) -> Record:
         "base": _divisor(source.base),
         "free": [_divisor(d) for d in source.generators[:r]],
         "torsion": [[t, _divisor(d)] for t, d in zip(source.orders, source.generators[r:], strict=True)],
+        "integral": source.integral,
     }
 
 
@@ -178,10 +182,13 @@ def _divisor(divisor: Divisor) -> list[list[Any]]:
 def _place(place: Place) -> dict[str, Any]:
     if isinstance(place, RationalPlace):
         return {"point": list(place.point)}
+    if isinstance(place, FibrePlace):
+        return {"fibres": place.count}
     if isinstance(place, MumfordPlace):
-        return {"mumford": [[str(c) for c in place.u], [str(c) for c in place.w]]}
-    assert isinstance(place, FibrePlace)
-    return {"fibres": place.count}
+        # x = t modulo u
+        x = (Fraction(0), Fraction(1)) if place.degree > 1 else (-place.u[0],)
+        place = ClosedPlace(place.u, x, place.w, (Fraction(1),))
+    return {"closed": [[str(c) for c in part] for part in (place.u, place.x, place.y, place.z)]}
 
 
 def _premise(premise: Any) -> Record:
@@ -268,7 +275,7 @@ def decided_list(lists: Iterable[CandidateList], decisions: Sequence[Decision]) 
 def points_of(listing: CandidateList, decisions: Sequence[Decision]) -> list[tuple[int, int, int]]:
     """The rational points behind the candidates of a list, by height."""
     found = {p for d in decisions if d.prime == listing.place.prime for p in d.points}
-    return sorted(found, key=lambda p: (max(abs(p[0]), abs(p[2])), p))
+    return by_height(listing.place.curve, found)
 
 
 # ---- evidence ------------------------------------------------------------------------------------------

@@ -10,8 +10,9 @@ import re
 from collections.abc import Sequence
 from fractions import Fraction
 
-from sieve.curves.divisors import Divisor, FibrePlace, Point, RationalPlace
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.divisors import ClosedPlace, Divisor, MumfordPlace, Point, RationalPlace
+from sieve.curves.protocol import Curve
+from sieve.files.notation_out import plane_terms
 
 
 def fraction(value: Fraction | int) -> str:
@@ -52,22 +53,45 @@ def polynomial(coefficients: Sequence[Fraction | int], variable: str = "x") -> s
     )
 
 
-def equation(curve: HyperellipticCurve) -> str:
+def equation(curve: Curve) -> str:
     """The equation of the model."""
-    f = polynomial(curve.f)
-    if not curve.h:
+    if curve.weight == 1:
+        return f"{_form(curve)} = 0"
+    f, h = polynomial([-c for c in curve.rows[0]]), polynomial(curve.rows[1])
+    if h == "0":
         return f"y^{{2}} = {f}"
-    h = polynomial(curve.h)
     middle = {"1": "+ y", "-1": "- y"}.get(h, f"+ ({h})\\,y")
     return f"y^{{2}} {middle} = {f}"
 
 
-def rational_point(curve: HyperellipticCurve, point: Point) -> str:
-    """A rational point in the user's coordinates: affine, or (1 : s : 0)."""
+def name(variable: str) -> str:
+    """A variable: one letter, or a letter with an index, or upright.
+
+    >>> name("x"), name("x10"), name("alpha_1")
+    ('x', 'x_{10}', '\\\\mathrm{alpha1}')
+    """
+    found = re.fullmatch(r"([A-Za-z])_?(\d*)", variable)
+    if found is None:
+        return "\\mathrm{" + variable.replace("_", "") + "}"
+    return found[1] + (f"_{{{found[2]}}}" if found[2] else "")
+
+
+def _form(curve: Curve) -> str:
+    names = [name(v) for v in curve.variables]
+    text = ""
+    for c, exponents in plane_terms(curve):
+        monomial = "".join(power(v, e) for v, e in zip(names, exponents, strict=True) if e)
+        size = "" if abs(c) == 1 else str(abs(c))
+        text += ((" - " if c < 0 else " + ") if text else ("-" if c < 0 else "")) + size + monomial
+    return text
+
+
+def rational_point(curve: Curve, point: Point) -> str:
+    """A rational point in the user's coordinates: projective on a plane curve, else affine or (1 : s : 0)."""
     x, y, z = curve.to_user(point)
-    if z == 0:
-        return f"({fraction(x)} : {fraction(y)} : 0)"
-    return f"({fraction(x / z)}, {fraction(y / z ** (curve.genus + 1))})"
+    if curve.weight == 1 or z == 0:
+        return f"({fraction(x)} : {fraction(y)} : {fraction(z)})"
+    return f"({fraction(x / z)}, {fraction(y / z**curve.weight)})"
 
 
 def expansion(value: int, p: int, digits: int) -> str:
@@ -89,19 +113,24 @@ def expansion(value: int, p: int, digits: int) -> str:
     return " + ".join([*terms, f"O({power(str(p), digits)})"])
 
 
-def divisor(curve: HyperellipticCurve, value: Divisor) -> str:
-    """A divisor in the user's coordinates; a Mumford pair as <u, w>, a fibre of x as F."""
+def divisor(curve: Curve, value: Divisor) -> str:
+    """A divisor in the user's coordinates; a Mumford pair as <u, w>, a closed point as <u; (x : y : z)>, a
+    fibre of x as F."""
     parts = []
     for multiplicity, place in value.terms:
         if isinstance(place, RationalPlace):
-            name = rational_point(curve, place.point)
-        elif isinstance(place, FibrePlace):
-            multiplicity, name = multiplicity * place.count, "F"
-        else:
+            shown = rational_point(curve, place.point)
+        elif isinstance(place, MumfordPlace):
             w = [c / curve.y_scale for c in place.w]
-            name = f"\\langle {polynomial(place.u)},\\ {polynomial(w)}\\rangle"
+            shown = f"\\langle {polynomial(place.u)},\\ {polynomial(w)}\\rangle"
+        elif isinstance(place, ClosedPlace):
+            y = [c / curve.y_scale for c in place.y]
+            point = " : ".join(polynomial(part, "t") for part in (place.x, y, place.z))
+            shown = f"\\langle {polynomial(place.u, 't')};\\ ({point})\\rangle"
+        else:
+            multiplicity, shown = multiplicity * place.count, "F"
         size = "" if abs(multiplicity) == 1 else f"{abs(multiplicity)}\\,"
-        parts.append(f"{'-' if multiplicity < 0 else '+'} {size}{name}")
+        parts.append(f"{'-' if multiplicity < 0 else '+'} {size}{shown}")
     text = " ".join(parts) or "0"
     return text[2:] if text.startswith("+ ") else text
 

@@ -49,8 +49,8 @@ def report_text(summary: dict[str, Any]) -> str:
     for warning in summary["warnings"]:
         lines += ["", *_wrap(f"Warning: {warning}.", indent="")]
     lines += ["", "The curve", "---------"]
-    lines += [f"  X: {case.equation_text}"]
-    if equation_text(curve).replace(" ", "") != case.equation_text.replace(" ", ""):
+    lines += [f"  X: {case.equation.text}"]
+    if equation_text(curve).replace(" ", "") != case.equation.text.replace(" ", ""):
         lines.append(f"  integral model: {equation_text(curve)}")
     lines.append(f"  genus {curve.genus}, base divisor B = {divisor_text(curve, summary['base'])}")
     rank = len(summary["generators"]) - len(summary["orders"])
