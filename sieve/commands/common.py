@@ -113,7 +113,8 @@ class StoredInvestigation:
         inner = self.investigation
         key = ""
         if self.store is not None:
-            key = problem_key(inner.problem.curve, inner.problem.base, inner.asked)
+            problem = inner.problem
+            key = problem_key(problem.curve, problem.base, inner.asked, problem.integral)
             known = self.store.load(key, [v for v in primes if v not in inner.records])
             for v in sorted(known):
                 inner.add(known[v])

@@ -43,7 +43,7 @@ def make_hunts(investigation: Investigation, lists: Sequence[CandidateList], dec
     """A hunt for every labelled relation with open candidates, with the number of its list."""
     labelled, lists_of = candidate_relations(investigation, lists, ells)
     auxiliary = investigation.relations(ells, bound, primes)
-    known = [c.vector for c in investigation.coordinates.values() if c.denominator == 1]
+    known = [c.vector for c in investigation.sought.values() if c.denominator == 1]
     out = []
     for relation in labelled:
         number = lists_of[relation.name]
@@ -134,7 +134,9 @@ def next_prime(stored: StoredInvestigation, hunts: Sequence[Hunt], ells: Sequenc
             found = ranked(hunts, {v: (order.points, order.orders)})
             if not found or found[0].gain < 0.3:
                 continue
-            record = local_record(problem.curve, problem.base, investigation.asked, v)
+            record = local_record(
+                problem.curve, problem.base, investigation.asked, v, problem.integral
+            )
             if investigation.serves(record):
                 relation = relation_from_condition(record.condition(investigation.images(record)), ells)
                 if any(hunt.expected_gain(relation) > 0.3 for hunt in hunts):

@@ -82,11 +82,16 @@ class Investigation:
         progress = self.progress
         report = None if progress is None else (lambda v: progress("local data", v))
         for record in local_records(
-            self.problem.curve, self.problem.base, self.asked, missing, executor, report
+            self.problem.curve, self.problem.base, self.asked, missing, executor, report, self.problem.integral
         ):
             self.add(record)
             if save is not None:
                 save(record)
+
+    @property
+    def sought(self) -> dict[Point, PointCoordinates]:
+        """The coordinates of the known points in question (see `Problem.asks_for`)."""
+        return {p: c for p, c in self.coordinates.items() if self.problem.asks_for(p)}
 
     @property
     def usable(self) -> list[LocalRecord]:

@@ -33,3 +33,7 @@ class Problem:
     index_source: str = ""
     from_known_points: bool = False
     integral: bool = False
+
+    def asks_for(self, point: Point) -> bool:
+        """Whether a rational point of the curve is one of those in question."""
+        return not self.integral or point[2] == 1

@@ -78,7 +78,7 @@ def match_rational(
     found: Sequence[Point] = (),
     missed: list[tuple[int, Point]] | None = None,
 ) -> dict[tuple[int, str], tuple[Point, ...]]:
-    """The rational points behind the candidates, by (list number, id).
+    """The rational points behind the candidates, by (list number, id); integral ones if those are sought.
 
     Arguments: `found`, rational points that are not among the known ones; `missed` receives (list number,
     point) for those of them that a list misses although it claims to be complete.  Raises `Inconsistent`,
@@ -86,14 +86,14 @@ def match_rational(
     """
     problem = investigation.problem
     points: dict[Point, object] = {}
-    for point in [*problem.known_points, *found]:
+    for point in filter(problem.asks_for, [*problem.known_points, *found]):
         points[point] = investigation.coordinates.get(point)
     matched: dict[tuple[int, str], tuple[Point, ...]] = {}
     for number, listing in enumerate(lists):
         covered: set[Point] = set()
         for candidate in listing.candidates:
             here = matching_points(listing.place, candidate, points, investigation.orders)  # type: ignore[arg-type]
-            here = here or reconstruct(listing.place, candidate)
+            here = here or tuple(filter(problem.asks_for, reconstruct(listing.place, candidate)))
             if here:
                 matched[number, candidate.id] = here
                 covered |= set(here)
@@ -161,7 +161,11 @@ def decide_candidates(
     for number, listing in enumerate(lists):
         for candidate in listing.candidates:
             points = matched.get((number, candidate.id))
-            if points:
+            disc = candidate.disc
+            if investigation.problem.integral and disc is not None and listing.place.at_infinity(disc):
+                reason = "not integral: it lies in a residue disc at infinity"
+                out[number, candidate.id] = Decision(listing.place.prime, candidate.id, "eliminated", reason)
+            elif points:
                 out[number, candidate.id] = _rational(listing, candidate, points, known)
             elif listing.blocked and candidate.kind != "coefficients":
                 out[number, candidate.id] = Decision(
@@ -169,7 +173,8 @@ def decide_candidates(
                 )
     for fate in decide(labelled, auxiliary, rational, report=report):
         number = lists_of[fate.condition]
-        out[number, fate.label] = from_fate(lists[number].place.prime, fate)
+        if (number, fate.label) not in out:
+            out[number, fate.label] = from_fate(lists[number].place.prime, fate)
     return out
 
 
@@ -252,8 +257,8 @@ def surviving_classes(
     relations = investigation.relations(ells, bound, primes)
     outcome = sieve_classes(relations, report=report)
     relation = outcome.relation
-    known = [c.vector for c in investigation.coordinates.values() if c.denominator == 1]
-    outside = [c for c in investigation.coordinates.values() if c.denominator > 1]
+    known = [c.vector for c in investigation.sought.values() if c.denominator == 1]
+    outside = [c for c in investigation.sought.values() if c.denominator > 1]
     vectors = short_vectors(relation, investigation.orders) if relation.count <= 5000 else []
     found: Barrier | None = None
     if relation.count and relation.count <= 5000 and not outside:

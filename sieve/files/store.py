@@ -40,9 +40,11 @@ WAIT = 60.0
 T = TypeVar("T")
 
 
-def problem_key(curve: Curve, base: Divisor, divisors: Sequence[Divisor]) -> str:
+def problem_key(
+    curve: Curve, base: Divisor, divisors: Sequence[Divisor], integral: bool = False
+) -> str:
     """A digest of everything a local record depends on but its prime."""
-    text = "\n".join([curve.key, repr(base), *map(repr, divisors)])
+    text = "\n".join([curve.key, repr(base), *map(repr, divisors), *["integral"] * integral])
     return hashlib.sha256(text.encode()).hexdigest()
 
 

@@ -78,6 +78,10 @@ class ChabautyPlace:
         self.classes = [divisor_log(self.group, d) for d in generators]
         self.logs = [self.integrals.log_divisor(d) for d in generators]
 
+    def at_infinity(self, disc: int) -> bool:
+        """Whether a residue disc, by number, lies at infinity: none of its points is integral."""
+        return disc >= self.group.curve.affine_count
+
     # ---- coordinates of points ------------------------------------------------------------------------
 
     def class_of_disc(self, disc: int) -> tuple[int, ...]:

@@ -80,14 +80,15 @@ def expressible(group: PicardGroup, base: Divisor, divisors: Sequence[Divisor]) 
 
 
 def local_record(
-    curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor], v: int
+    curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor], v: int, integral: bool = False
 ) -> LocalRecord:
     """The record at the prime v.
 
     Arguments: `base` of degree 1 or 2, `divisors` of degree 0, v a prime below 2^20.  Never raises for a
     prime that cannot be used: the record says why.  A prime without points gives a record with no allowed
     class.
-    The allowed classes are those of deg(B) P - B.
+    The allowed classes are those of deg(B) P - B, P in X(F_v); with `integral` only affine P count, to which
+    every integral point of the affine model reduces.
     """
     try:
         reduced = curve.modulo(v)
@@ -101,19 +102,23 @@ def local_record(
     except (BadReduction, Uncertified) as error:
         return _skip(v, error.reason)
     moduli = np.array(group.invariants, dtype=np.int64)
+    # affine points come first
+    logs = group.point_logs[: reduced.affine_count] if integral else group.point_logs
     allowed = (
-        np.unique((base.degree * group.point_logs - origin) % moduli, axis=0)
+        np.unique((base.degree * logs - origin) % moduli, axis=0)
         if len(moduli)
-        else np.zeros((1, 0), dtype=np.int64)
+        else np.zeros((min(1, len(logs)), 0), dtype=np.int64)
     )
     return LocalRecord(
         v, reduced.count, group.order, group.invariants, images, allowed, group.reason, expressible=shown
     )
 
 
-def _guarded(curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor], v: int) -> LocalRecord:
+def _guarded(
+    curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor], integral: bool, v: int
+) -> LocalRecord:
     try:
-        return local_record(curve, base, divisors, v)
+        return local_record(curve, base, divisors, v, integral)
     except SieveError:
         raise
     except Exception as error:  # name the prime: the traceback of a worker would not
@@ -127,9 +132,10 @@ def local_records(
     primes: Sequence[int],
     executor: Executor | None = None,
     progress: Callable[[int], None] | None = None,
+    integral: bool = False,
 ) -> Iterator[LocalRecord]:
     """Records for the given primes, in their order, through any executor (None: in this process)."""
-    work = partial(_guarded, curve, base, tuple(divisors))
+    work = partial(_guarded, curve, base, tuple(divisors), integral)
     results = map(work, primes) if executor is None else executor.map(work, primes, chunksize=4)
     for record in results:
         if progress is not None:

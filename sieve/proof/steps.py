@@ -115,7 +115,11 @@ def eliminations(steps: Steps) -> dict[tuple[int, str], Elimination]:
     out: dict[tuple[int, str], Elimination] = {}
     for decision in steps.source.decisions:
         fate = decision.fate
-        if decision.verdict != "eliminated" or fate is None:
+        if decision.verdict != "eliminated":
+            continue
+        if fate is None:
+            # a candidate at infinity where integral points are sought
+            out[decision.prime, decision.id] = Elimination("", decision.id, (), frozenset())
             continue
         name, label = fate.condition, fate.label
         if fate.kind == "image":
