@@ -9,6 +9,7 @@ from math import lcm
 
 import flint
 
+from sieve.curves.algebras import characteristic_polynomial, express, fractions_of, rational_poly
 from sieve.curves.divisors import Divisor, FibrePlace, MumfordPlace, Place, Point, RationalPlace
 from sieve.curves.hyperelliptic_mod import ReducedHyperelliptic, smooth_modulo
 from sieve.errors import BadReduction
@@ -61,6 +62,7 @@ class HyperellipticCurve:
     """
 
     kind = "hyperelliptic"
+    variables = ("x", "y", "z")
 
     def __init__(self, f: Sequence[int], h: Sequence[int] = (), y_scale: Fraction = Fraction(1)) -> None:
         self.f: Coefficients = _trim(f)
@@ -77,6 +79,10 @@ class HyperellipticCurve:
         if len(self.h) > self.genus + 2 or len(self.f) > 2 * self.genus + 3:
             raise ValueError("deg h must be at most g + 1 and deg f at most 2 g + 2")
         self.square_form: Coefficients = tuple(int(c) for c in square.coeffs())
+        self.weight: int = self.genus + 1
+        self.degree: int = 2 * self.weight
+        # F(x, y, 1) = sum of rows[k](x) y^k
+        self.rows: tuple[Coefficients, ...] = (tuple(-c for c in self.f), self.h, (1,))
         #: F(x, y, 1) by powers of y, weighted homogeneous of degree 2 g + 2 for the weights 1, g + 1, 1
         self.rows: tuple[Coefficients, ...] = (tuple(-c for c in self.f), self.h, (1,))
         self.weight, self.degree = self.genus + 1, 2 * self.genus + 2
@@ -162,8 +168,7 @@ class HyperellipticCurve:
 
         Raises `ValueError` when u is constant or does not divide w^2 + h w - f.
         """
-        up = flint.fmpq_poly([flint.fmpq(c.numerator, c.denominator) for c in map(Fraction, u)])
-        wp = flint.fmpq_poly([flint.fmpq(c.numerator, c.denominator) for c in map(Fraction, w)])
+        up, wp = rational_poly(u), rational_poly(w)
         if up.degree() < 1:
             raise ValueError("u must have degree at least 1")
         up = up / up.coeffs()[-1]
@@ -171,7 +176,7 @@ class HyperellipticCurve:
         norm = wp * wp + flint.fmpq_poly(list(self.h)) * wp - flint.fmpq_poly(list(self.f))
         if (norm % up).degree() >= 0:
             raise ValueError("u does not divide w^2 + h w - f")
-        return MumfordPlace(_fractions(up), _fractions(wp))
+        return MumfordPlace(fractions_of(up), fractions_of(wp))
 
     def place_of_point(self, point: Point) -> RationalPlace:
         """The place of a rational point."""
@@ -185,11 +190,7 @@ class HyperellipticCurve:
         Raises `ValueError` when the point is not on the curve or when z is a zero divisor but not zero
         modulo `modulus`.
         """
-
-        def poly(c: Sequence[Fraction]) -> flint.fmpq_poly:
-            return flint.fmpq_poly([flint.fmpq(Fraction(a).numerator, Fraction(a).denominator) for a in c])
-
-        m, xp, yp, zp = poly(modulus), poly(x), poly(y), poly(z)
+        m, xp, yp, zp = (rational_poly(c) for c in (modulus, x, y, z))
         degree = m.degree()
         if degree < 1:
             raise ValueError("the polynomial must have degree at least 1")
@@ -222,9 +223,9 @@ class HyperellipticCurve:
 
         if ((b * b + at(h) * b - at(f)) % m).degree() >= 0:
             raise ValueError("not on the curve")
-        charpoly = _characteristic_polynomial(a, m)
+        charpoly = characteristic_polynomial(a, m)
         if charpoly.gcd(charpoly.derivative()).degree() == 0:
-            return MumfordPlace(_fractions(charpoly), _fractions(_express(b, a, m)))
+            return MumfordPlace(fractions_of(charpoly), fractions_of(express(b, a, m)))
         root = charpoly / charpoly.gcd(charpoly.derivative())
         root = root / root.coeffs()[-1]
         if root * root == charpoly:
@@ -302,40 +303,6 @@ class HyperellipticCurve:
     def difference(self, point: Point, base: Divisor) -> Divisor:
         """The divisor deg(B) P - B: P - B for a base divisor of degree 1, 2 P - U for a fibre U."""
         return Divisor.of([(base.degree, RationalPlace(point))]) - base
-
-
-def _fractions(poly: flint.fmpq_poly) -> tuple[Fraction, ...]:
-    return tuple(Fraction(int(c.p), int(c.q)) for c in poly.coeffs())
-
-
-def _multiplication_matrix(a: flint.fmpq_poly, m: flint.fmpq_poly) -> flint.fmpq_mat:
-    n = m.degree()
-    rows = []
-    power = a % m
-    for _ in range(n):
-        coefficients = list(power.coeffs())
-        rows.append(coefficients + [flint.fmpq(0)] * (n - len(coefficients)))
-        power = (power * flint.fmpq_poly([0, 1])) % m
-    return flint.fmpq_mat(n, n, [c for row in rows for c in row])
-
-
-def _characteristic_polynomial(a: flint.fmpq_poly, m: flint.fmpq_poly) -> flint.fmpq_poly:
-    return flint.fmpq_poly(list(_multiplication_matrix(a, m).charpoly().coeffs()))
-
-
-def _express(b: flint.fmpq_poly, a: flint.fmpq_poly, m: flint.fmpq_poly) -> flint.fmpq_poly:
-    """The polynomial w with b = w(a) modulo m, where a generates the algebra Q[t]/m."""
-    n = m.degree()
-    columns, power = [], flint.fmpq_poly([1])
-    for _ in range(n):
-        coefficients = list(power.coeffs())
-        columns.append(coefficients + [flint.fmpq(0)] * (n - len(coefficients)))
-        power = (power * a) % m
-    matrix = flint.fmpq_mat(n, n, [columns[j][i] for i in range(n) for j in range(n)])
-    target = list(b.coeffs())
-    right = flint.fmpq_mat(n, 1, target + [flint.fmpq(0)] * (n - len(target)))
-    solution = matrix.solve(right)
-    return flint.fmpq_poly([solution[i, 0] for i in range(n)])
 
 
 __all__ = ["Coefficients", "HyperellipticCurve", "SingularCurve"]
