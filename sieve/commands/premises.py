@@ -6,7 +6,9 @@ from math import gcd
 from typing import TYPE_CHECKING
 
 from sieve.engine.investigation import Investigation
+from sieve.engine.verdicts import CandidateList
 from sieve.files.result import Premise
+from sieve.local.chabauty import LocatedCandidate
 
 if TYPE_CHECKING:
     from sieve.commands.run import Run
@@ -77,19 +79,31 @@ def _torsion_primes(investigation: Investigation) -> tuple[int, ...]:
 def premises_of(run: Run) -> list[Premise]:
     """All premises of a run, in a fixed order."""
     out = hypothesis_premises(run.investigation, run.ells)
-    for file in run.files:
-        if file.complete:
-            among = f"the {len(file.candidates)} candidates at {file.prime}"
-            statement = f"every rational point of X is near one of {among}"
-            out.append(Premise(f"complete at {file.prime}", "assumed", statement, file.source))
-        for candidate in file.candidates:
-            if candidate.at_most is not None:
-                out.append(
-                    Premise(
-                        f"bound in {candidate.id} at {file.prime}",
-                        "assumed",
-                        f"at most {candidate.at_most} rational points are near {candidate.id}",
-                        file.source,
-                    )
-                )
+    kind = "integral" if run.investigation.problem.integral else "rational"
+    for file, listing in zip(run.files, run.lists, strict=True):
+        name = f"complete at {file.prime}"
+        among = f"the {len(file.candidates)} candidates at {file.prime}"
+        statement = f"every {kind} point of X is near one of {among}"
+        if listing.rests_on_claim(run.decisions):
+            out.append(Premise(name, "assumed", statement, file.source))
+        elif listing.proved_complete:
+            discs = listing.covers(run.investigation.problem.integral)
+            how = "they are all residue discs" if discs else "zeros of annihilating integrals are counted"
+            out.append(Premise(name, "proved", f"{statement} ({how})", ""))
+        for c in listing.candidates:
+            if c.at_most is not None:
+                name = f"bound in {c.id} at {file.prime}"
+                statement = f"at most {c.at_most} {kind} points are near {c.id}"
+                if bound_is_proved(run, listing, c):
+                    out.append(Premise(name, "proved", statement, ""))
+                else:
+                    out.append(Premise(name, "assumed", statement, file.source))
     return out
+
+
+def bound_is_proved(run: Run, listing: CandidateList, candidate: LocatedCandidate) -> bool:
+    """Whether the bound on the rational points near a candidate needs no user's word."""
+    points = next((d.points for d in run.decisions
+                   if (d.prime, d.id) == (listing.place.prime, candidate.id)), ())
+    bound = listing.proved_bound(candidate, points)
+    return bound is not None and candidate.at_most is not None and bound <= candidate.at_most

@@ -22,6 +22,7 @@ from sieve.engine.verdicts import (
     Outlook,
     decide_candidates,
     match_rational,
+    prove_list,
     surviving_classes,
 )
 from sieve.errors import BadReduction, InputError, PrecisionLost, Uncertified
@@ -183,8 +184,10 @@ def execute(
         place = chabauty_place(investigation, file.prime, file.precision, file.path)
         lists.append(CandidateList(place, locate(place, file), file.complete, file.source, file.path))
         restrict_to_log(investigation, lists[-1])
+        prove_list(investigation, lists[-1])
     known = set(resolved.known_points)
-    found = [p for p in search_points(resolved.curve, SEARCH_HEIGHT) if p not in known]
+    asked = investigation.problem.asks_for
+    found = [p for p in search_points(resolved.curve, SEARCH_HEIGHT) if p not in known and asked(p)]
     run = Run(resolved, investigation, lists, files, found)
     missed: list[tuple[int, Point]] = []
     matched = match_rational(investigation, lists, found, missed)
@@ -193,10 +196,12 @@ def execute(
             if point not in known and point not in found:
                 found.append(point)
     for point in found:
-        run.warnings.append(f"the rational point {resolved.curve.format_point(point)} is not in the case")
+        kind = "integral" if resolved.case.integral else "rational"
+        run.warnings.append(f"the {kind} point {resolved.curve.format_point(point)} is not in the case")
     for i, point in missed:
         # the claim is refuted: nothing may rest on it
-        lists[i].complete, files[i] = False, replace(files[i], complete=False)
+        lists[i].complete = lists[i].claimed = False
+        files[i] = replace(files[i], complete=False)
         run.warnings.append(
             f"{files[i].path} claims to be complete but misses the rational point "
             f"{resolved.curve.format_point(point)}: it is used as an incomplete list"
@@ -248,32 +253,51 @@ def in_order(lists: Sequence[CandidateList], decisions: Mapping[tuple[int, str],
 
 def statement(run: Run) -> str:
     """The final statement, true under the premises."""
-    curve = run.resolved.curve
+    curve, integral = run.resolved.curve, run.resolved.case.integral
+    all_of_them, kind = ("X(Z)", "integral") if integral else ("X(Q)", "rational")
     if not run.lists:
         if run.outlook is not None and run.outlook.empty:
-            return "X(Q) is empty."
+            return f"{all_of_them} is empty."
         count = run.outlook.outcome.relation.count if run.outlook else 0
         index = run.outlook.outcome.relation.index if run.outlook else 1
         where = f"modulo a subgroup of index {index} of the known group"
-        return f"Every rational point of X has one of {count} classes {where}."
+        return f"Every {kind} point of X has one of {count} classes {where}."
     eliminated = sum(d.verdict == "eliminated" for d in run.decisions)
     left = [d for d in run.decisions if d.verdict == "open"]
     points = rational_points(run)
     shown = ", ".join(curve.format_point(p) for p in points)
     decided = decided_list(run.lists, run.decisions)
     if decided is not None:
-        why = f"(The {decided.place.prime}-adic list is complete and every candidate in it is decided.)"
+        why = f"({reason_of(run, decided, kind)})"
         exact = points_of(decided, run.decisions)
         if not exact:
-            return f"X(Q) is empty. {why}"
+            return f"{all_of_them} is empty. {why}"
         how_many = f"{len(exact)} point" + ("s" if len(exact) > 1 else "")
-        return f"X(Q) has exactly {how_many}: {', '.join(map(curve.format_point, exact))}. {why}"
-    text = f"{eliminated} candidates are proved not to be rational."
+        shown = ", ".join(map(curve.format_point, exact))
+        return f"{all_of_them} has exactly {how_many}: {shown}. {why}"
+    text = f"{eliminated} candidates are proved not to be {kind}."
     if left:
         text += f" {len(left)} stay open."
     if points:
-        text += f" Rational points met: {shown}."
+        text += f" {kind.capitalize()} points met: {shown}."
     return text
+
+
+def reason_of(run: Run, listing: CandidateList, kind: str) -> str:
+    """Why the points of a decided list are all, in one sentence."""
+    p = listing.place.prime
+    if listing.covers(run.resolved.case.integral):
+        affine = "affine " if kind == "integral" else ""
+        text = f"Every {affine}residue disc at {p} without one of them holds no {kind} point"
+        if any(d.verdict == "rational" for d in run.decisions):
+            text += ", each of the others at most one"
+        return f"{text}."
+    if not listing.rests_on_claim(run.decisions):
+        return (
+            f"Every {kind} point is near a candidate at {p}, as counting zeros of annihilating integrals "
+            "proves, and every candidate is decided."
+        )
+    return f"The {p}-adic list is complete and every candidate in it is decided."
 
 
 def rational_points(run: Run) -> list[Point]:
@@ -281,7 +305,7 @@ def rational_points(run: Run) -> list[Point]:
     points = set(run.resolved.known_points) | set(run.found_points)
     for decision in run.decisions:
         points |= set(decision.points)
-    return by_height(run.resolved.curve, points)
+    return by_height(run.resolved.curve, filter(run.investigation.problem.asks_for, points))
 
 
 def result_of(run: Run) -> Result:
@@ -344,7 +368,10 @@ def run_summary(run: Run, result: Result) -> dict[str, object]:
         "orders": run.investigation.orders,
         "coordinates": run.investigation.coordinates,
         "base": run.resolved.base,
-        "lists": [(f.prime, len(f.candidates), f.complete, f.source, f.precision) for f in run.files],
+        "lists": [
+            (f.prime, len(f.candidates), listing.complete, f.source, f.precision)
+            for f, listing in zip(run.files, run.lists, strict=True)
+        ],
         "skipped": [(r.prime, r.skipped) for r in run.investigation.skipped],
         "ells": run.ells,
         "plan": [str(s) for s in run.outlook.outcome.plan.steps] if run.outlook else [],

@@ -81,8 +81,9 @@ class Investigation:
         executor = self.executor if len(missing) > 12 and missing[-1] > 100 else None
         progress = self.progress
         report = None if progress is None else (lambda v: progress("local data", v))
+        problem = self.problem
         for record in local_records(
-            self.problem.curve, self.problem.base, self.asked, missing, executor, report, self.problem.integral
+            problem.curve, problem.base, self.asked, missing, executor, report, problem.integral
         ):
             self.add(record)
             if save is not None:

@@ -17,8 +17,8 @@ class Problem:
     by the differences of the known points, and by
     `torsion`, is computed); `torsion`, pairs (claimed order, divisor of degree 0); `known_points`,
     normalised, distinct; `rank`, the claimed rank of J(Q), with its source; `index_prime_to`, primes that
-    do not divide [J(Q) : G] on the user's word, with the source; `integral`, whether the integral points of the
-    affine equation are asked for, and not all rational points.
+    do not divide [J(Q) : G] on the user's word, with the source; `integral`, whether the integral points of
+    the affine equation are asked for, and not all rational points.
     """
 
     name: str

@@ -13,18 +13,21 @@ from sieve.engine.plan import Outcome, Reporter, sieve_classes
 from sieve.engine.recognise import matching_points, reconstruct
 from sieve.engine.relation import Relation, relation_from_condition
 from sieve.engine.survivors import Barrier, Survivor, barrier, short_vectors
-from sieve.errors import Inconsistent
+from sieve.errors import BadReduction, Inconsistent, PrecisionLost, Uncertified
 from sieve.local.chabauty import ChabautyPlace, LocatedCandidate
 from sieve.local.condition import Condition
+from sieve.local.zero_counts import ZeroProof, zero_proof
 
 VerdictKind = Literal["eliminated", "rational", "open"]
 
 
 @dataclass
 class CandidateList:
-    """The candidates at one Chabauty prime; `complete`: every rational point is claimed to be near one.
+    """The candidates at one Chabauty prime; `complete`: every rational point in question is near one.
 
-    `blocked`: when not empty, why points and discs of this list cannot be eliminated (in words).
+    `blocked`: when not empty, why points and discs of this list cannot be eliminated (in words); `claimed`:
+    the user says that it is complete.  Once `proved_complete`, it needs no claim, but then only `at_most` and
+    `proof` (what annihilating integrals prove) bound the number of rational points near a candidate.
     """
 
     place: ChabautyPlace
@@ -33,12 +36,44 @@ class CandidateList:
     source: str
     name: str
     blocked: str = ""
+    claimed: bool = True
+    proved_complete: bool = False
+    proof: ZeroProof | None = None
+
+    def __post_init__(self) -> None:
+        self.claimed = self.complete
 
     def conditions(self, rank: int, orders: Sequence[int]) -> list[Condition]:
         """The labelled conditions of the candidates that are not blocked."""
         usable = [c for c in self.candidates if not self.blocked or c.kind == "coefficients"]
         whole = self.complete and len(usable) == len(self.candidates)
         return self.place.conditions(usable, rank, orders, whole)
+
+    def covers(self, integral: bool) -> bool:
+        """Whether every residue disc (with `integral` every affine one) is a candidate."""
+        curve = self.place.group.curve
+        discs = {c.disc for c in self.candidates if c.kind == "disc"}
+        return discs.issuperset(range(curve.affine_count if integral else curve.count))
+
+    def proved_bound(self, candidate: LocatedCandidate, points: Sequence[Point] = ()) -> int | None:
+        """What is proved about the number of rational points near a candidate, `points` among them."""
+        found = None if self.proof is None else self.proof.bound(candidate.id)
+        if found is None:
+            return None
+        central = found.central and len(points) == 1
+        if central and self.place.integrals.parameter_of_point(points[0])[0] == 0:
+            return 1
+        return found.at_most
+
+    def rests_on_claim(self, decisions: Sequence[Decision]) -> bool:
+        """Whether the claim to be complete is needed: for that, or for rational points to be alone."""
+        if not self.proved_complete:
+            return self.claimed
+        found = {d.id: d for d in decisions if d.prime == self.place.prime and d.sole}
+        return self.claimed and any(
+            c.at_most != 1 and self.proved_bound(c, found[c.id].points) != 1
+            for c in self.candidates if c.id in found
+        )
 
 
 @dataclass(frozen=True)
@@ -72,6 +107,27 @@ class Outlook:
     empty: bool = field(default=False)
 
 
+def prove_list(investigation: Investigation, listing: CandidateList) -> None:
+    """Find out what can be proved about a list without the user's word: that it is complete, bounds.
+
+    A list that names every residue disc is complete.  For a rank below the genus zeros of annihilating
+    integrals are counted.  Raises `Inconsistent` when the logarithms contradict the rank.
+    """
+    problem, place = investigation.problem, listing.place
+    listing.proved_complete = listing.covers(problem.integral)
+    located = any(c.kind != "coefficients" for c in listing.candidates)
+    if problem.rank < problem.curve.genus and place.prime > 2 and located and not listing.blocked:
+        try:
+            listing.proof = zero_proof(
+                problem.curve, problem.base, investigation.generators[: problem.rank], place.prime,
+                listing.candidates, place.group, problem.integral,
+            )  # fmt: skip
+        except (PrecisionLost, BadReduction, Uncertified):
+            return
+        listing.proved_complete |= listing.proof.complete
+    listing.complete |= listing.proved_complete
+
+
 def match_rational(
     investigation: Investigation,
     lists: Sequence[CandidateList],
@@ -102,7 +158,8 @@ def match_rational(
             for point in points:
                 if point in covered or (unlocated and investigation.coordinates.get(point) is None):
                     continue
-                if missed is not None and point not in problem.known_points:
+                doubtful = missed is not None and point not in problem.known_points
+                if missed is not None and doubtful and not listing.proved_complete:
                     missed.append((number, point))
                     continue
                 shown = problem.curve.format_point(point)
@@ -195,7 +252,11 @@ def _rational(
         notes.append("a whole residue disc without the bound at_most = 1 may hold other rational points")
     if candidate.kind == "coefficients":
         notes.append("other rational points may have coefficients that agree to the digits given")
-    bounded = candidate.at_most == 1 and candidate.kind != "coefficients"
+    if listing.proved_complete and not listing.claimed and not notes:
+        # the multiplicity of a point is part of the claim
+        notes.append("nothing bounds the number of rational points that agree with it")
+    bounded = candidate.kind != "coefficients" and 1 in (
+        candidate.at_most, listing.proved_bound(candidate, points))
     sole = not notes or (bounded and len(points) == 1)
     return Decision(
         listing.place.prime,

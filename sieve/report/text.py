@@ -42,7 +42,8 @@ def report_text(summary: dict[str, Any]) -> str:
     """
     result: Result = summary["result"]
     curve, case = summary["curve"], summary["case"]
-    lines = [f"Rational points: {result.name}", "=" * (17 + len(result.name)), ""]
+    kind = "Integral" if case.integral else "Rational"
+    lines = [f"{kind} points: {result.name}", "=" * (17 + len(result.name)), ""]
     lines += _wrap(result.statement, indent="")
     if summary["stopped"]:
         lines += ["", f"Note: {summary['stopped']}."]
@@ -159,6 +160,8 @@ def _verdict_lines(verdicts: Sequence[Verdict]) -> list[str]:
     for v in verdicts:
         if v.verdict == "eliminated":
             what = "v = " + ", ".join(map(str, v.primes)) if v.primes else "not in the image"
+            if v.reason.startswith("not integral"):
+                what = v.reason
         elif v.verdict == "rational":
             what = v.point + ("" if v.given else " (found)") + ("" if v.sole else " (perhaps not alone)")
         else:
