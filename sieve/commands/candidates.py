@@ -213,7 +213,26 @@ def _point_text(curve: Curve, zeros: ChabautyZeros, candidate: LocatedCandidate)
     entries = [str(PadicNumber.padic(p, c, 0, n)) for c in (x, y, z)]
     if z == 1:
         return f"({entries[0]}, {entries[1]})"
-    return f"(1 : {entries[1]} : {entries[2]})"
+    # in normal form another coordinate is exactly 1
+    entries[0 if x == 1 else 1] = "1"
+    return f"({' : '.join(entries)})"
+
+
+def differential_text(curve: Curve, coefficients: Sequence[int]) -> str:
+    """A regular differential, coefficients on the basis of the model, in affine coordinates."""
+    top = curve.degree - curve.weight - 2
+    basis = [(i, k) for k in range(len(curve.rows)) for i in range(top - curve.weight * k + 1)]
+    x, y, z = curve.variables
+    if curve.weight == 1:
+        below, x, y = f"dX/F_Y (X = {x}/{z}, Y = {y}/{z})", "X", "Y"
+    else:
+        below = "dx/(2y + h)"
+    terms = []
+    for c, (i, k) in zip(coefficients, basis, strict=True):
+        if c:
+            powers = [name if e == 1 else f"{name}^{e}" for name, e in ((x, i), (y, k)) if e]
+            terms.append("*".join([str(c), *powers]))
+    return f"({' + '.join(terms) or '0'}) {below}"
 
 
 def candidate_document(search: CandidateSearch) -> dict[str, Any]:
@@ -284,8 +303,7 @@ def text(search: CandidateSearch) -> str:
     lines.append(f"p = {p}, {zeros.digits} digits, {count} annihilating differential{'s' * (count != 1)}:")
     for a in zeros.annihilators:
         known = "exactly" if a.exact else f"modulo {p}^{a.precision}"
-        terms = " + ".join(f"{c}*x^{j}" for j, c in enumerate(a.coefficients) if c)
-        lines.append(f"  ({terms}) dx/(2y + h), {known}")
+        lines.append(f"  {differential_text(curve, a.coefficients)}, {known}")
     lines += ["", "Residue discs: zeros over the algebraic closure with |t| <= 1/p, candidates over Q_p"]
     names = iter(zeros.candidates())
     for d in zeros.discs:

@@ -67,19 +67,28 @@ def _toml(value: Any) -> str:
     return json.dumps(value, ensure_ascii=False)
 
 
+def _variables(sketch: Sketch) -> list[str]:
+    """The order of the variables of a plane curve, where it is not the usual one."""
+    names = list(sketch.equation.variables)
+    return [f"variables = {_toml(names)}"] if names != ["x", "y", "z"] else []
+
+
 def text(done: Proposed) -> str:
     """A case file; comments say what is missing and what the user must supply."""
     sketch, proposal, curve = done.sketch, done.proposal, done.curve
     found = len(proposal.generators)
     rank = found if sketch.rank is None else sketch.rank
+    where = "lines" if curve.weight == 1 else "y = c(x)/d"
     lines = [
-        f"# Proposed from a search for closed points on y = c(x)/d with coefficients up to {proposal.size}.",
+        f"# Proposed from a search for closed points on {where} with coefficients up to {proposal.size}.",
         f'format = "{FORMAT}"',
         f"name = {_toml(sketch.name)}",
         f"known_points = {_toml([curve.format_point(p) for p in proposal.points])}",
+        *(["integral = true"] if sketch.integral else []),
         "",
         "[curve]",
         f"equation = {_toml(sketch.equation.text)}",
+        *_variables(sketch),
         "",
         "[jacobian]",
     ]

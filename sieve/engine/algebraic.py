@@ -2,8 +2,9 @@
 
 The zeros of a Chabauty function often are points over a quadratic or another small field (common practice:
 they, or a multiple of their classes, lie in the closure of J(Q), so that no sieve can exclude them).  A short
-integer polynomial that vanishes at x modulo p^n is a guess; that 4 f + h^2 is a square in the field it
-defines, with the root that the candidate has, is checked exactly.
+integer polynomial that vanishes at x modulo p^n is a guess.  On y^2 + h y = f, that 4 f + h^2 is a square in the
+field it defines, with the root that the candidate has, is checked exactly; on a plane curve the coordinates are
+guessed as elements of the field and the equation is checked exactly.
 """
 
 from __future__ import annotations
@@ -15,7 +16,7 @@ from math import isqrt
 
 import flint
 
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 from sieve.exact.padic_number import PadicNumber
 
 LARGEST_DEGREE = 4
@@ -31,13 +32,15 @@ class AlgebraicPoint:
 
     `minimal`: integer coefficients of an irreducible polynomial, low degree first; `y`: rational coefficients
     of y as a polynomial in t.  `inverted`: the point is (1/t, y) and not (t, y).  Where x is rational, t is
-    the root of y^2 + h y = f and `x` is set.
+    the root of y^2 + h y = f and `x` is set.  On a plane curve `entries` are the projective coordinates as
+    polynomials in t, and y is the second of them.
     """
 
     minimal: tuple[int, ...]
     y: tuple[Fraction, ...]
     inverted: bool = False
     x: Fraction | None = None
+    entries: tuple[tuple[Fraction, ...], ...] = ()
 
     @property
     def degree(self) -> int:
@@ -45,8 +48,11 @@ class AlgebraicPoint:
         return len(self.minimal) - 1
 
     def __str__(self) -> str:
+        field = f"with {_written(tuple(map(Fraction, self.minimal)))} = 0"
+        if self.entries:
+            return f"({' : '.join(map(_written, self.entries))}) {field}"
         x = str(self.x) if self.x is not None else "1/t" if self.inverted else "t"
-        return f"({x}, {_written(self.y)}) with {_written(tuple(map(Fraction, self.minimal)))} = 0"
+        return f"({x}, {_written(self.y)}) {field}"
 
 
 def _written(coefficients: Sequence[Fraction]) -> str:
@@ -145,14 +151,16 @@ def _rational_root(c: Fraction) -> Fraction | None:
     return Fraction(top, bottom) if exact else None
 
 
-def recognise_algebraic(curve: HyperellipticCurve, prime: int,
+def recognise_algebraic(curve: Curve, prime: int,
                         coordinates: tuple[PadicNumber, PadicNumber, PadicNumber]) -> AlgebraicPoint | None:
     """The algebraic point of degree 2 to 4 that a p-adic point agrees with to all its digits, if one of small
     height is found.
 
-    Arguments: weighted p-adic coordinates of the model with Z = 1, or X = 1 and p | Z.  Rational points are
-    not looked for.
+    Arguments: weighted p-adic coordinates of the model with Z = 1, or X = 1 and p | Z (on a plane curve: with
+    one of them a unit).  Rational points are not looked for.
     """
+    if curve.weight == 1:
+        return _on_plane_curve(curve, prime, coordinates)
     x, y, z = coordinates
     infinite = z.is_zero or z.valuation > 0
     value = z if infinite else x
@@ -160,7 +168,8 @@ def recognise_algebraic(curve: HyperellipticCurve, prime: int,
         return None
     digits = min(value.precision, y.precision)
     modulus = prime**digits
-    chart = _chart(curve.f, 2 * curve.genus + 2, infinite), _chart(curve.h, curve.genus + 1, infinite)
+    f, h = _f_and_h(curve)
+    chart = _chart(f, 2 * curve.genus + 2, infinite), _chart(h, curve.genus + 1, infinite)
     root = value.residue(digits)
     target = y.residue(digits) if y.valuation >= 0 else None
     if target is None:
@@ -175,19 +184,24 @@ def recognise_algebraic(curve: HyperellipticCurve, prime: int,
     return None
 
 
+def _f_and_h(curve: Curve) -> tuple[list[int], list[int]]:
+    return [-c for c in curve.rows[0]], list(curve.rows[1])
+
+
 def _chart(coefficients: Sequence[int], degree: int, infinite: bool) -> flint.fmpq_poly:
     full = list(coefficients) + [0] * (degree + 1 - len(coefficients))
     return flint.fmpq_poly(full[::-1] if infinite else full)
 
 
-def _over_rational_x(curve: HyperellipticCurve, value: Fraction, infinite: bool) -> AlgebraicPoint | None:
+def _over_rational_x(curve: Curve, value: Fraction, infinite: bool) -> AlgebraicPoint | None:
     """x is rational and y quadratic."""
     if infinite and value == 0:
         return None
     x = 1 / value if infinite else value
     at = flint.fmpq(x.numerator, x.denominator)
-    f, h = flint.fmpq_poly(list(curve.f))(at), flint.fmpq_poly([0, *curve.h])(at) / at if x else flint.fmpq(
-        (list(curve.h) or [0])[0])
+    f_form, h_form = _f_and_h(curve)
+    f = flint.fmpq_poly(f_form)(at)
+    h = flint.fmpq_poly([0, *h_form])(at) / at if x else flint.fmpq((h_form or [0])[0])
     # t = user's y = model y / scale
     scale = flint.fmpq(curve.y_scale.numerator, curve.y_scale.denominator)
     poly = flint.fmpq_poly([-f / scale**2, h / scale, 1])
@@ -198,7 +212,7 @@ def _over_rational_x(curve: HyperellipticCurve, value: Fraction, infinite: bool)
     return AlgebraicPoint(tuple(int(c) for c in factors[0][0].coeffs()), (Fraction(0), Fraction(1)), x=x)
 
 
-def _over_field(curve: HyperellipticCurve, prime: int, chart: tuple[flint.fmpq_poly, flint.fmpq_poly],
+def _over_field(curve: Curve, prime: int, chart: tuple[flint.fmpq_poly, flint.fmpq_poly],
                 minimal: tuple[int, ...], root: int, target: int, modulus: int,
                 infinite: bool) -> AlgebraicPoint | None:
     f, h = chart
@@ -225,6 +239,64 @@ def _over_field(curve: HyperellipticCurve, prime: int, chart: tuple[flint.fmpq_p
             shown = tuple(Fraction(int(c.p), int(c.q)) / scale for c in y.coeffs())
             return AlgebraicPoint(minimal, shown or (Fraction(0),), infinite)
     return None
+
+
+# ---- plane curves ----------------------------------------------------------------------------------------
+
+
+def _on_plane_curve(curve: Curve, prime: int,
+                    coordinates: tuple[PadicNumber, PadicNumber, PadicNumber]) -> AlgebraicPoint | None:
+    one = next((i for i in (2, 0, 1) if coordinates[i].digits > 0 and coordinates[i].valuation == 0), None)
+    if one is None:
+        return None
+    inverse = coordinates[one].inverse()
+    a, b = (coordinates[i] * inverse for i in range(3) if i != one)
+    digits = min(a.precision, b.precision)
+    modulus = prime**digits
+    first, second = a.residue(digits), b.residue(digits)
+    for t in (first, second, (first + second) % modulus):
+        for degree in range(2, LARGEST_DEGREE + 1):
+            minimal = small_polynomial(t, modulus, degree)
+            if minimal is None:
+                continue
+            pair = [_element(value, t, prime, modulus, degree) for value in (first, second)]
+            if pair[0] is None or pair[1] is None:
+                break
+            entries = [pair[0], pair[1]]
+            entries.insert(one, (Fraction(1),))
+            if _vanishes(curve, entries, minimal):
+                return AlgebraicPoint(minimal, entries[1], entries=tuple(entries))
+            break
+    return None
+
+
+def _element(value: int, t: int, prime: int, modulus: int, degree: int) -> tuple[Fraction, ...] | None:
+    """The number that agrees with `value` modulo `modulus`, as a short polynomial in t of degree < `degree`."""
+    rows = [[modulus] + [0] * degree]
+    for k in range(1, degree + 1):
+        power = pow(t, k, modulus) if k < degree else value
+        rows.append([-power] + [int(j == k) for j in range(1, degree + 1)])
+    reduced = flint.fmpz_mat(rows).lll()
+    found = [int(reduced[0, j]) for j in range(degree + 1)]
+    height = max(map(abs, found))
+    if found[degree] % prime == 0 or CHANCE[degree] * (2 * height + 1) ** (degree + 1) > modulus:
+        return None
+    out = [Fraction(-c, found[degree]) for c in found[:degree]]
+    while len(out) > 1 and out[-1] == 0:
+        out.pop()
+    return tuple(out)
+
+
+def _vanishes(curve: Curve, entries: Sequence[Sequence[Fraction]], minimal: Sequence[int]) -> bool:
+    """Is the point with these coordinates in Q[t]/(minimal) on the plane curve?"""
+    m = flint.fmpq_poly(list(minimal))
+    x, y, z = (flint.fmpq_poly([flint.fmpq(c.numerator, c.denominator) for c in e]) for e in entries)
+    total = flint.fmpq_poly([0])
+    for k, row in enumerate(curve.rows):
+        for i, c in enumerate(row):
+            if c:
+                total = (total + c * x**i * y**k * z ** (curve.degree - i - k)) % m
+    return not total.coeffs()
 
 
 __all__ = ["AlgebraicPoint", "recognise_algebraic", "small_polynomial"]

@@ -14,11 +14,13 @@ from itertools import combinations
 from flint import fmpz_mat
 
 from sieve.curves.base_search import base_from, closed_points, difference_from
-from sieve.curves.divisors import Divisor, FibrePlace, Place, Point, RationalPlace
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.divisors import ClosedPlace, Divisor, FibrePlace, MumfordPlace, Place, Point, RationalPlace
+from sieve.curves.line_search import line_places
+from sieve.curves.protocol import Curve
 from sieve.curves.search import search_points
 from sieve.engine.coordinates import PointBasis, basis_of_classes
 from sieve.engine.hypotheses import saturation
+from sieve.errors import LimitReached
 from sieve.exact.primes import primes_below
 from sieve.local.records import local_records
 
@@ -26,6 +28,8 @@ PRIMES_BELOW = 150
 """Auxiliary primes that tell the relations between the divisors found."""
 USED = 12
 """At most so many places are combined."""
+JOINED = 10
+"""So many rational points are joined by lines."""
 SEARCH_HEIGHT = 200
 SMALL_ELLS = (2, 3, 5)
 """Primes at which the group found should be saturated before the search stops."""
@@ -50,15 +54,16 @@ class Proposal:
 
 
 def propose(
-    curve: HyperellipticCurve, rank: int | None, largest: int = 4, executor: Executor | None = None
+    curve: Curve, rank: int | None, largest: int = 4, executor: Executor | None = None
 ) -> Proposal:
     """Search until `rank` independent divisors that generate a group saturated at small primes are found.
 
-    With rational points a small search comes first; the last one has the bound `largest`.
+    The closed points are those on curves y = c(x)/d or, on a plane curve, on lines.  With rational points a small search comes first; the last one has the bound `largest`.
 
     Arguments: `rank`, the number of generators wanted (None: whatever `largest` gives).  A proposal with
-    fewer generators proves nothing.
+    fewer generators proves nothing.  Raises `LimitReached` for a plane curve without a known rational point.
 
+    >>> from sieve.curves.hyperelliptic import HyperellipticCurve
     >>> proposal = propose(HyperellipticCurve([2, 0, -1, 0, -3, 0, -3]), 1)
     >>> proposal.points, proposal.base.degree, len(proposal.generators), proposal.torsion
     ((), 2, 1, ())
@@ -66,7 +71,9 @@ def propose(
     points = tuple(search_points(curve, SEARCH_HEIGHT))
     base = Divisor.of([(1, FibrePlace(1))])
     size = 1 if points else largest
-    closed = closed_points(curve, size)
+    if curve.weight == 1 and not points:
+        raise LimitReached("the search for a base divisor of degree 1", f"points of height {SEARCH_HEIGHT}")
+    closed = _closed(curve, points, size)
     odd = [p for p in closed if p.degree % 2]
     if points:
         base = Divisor.of([(1, RationalPlace(points[0]))])
@@ -83,11 +90,18 @@ def propose(
         if (reached and not found.unsaturated) or size == largest:
             return found
         size = largest
-        closed = closed_points(curve, size)
+        closed = _closed(curve, points, size)
+
+
+def _closed(curve: Curve, points: Sequence[Point], size: int) -> list[MumfordPlace] | list[ClosedPlace]:
+    """Closed points of small degree, those on lines for a plane curve."""
+    if curve.weight == 1:
+        return line_places(curve, points[:JOINED], size)
+    return closed_points(curve, size)
 
 
 def _basis(
-    curve: HyperellipticCurve, points: tuple[Point, ...], base: Divisor, places: Sequence[Place],
+    curve: Curve, points: tuple[Point, ...], base: Divisor, places: Sequence[Place],
     rank: int | None, size: int, executor: Executor | None,
 ) -> Proposal:
     divisors = []
@@ -95,7 +109,11 @@ def _basis(
         if isinstance(place, RationalPlace):
             divisors.append(curve.difference(place.point, base))
         elif not isinstance(place, FibrePlace):
-            divisor = difference_from(place, base)
+            divisor = (
+                Divisor.of([(1, place)]) - place.degree * base
+                if isinstance(place, ClosedPlace)
+                else difference_from(place, base)
+            )
             if divisor.terms:
                 divisors.append(divisor)
     if not divisors:

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from fractions import Fraction
+from math import lcm
 
 from sieve.curves.divisors import Point
 from sieve.curves.search import points_over
@@ -56,29 +58,39 @@ def matching_points(
 
 
 def reconstruct(place: ChabautyPlace, candidate: LocatedCandidate) -> tuple[Point, ...]:
-    """Rational points from rational reconstruction of the candidate's x-coordinate, verified on the curve.
+    """Rational points from rational reconstruction of the candidate's coordinates, verified on the curve.
 
+    One chart coordinate is enough near points with Z or X nonzero modulo p; near (0 : 1 : 0) both are used.
     Only points that agree with the candidate to all its digits are returned.
     """
     if candidate.kind != "point" or candidate.coordinates is None:
         return ()
-    x, _, z = candidate.coordinates
-    points: list[Point] = []
-    if z.is_zero or (z.digits > 0 and z.valuation > 0):
-        # near infinity: z/x is the small coordinate
-        inverse = _ratio(z, x)
-        value = None if inverse is None else inverse.rational_reconstruction()
+    x, y, z = candidate.coordinates
+    curve, points = place.curve, []
+    if _is_unit(z):
+        value = _rational(x, z)
         if value is not None:
-            points = list(points_over(place.curve, 1 / value if value else None))
+            points = points_over(curve, value)
+    elif _is_unit(x) or curve.weight > 1:
+        # z/x is the small coordinate
+        value = _rational(z, x)
+        if value is not None:
+            points = points_over(curve, 1 / value if value else None)
     else:
-        ratio = _ratio(x, z)
-        value = None if ratio is None else ratio.rational_reconstruction()
-        if value is not None:
-            points = list(points_over(place.curve, value))
+        left, right = _rational(x, y), _rational(z, y)
+        if left is not None and right is not None:
+            scale = lcm(left.denominator, right.denominator)
+            point = (int(left * scale), scale, int(right * scale))
+            if curve.contains(point):
+                points = [curve.normalise(*map(Fraction, point))]
     return matching_points(place, candidate, dict.fromkeys(points), ())
 
 
-def _ratio(a: PadicNumber, b: PadicNumber) -> PadicNumber | None:
-    if b.is_zero or b.valuation > 0:
+def _is_unit(value: PadicNumber) -> bool:
+    return not value.is_zero and value.valuation <= 0
+
+
+def _rational(top: PadicNumber, bottom: PadicNumber) -> Fraction | None:
+    if bottom.is_zero or bottom.valuation > 0:
         return None
-    return a * b.inverse()
+    return (top * bottom.inverse()).rational_reconstruction()
