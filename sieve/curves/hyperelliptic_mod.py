@@ -9,7 +9,6 @@ two conjugate points is a zero, and the order of y - c there equals the order of
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 from functools import cached_property
 
 import flint
@@ -17,21 +16,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 from sieve.curves.divisors import FibrePlace, MumfordPlace, Place, RationalPlace
+from sieve.curves.local_divisors import LocalDivisor
+from sieve.curves.residues import inverse_table
 from sieve.errors import BadReduction, InternalError
 
 HigherPlace = tuple[tuple[int, ...], tuple[int, ...]]
 """A place of degree >= 2 over F_v: (u, w), u monic irreducible, y = w(x); low degree first."""
 
 IntArray = NDArray[np.int64]
-
-
-@dataclass(frozen=True)
-class LocalDivisor:
-    """An effective divisor over F_v: `units` times U plus points (by index) plus places of higher degree."""
-
-    units: int
-    points: tuple[tuple[int, int], ...]
-    places: tuple[tuple[HigherPlace, int], ...] = ()
 
 
 def smooth_modulo(f: Sequence[int], h: Sequence[int], genus: int, v: int) -> bool:
@@ -180,10 +172,7 @@ class ReducedHyperelliptic:
 
     @cached_property
     def _inverse(self) -> IntArray:
-        v = self.prime
-        table = np.zeros(v, dtype=np.int64)
-        table[1:] = _inverse_table(v)
-        return table
+        return inverse_table(self.prime)
 
     @property
     def points_per_section(self) -> int:
@@ -480,16 +469,3 @@ class ReducedHyperelliptic:
                 vanishing = vanishing * self._poly([-a, 1])
             c = c + vanishing * self._poly([int(a) for a in rng.integers(0, v, size - len(values))])
         return c
-
-
-def _inverse_table(v: int) -> IntArray:
-    """Inverses of 1 .. v-1 modulo the prime v, as powers with exponent v - 2, vectorised."""
-    base = np.arange(1, v, dtype=np.int64)
-    result = np.ones_like(base)
-    exponent = v - 2
-    while exponent:
-        if exponent & 1:
-            result = result * base % v
-        base = base * base % v
-        exponent >>= 1
-    return result
