@@ -31,13 +31,15 @@ class BranchFactors:
 def branch_factors(square_form: Sequence[int]) -> BranchFactors | None:
     """The factors of 4 f + h^2 with their evidence, or None where some factor has none.
 
-    Arguments: the squarefree integer polynomial, low degree first.
+    Arguments: the squarefree integer polynomial, low degree first (empty for a model without one: None).
 
     >>> branch_factors([-1, 0, 0, 0, 0, 1]).factors
     ((-1, 1), (1, 1, 1, 1, 1))
     >>> branch_factors([1, 0, 0, 0, 1]) is None
     True
     """
+    if not square_form:
+        return None
     content, found = flint.fmpz_poly(list(square_form)).factor()
     factors = sorted((tuple(int(c) for c in q.coeffs()) for q, _ in found), key=lambda q: (len(q), q))
     primes: set[int] = set()

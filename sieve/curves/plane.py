@@ -107,6 +107,7 @@ class PlaneCurve:
     kind = "plane"
     weight = 1
     y_scale = Fraction(1)
+    square_form: tuple[int, ...] = ()
 
     def __init__(
         self,
