@@ -14,11 +14,11 @@ from itertools import product
 import flint
 
 from sieve.curves.divisors import Divisor, FibrePlace, MumfordPlace
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 
 
 def closed_points(
-    curve: HyperellipticCurve, size: int, denominators: int = 2, degree: int | None = None
+    curve: Curve, size: int, denominators: int = 2, degree: int | None = None
 ) -> list[MumfordPlace]:
     """Closed points of degree at most `degree` (default: g + 1), one of each pair of conjugates.
 
@@ -27,13 +27,14 @@ def closed_points(
     Sorted by degree, then by the size of the coefficients.  Cost: `denominators` * (2 size + 1)^(g + 2)
     factorisations.
 
+    >>> from sieve.curves.hyperelliptic import HyperellipticCurve
     >>> curve = HyperellipticCurve([2, 0, 1, 0, -5, 0, -5])
     >>> [place.degree for place in closed_points(curve, 2)]
     [2, 2]
     """
     limit = curve.genus + 1 if degree is None else degree
     found: set[MumfordPlace] = set()
-    f, h = flint.fmpz_poly(list(curve.f)), flint.fmpz_poly(list(curve.h))
+    f, h = flint.fmpz_poly([-c for c in curve.rows[0]]), flint.fmpz_poly(list(curve.rows[1]))
     for d in range(1, denominators + 1):
         for coefficients in _polynomials(curve.genus + 2, size):
             c = flint.fmpz_poly(coefficients)
@@ -62,10 +63,10 @@ def _place(factor: flint.fmpz_poly, c: flint.fmpz_poly, d: int) -> MumfordPlace:
     return MumfordPlace(_fractions(u), _fractions(w))
 
 
-def _conjugate(curve: HyperellipticCurve, place: MumfordPlace) -> MumfordPlace:
+def _conjugate(curve: Curve, place: MumfordPlace) -> MumfordPlace:
     u = flint.fmpq_poly([flint.fmpq(a.numerator, a.denominator) for a in place.u])
     w = flint.fmpq_poly([flint.fmpq(a.numerator, a.denominator) for a in place.w])
-    return MumfordPlace(place.u, _fractions((-w - flint.fmpq_poly(list(curve.h))) % u))
+    return MumfordPlace(place.u, _fractions((-w - flint.fmpq_poly(list(curve.rows[1]))) % u))
 
 
 def _fractions(poly: flint.fmpq_poly) -> tuple[Fraction, ...]:

@@ -83,10 +83,6 @@ class HyperellipticCurve:
         self.degree: int = 2 * self.weight
         # F(x, y, 1) = sum of rows[k](x) y^k
         self.rows: tuple[Coefficients, ...] = (tuple(-c for c in self.f), self.h, (1,))
-        #: F(x, y, 1) by powers of y, weighted homogeneous of degree 2 g + 2 for the weights 1, g + 1, 1
-        self.rows: tuple[Coefficients, ...] = (tuple(-c for c in self.f), self.h, (1,))
-        self.weight, self.degree = self.genus + 1, 2 * self.genus + 2
-        self.variables = ("x", "y", "z")
 
     @staticmethod
     def from_rational(

@@ -8,6 +8,7 @@ points) and `Disc` (centres, parameters, expansions at p).  `HyperellipticCurve`
 from __future__ import annotations
 
 from collections.abc import Sequence
+from fractions import Fraction
 from typing import Any, Protocol
 
 import numpy as np
@@ -98,9 +99,45 @@ class Disc(Protocol):
 
 
 class Curve(Protocol):
-    """A smooth projective curve of genus >= 2 over Q, given by an integral model."""
+    """A smooth curve of genus >= 2 over Q in a weighted projective plane, given by an integral equation.
+
+    F(X, Y, Z) = 0 is weighted homogeneous of degree `degree` for the weights 1, `weight`, 1; rows[k] holds the
+    coefficients of y^k in F(x, y, 1), low degree first.  The user's y is the model's divided by `y_scale`.
+    """
 
     genus: int
+
+    @property
+    def rows(self) -> tuple[tuple[int, ...], ...]:
+        """The equation."""
+
+    @property
+    def weight(self) -> int:
+        """The weight of Y: 1 for plane curves."""
+
+    @property
+    def degree(self) -> int:
+        """The weighted degree of F."""
+
+    @property
+    def variables(self) -> tuple[str, ...]:
+        """Three names."""
+
+    @property
+    def y_scale(self) -> Fraction:
+        """The model's y over the user's."""
+
+    @property
+    def square_form(self) -> tuple[int, ...]:
+        """4 f + h^2, whose factors tell J[2]; empty for a model without it."""
+
+    @property
+    def bad_primes(self) -> tuple[int, ...]:
+        """The primes at which the model is not smooth, found with bounded effort, see `unfactored`."""
+
+    @property
+    def unfactored(self) -> int:
+        """A number whose prime factors `bad_primes` may lack (1: none; 0: any large prime)."""
 
     @property
     def key(self) -> str:
@@ -108,6 +145,20 @@ class Curve(Protocol):
 
     def contains(self, point: Sequence[int]) -> bool:
         """Is this tuple of integers a point of the curve?"""
+
+    def normalise(self, x: Fraction, y: Fraction, z: Fraction) -> Point:
+        """Normalised integer coordinates of a rational point; raises `ValueError` when it is none."""
+
+    def from_user(self, x: Fraction, y: Fraction, z: Fraction = Fraction(1)) -> Point:
+        """A point in the user's coordinates, normalised; raises `ValueError` when it is none."""
+
+    def to_user(self, point: Point) -> tuple[Fraction, Fraction, Fraction]:
+        """The same point in the user's coordinates."""
+
+    def closed_point(
+        self, modulus: Sequence[Fraction], x: Sequence[Fraction], y: Sequence[Fraction], z: Sequence[Fraction]
+    ) -> Place:
+        """All conjugates of (x(t) : y(t) : z(t)), t a root of `modulus`; raises `ValueError`."""
 
     def format_point(self, point: Point) -> str:
         """The point as interface files write it."""

@@ -69,16 +69,12 @@ def propose(
     ((), 2, 1, ())
     """
     points = tuple(search_points(curve, SEARCH_HEIGHT))
-    base = Divisor.of([(1, FibrePlace(1))])
     size = 1 if points else largest
-    if curve.weight == 1 and not points:
-        raise LimitReached("the search for a base divisor of degree 1", f"points of height {SEARCH_HEIGHT}")
     closed = _closed(curve, points, size)
-    odd = [p for p in closed if p.degree % 2]
     if points:
         base = Divisor.of([(1, RationalPlace(points[0]))])
-    elif odd:
-        base = base_from(odd[0])
+    else:
+        base = _base_without_points(curve, closed)
     while True:
         for used in (USED, 2 * USED):
             places: list[Place] = [RationalPlace(p) for p in points[1:used]]
@@ -93,11 +89,19 @@ def propose(
         closed = _closed(curve, points, size)
 
 
-def _closed(curve: Curve, points: Sequence[Point], size: int) -> list[MumfordPlace] | list[ClosedPlace]:
+def _closed(curve: Curve, points: Sequence[Point], size: int) -> list[MumfordPlace | ClosedPlace]:
     """Closed points of small degree, those on lines for a plane curve."""
     if curve.weight == 1:
-        return line_places(curve, points[:JOINED], size)
-    return closed_points(curve, size)
+        return [*line_places(curve, points[:JOINED], size)]
+    return [*closed_points(curve, size)]
+
+
+def _base_without_points(curve: Curve, closed: Sequence[MumfordPlace | ClosedPlace]) -> Divisor:
+    """A divisor of degree 1 from a closed point of odd degree, or a fibre of the map to the x-line."""
+    if curve.weight == 1:
+        raise LimitReached("the search for a base divisor of degree 1", f"points of height {SEARCH_HEIGHT}")
+    odd = [p for p in closed if isinstance(p, MumfordPlace) and p.degree % 2]
+    return base_from(odd[0]) if odd else Divisor.of([(1, FibrePlace(1))])
 
 
 def _basis(

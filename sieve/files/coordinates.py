@@ -51,9 +51,9 @@ def form_value(curve: Curve, point: PadicPoint) -> PadicNumber:
     prime, precision = point[0].prime, max(c.precision for c in point)
     one = PadicNumber.padic(prime, 1, 0, precision)
     powers = [[one], [one], [one]]
-    for row, c, top in zip(powers, point, (curve.degree, len(curve.rows) - 1, curve.degree), strict=True):
+    for row, entry, top in zip(powers, point, (curve.degree, len(curve.rows) - 1, curve.degree), strict=True):
         for _ in range(top):
-            row.append(row[-1] * c)
+            row.append(row[-1] * entry)
     total = PadicNumber.zero(prime, precision)
     for k, coefficients in enumerate(curve.rows):
         for i, c in enumerate(coefficients):

@@ -12,6 +12,7 @@ import flint
 from sieve.curves.divisors import Divisor, FibrePlace, Place, Point, RationalPlace
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.curves.notation import Origin, Polynomial, dense, format_univariate, quote
+from sieve.curves.plane import PlaneCurve, SingularPlaneCurve
 from sieve.curves.protocol import Curve
 from sieve.errors import NotSupported
 from sieve.files.case import (
@@ -103,14 +104,12 @@ def check_integral(curve: Curve, origin: Origin) -> None:
         raise origin.error(found, "y^2 + h(x)*y = f(x) with integer coefficients")
 
 
-def plane_curve(equation: WrittenEquation) -> Curve:
+def plane_curve(equation: WrittenEquation) -> PlaneCurve:
     """The smooth plane curve of a homogeneous equation with rational coefficients.
 
     Raises `InputError` when its degree is below 4 or it is singular, `NotSupported` beyond the degrees and
     sizes of this version.
     """
-    from sieve.curves.plane import PlaneCurve, SingularPlaneCurve
-
     origin, degree = equation.origin, equation.degree
     if degree < 4:
         raise origin.error(f"a plane curve of degree {degree}", "degree at least 4 (genus at least 2)")

@@ -18,6 +18,7 @@ import numpy as np
 
 from sieve.curves.divisors import ClosedPlace, Divisor, FibrePlace, MumfordPlace, Place, RationalPlace
 from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.plane import PlaneCurve
 from sieve.curves.protocol import Curve
 from sieve.errors import InputError, SieveError
 from sieve.local.condition import Condition
@@ -163,14 +164,8 @@ def _view(digest: str, size: int, lines: int, records: dict[str, list[Record]]) 
 def _curve(header: Record) -> Curve:
     rows = [[_int(c) for c in row] for row in header["equation"]]
     if _int(header["weight"]) == 1:
-        from sieve.curves.plane import PlaneCurve
-
         x, y, z = (str(name) for name in header["variables"])
-        terms = {}
-        degree = max(i + k for k, row in enumerate(rows) for i, c in enumerate(row) if c)
-        for k, row in enumerate(rows):
-            terms |= {(i, k, degree - i - k): c for i, c in enumerate(row) if c}
-        return PlaneCurve(terms, (x, y, z))
+        return PlaneCurve(rows, (x, y, z))
     f, h, one = rows
     if one != [1]:
         raise ValueError("an equation of another form")
@@ -189,11 +184,12 @@ def _divisor(terms: Any, weight: int) -> Divisor:
 
 def _place(place: Any, weight: int) -> Place:
     if "point" in place:
-        x, y, z = (_int(c) for c in place["point"])
-        return RationalPlace((x, y, z))
+        a, b, c = (_int(entry) for entry in place["point"])
+        return RationalPlace((a, b, c))
     if "closed" in place:
-        u, x, y, z = (tuple(Fraction(c) for c in part) for part in place["closed"])
-        if weight > 1 and z == (1,) and x == ((0, 1) if len(u) > 2 else (-u[0],)):
+        u, x, y, z = (tuple(Fraction(entry) for entry in part) for part in place["closed"])
+        parameter = [Fraction(0), Fraction(1)] if len(u) > 2 else [-u[0]]
+        if weight > 1 and list(z) == [1] and list(x) == parameter:
             return MumfordPlace(u, y)
         return ClosedPlace(u, x, y, z)
     return FibrePlace(_int(place["fibres"]))
