@@ -16,7 +16,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from functools import lru_cache
 
-from flint import fmpz, fmpz_mod, fmpz_mod_poly, fmpz_mod_poly_ctx
+from flint import fmpz, fmpz_mat, fmpz_mod, fmpz_mod_poly, fmpz_mod_poly_ctx
 
 from sieve.errors import InternalError
 from sieve.exact.padic_number import valuation
@@ -125,6 +125,49 @@ def lift_factor(poly: fmpz_mod_poly, factor: Sequence[int], prime: int, exponent
         inverted = inverted * (2 - quotient * inverted) % monic
         monic = monic + remainder * inverted % monic
         known *= 2
+
+
+def inverse_modulo(value: fmpz_mod_poly, u: fmpz_mod_poly, prime: int, exponent: int) -> fmpz_mod_poly:
+    """The inverse of `value` modulo the monic u over Z/prime^exponent, by Newton's iteration.
+
+    Raises `InternalError` when it is no unit modulo the prime.
+
+    >>> coefficients(inverse_modulo(polynomial([0, 1], 9), polynomial([1, 0, 1], 9), 3, 2), 2)
+    [0, 8]
+    """
+    if value.degree() == 0:
+        return polynomial([pow(int(value[0]), -1, prime**exponent)], prime**exponent)
+    low, modulus = (polynomial(coefficients(c, c.length()), prime) for c in (value, u))
+    common, start, _ = (low % modulus).xgcd(modulus)
+    if common.degree() != 0:
+        raise InternalError("no unit modulo a polynomial")
+    start = start * pow(int(common[0]), -1, prime)
+    inverse = polynomial(coefficients(start, start.length()), prime**exponent)
+    for _ in range(exponent.bit_length() + 1):
+        inverse = inverse * (2 - value * inverse % u) % u
+    return inverse
+
+
+def multiplication(value: fmpz_mod_poly, u: fmpz_mod_poly) -> list[list[int]]:
+    """The matrix of multiplication by `value` modulo the monic u: row i for t^i."""
+    degree, out, power = int(u.degree()), [], value % u
+    x = polynomial([0, 1], int(u.modulus()))
+    for _ in range(degree):
+        out.append(coefficients(power, degree))
+        power = power * x % u
+    return out
+
+
+def characteristic(value: fmpz_mod_poly, u: fmpz_mod_poly) -> list[int]:
+    """The characteristic polynomial of `value` modulo the monic u, coefficients low degree first.
+
+    >>> characteristic(polynomial([1, 1], 25), polynomial([-3, 0, 1], 25))
+    [23, 23, 1]
+    """
+    modulus = int(u.modulus())
+    if u.degree() == 1:
+        return [-int((value % u)[0]) % modulus, 1]
+    return [int(c) % modulus for c in fmpz_mat(multiplication(value, u)).charpoly().coeffs()]
 
 
 def distinguished_polynomial(series: fmpz_mod_poly, prime: int, exponent: int) -> fmpz_mod_poly:

@@ -16,6 +16,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 from sieve.errors import Inconsistent, PrecisionLost
 from sieve.exact.padic_linear import PadicVector
 from sieve.exact.padic_number import valuation
@@ -23,9 +24,9 @@ from sieve.exact.padic_number import valuation
 
 @dataclass(frozen=True)
 class Annihilator:
-    """The differential sum c_j x^j dx/(2y+h) with c_j = 1 for j = `free`.
+    """The differential sum c_j w_j with c_j = 1 for j = `free`; w_0, w_1, .. as in `sieve.curves.discs`.
 
-    `coefficients` are known modulo p^`precision`; `exact`: it is x^free dx/(2y+h), without any error.
+    `coefficients` are known modulo p^`precision`; `exact`: it is w_free, without any error.
     """
 
     coefficients: tuple[int, ...]
@@ -82,17 +83,17 @@ def annihilators(logs: Sequence[PadicVector], prime: int, genus: int, digits: in
     return out
 
 
-def symmetric(curve: HyperellipticCurve) -> bool:
-    """Whether f and h are even, so that (x, y) -> (-x, y) maps the curve to itself."""
-    return not any(curve.f[1::2]) and not any(curve.h[1::2])
+def symmetric(curve: Curve) -> bool:
+    """Whether the model is y^2 + h y = f with even f and h, so that (x, y) -> (-x, y) maps it to itself."""
+    return isinstance(curve, HyperellipticCurve) and not any(curve.f[1::2]) and not any(curve.h[1::2])
 
 
 def exact_annihilators(
-    curve: HyperellipticCurve, logs: Sequence[PadicVector], found: Sequence[Annihilator]
+    curve: Curve, logs: Sequence[PadicVector], found: Sequence[Annihilator]
 ) -> list[Annihilator]:
     """The same differentials, with those that are exactly known marked as such.
 
-    Without generators every x^j dx/(2y+h) annihilates exactly.  Raises `Inconsistent` when the logarithm of
+    Without generators every differential annihilates exactly.  Raises `Inconsistent` when the logarithm of
     the one generator has components of both signs: the rank is at least 2 then.
     """
     if not logs:

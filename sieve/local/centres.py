@@ -1,16 +1,14 @@
 """Logarithms of the centres of residue discs at a prime p of good reduction.
 
-Log(P) is half the vector of integrals of x^j dx/(2y+h), j = 0..g-1, from the conjugate of P to P.  On
-divisors of degree 0 it is the abelian logarithm of the class, because the involution acts as -1 on the
-differentials; and the zeros of every section have logarithm 0, because their class is a multiple of the fibre
-class U, and Log(P) + Log(conjugate of P) = 0.
+Log(D) is the vector of integrals of the regular differentials over D - (deg D / deg U) U, so Log(U) = 0; on
+divisors of degree 0 it is the abelian logarithm of the class, and on the zeros of every section it is 0.
 
-Let F be a section over Z_p whose zeros modulo p are F_p-points, m_c of them in the disc c.  Then sum_c (m_c
+Let H be a section over Z_p whose zeros modulo p are F_p-points, m_c of them in the disc c.  Then sum_c (m_c
 Log(centre c) + S_c) = 0, S_c the integrals from the centre summed over the zeros in the disc; no zero needs
-to be rational or simple, so any lift of a section modulo p will do.  The vectors (m_c) form the lattice of
-relations between F_p-points in Pic modulo U, and a basis of it determines all Log(centre c).  Ramified discs
-are known beforehand: there Log(centre) is half the integral from the conjugate of the centre, inside the
-disc.
+to be rational or simple, so any lift of a section modulo p will do.  The vectors (m_c) span the lattice of
+relations between F_p-points in Pic modulo U, and a basis of it determines all Log(centre c).  Conjugate
+points of a curve with an involution have conjugate centres, whose fibre is a section: their logarithms are
+opposite.
 
 Precision: the basis is solved by its exact inverse, whose denominators divide the exponent of Z^n modulo the
 lattice, a subgroup of Pic modulo U.  So the loss is known before any series is computed, and at most v_p of
@@ -19,18 +17,17 @@ that exponent.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from math import isqrt
 
 from sieve.errors import InternalError
-from sieve.exact.lattice import ReducedLattice
 from sieve.exact.padic_linear import PadicVector, combine, independent_rows, rational_inverse
 from sieve.exact.padic_number import valuation
 from sieve.local.disc_integrals import DiscIntegrals
+from sieve.local.effective import EffectiveRelations, Vector, unit_vectors
 from sieve.local.picard import PicardGroup
-from sieve.local.supported_sections import Scheme, find_section, relation_lattice
+from sieve.local.supported_sections import find_section
 
 SURPLUS = 4
 """How many equations more than unknowns are computed and checked, where there are unknowns."""
@@ -40,31 +37,38 @@ SURPLUS = 4
 class Centres:
     """The logarithms of all centres, in the numbering of discs, each modulo p^`precision` at least.
 
-    `lattice`: the relations between the discs `leaders + ramified`.  `guard`: v_p of the index in Pic modulo
-    U of the subgroup that F_p-points generate; a p-power multiple of a divisor over F_p by at most that is
-    equivalent to a combination of them.
+    `guard`: v_p of the index in Pic modulo U of the subgroup that F_p-points generate; a p-power multiple of
+    a divisor over F_p by at most that is equivalent to a combination of them.
     """
 
     logs: tuple[PadicVector, ...]
     precision: int
     guard: int
-    lattice: ReducedLattice
+    relations: EffectiveRelations
 
 
-def contact_orders(integrals: DiscIntegrals, vector: Sequence[int]) -> dict[int, int]:
-    """The effective divisor, without whole fibres, that a relation stands for modulo U.
+@dataclass(frozen=True)
+class Basis:
+    """Effective relations whose folded rows are invertible over Q, and span all relations over Z_p.
 
-    `vector` over leaders, then ramified discs: -P becomes the conjugate of P, ramified points count modulo 2.
+    `inverse`: n Log(head i) is minus the combination of the S of the sections with row i.
     """
-    contacts: dict[int, int] = {}
-    count = len(integrals.leaders)
-    for number, n in zip(integrals.leaders, vector[:count], strict=True):
-        if n:
-            contacts[number if n > 0 else integrals.partner[number]] = abs(n)
-    for number, n in zip(integrals.ramified, vector[count:], strict=True):
-        if n % 2:
-            contacts[number] = 1
-    return contacts
+
+    relations: EffectiveRelations
+    rows: tuple[Vector, ...]
+    chosen: tuple[int, ...]
+    inverse: tuple[tuple[Fraction, ...], ...]
+
+
+def relation_basis(integrals: DiscIntegrals, group: PicardGroup) -> Basis:
+    """A basis of the relations between all discs."""
+    discs, model = integrals.discs, integrals.model
+    relations = EffectiveRelations(discs, model, group, unit_vectors(discs, model))
+    rows = [row for row in relations.rows() if any(relations.fold(row))]
+    folded = [relations.fold(row) for row in rows]
+    chosen = independent_rows(folded, integrals.prime, len(relations.heads))
+    inverse = rational_inverse([folded[i] for i in chosen])
+    return Basis(relations, tuple(rows), tuple(chosen), tuple(tuple(line) for line in inverse))
 
 
 def centre_logarithms(integrals: DiscIntegrals, group: PicardGroup, digits: int) -> Centres:
@@ -73,61 +77,63 @@ def centre_logarithms(integrals: DiscIntegrals, group: PicardGroup, digits: int)
     Arguments: `group`, the certified Picard group of the reduction; `digits` >= 1.
     Raises `InternalError` when a surplus equation fails.
     """
-    p, count = integrals.prime, len(integrals.leaders)
-    relations = relation_lattice(group, integrals.leaders + integrals.ramified)
-    lattice = ReducedLattice(relations)
+    p = integrals.prime
+    basis = relation_basis(integrals, group)
+    relations = basis.relations
     # d[-1] is the determinant of the Gram matrix, the square of the index in Z^n
-    guard = valuation(2 * group.order, p) - valuation(isqrt(lattice.d[-1]), p)
-    rows = [row for row in relations if any(row[:count])]
-    chosen = independent_rows([row[:count] for row in rows], p, count)
-    inverse = rational_inverse([rows[i][:count] for i in chosen])
-    loss = max((-valuation(c, p) for line in inverse for c in line if c), default=0)
+    whole = integrals.model.unit_degree * group.order
+    guard = valuation(whole, p) - valuation(isqrt(relations.lattice.d[-1]), p)
+    loss = max((-valuation(c, p) for line in basis.inverse for c in line if c), default=0)
     precision = digits + guard
     working = precision + max(0, loss)
-    logs: dict[int, PadicVector] = {i: _ramified_centre(integrals, i, working) for i in integrals.ramified}
-    constants = [_right_side(integrals, rows[i], logs, working) for i in chosen]
-    for number, line in zip(integrals.leaders, inverse, strict=True):
-        logs[number] = combine([(c, v) for c, v in zip(line, constants, strict=True)])
-    fixed = {i: logs[i] for i in integrals.ramified}
-    for row in _surplus([row for i, row in enumerate(rows) if i not in chosen], rows, count):
-        left = combine([(Fraction(n), logs[i]) for i, n in zip(integrals.leaders, row[:count], strict=True)])
-        if not left.agrees(_right_side(integrals, row, fixed, working)):
-            raise InternalError(f"p = {p}: the integrals do not satisfy the relation {row}")
-    for number in integrals.leaders:
-        logs[integrals.partner[number]] = -logs[number]
-    return Centres(tuple(logs[i] for i in range(len(integrals.discs))), precision, guard, lattice)
+    constants = [_right_side(integrals, basis.rows[i], working) for i in basis.chosen]
+    heads = [combine(list(zip(line, constants, strict=True))) for line in basis.inverse]
+    for vector in _surplus(basis):
+        terms = [(Fraction(n), log) for n, log in zip(relations.fold(vector), heads, strict=True)]
+        if not combine(terms).agrees(_right_side(integrals, vector, working)):
+            raise InternalError(f"p = {p}: the integrals do not satisfy the relation {vector}")
+    by_orbit = {int(group.curve.orbit[i]): (i, log) for i, log in zip(relations.heads, heads, strict=True)}
+    logs = []
+    for number in range(len(integrals.discs)):
+        head, log = by_orbit[int(group.curve.orbit[number])]
+        logs.append(log if number == head else -log)
+    return Centres(tuple(logs), precision, guard, relations)
 
 
-def _ramified_centre(integrals: DiscIntegrals, number: int, precision: int) -> PadicVector:
-    """Half the integral from the conjugate of the centre to the centre (0 for odd p: a Weierstrass point)."""
-    disc, p = integrals.discs[number], integrals.prime
-    # halving may cost a digit, and the integrals are known as far as the parameter
-    exponent = precision + 1
-    a, b = disc.centre(exponent)
-    t = (-2 * b - sum(c * a**i for i, c in enumerate(disc.h))) % p**exponent
-    return Fraction(-1, 2) * integrals.to_parameter(number, t, exponent)
+def _right_side(integrals: DiscIntegrals, vector: Vector, precision: int) -> PadicVector:
+    """What sum m_c Log(centre c) must be for an effective relation."""
+    section = find_section(integrals.discs, integrals.model, vector)
+    return -integrals.over_zeros(section, precision)
 
 
-def _right_side(
-    integrals: DiscIntegrals, row: Sequence[int], fixed: dict[int, PadicVector], precision: int
-) -> PadicVector:
-    """What sum n_i Log(centre i) over the leaders must be."""
-    p = integrals.prime
-    contacts = contact_orders(integrals, row)
-    nothing = Scheme.empty(p)
-    section = find_section(integrals.discs, contacts, nothing, p, integrals.genus)
-    terms = [(Fraction(-1), integrals.over_zeros(section, nothing, precision))]
-    terms += [(Fraction(-1), fixed[i]) for i in integrals.ramified if i in contacts]
-    return combine(terms)
+def _surplus(basis: Basis) -> list[Vector]:
+    """Relations to check that depend, together, on as many equations as possible.
 
-
-def _surplus(unused: list[list[int]], rows: list[list[int]], count: int) -> list[list[int]]:
-    """Relations to check: those not used, then the shortest sums of two short ones."""
-    rows = sorted(rows, key=lambda row: (max(map(abs, row)), sum(map(abs, row)), row))[: 2 * SURPLUS]
+    Candidates: those not used, and the shortest sums of two short ones.
+    """
+    relations = basis.relations
+    unused = [row for i, row in enumerate(basis.rows) if i not in basis.chosen][: 2 * SURPLUS]
+    short = sorted(relations.relations, key=lambda row: (max(map(abs, row)), sum(map(abs, row)), row))
     sums = [
         [a + s * b for a, b in zip(x, y, strict=True)]
-        for i, x in enumerate(rows) for y in rows[: i + 1] for s in (1, -1)
+        for i, x in enumerate(short[: 2 * SURPLUS]) for y in short[: i + 1] for s in (1, -1)
     ]
-    sums = [row for row in sums if any(row[:count])]
     sums.sort(key=lambda row: (max(map(abs, row)), sum(map(abs, row)), row))
-    return (unused + sums)[:SURPLUS]
+    more = [relations.effective(row) for row in sums[: 4 * SURPLUS]]
+    options = {row: _used(basis, relations.fold(row)) for row in [*unused, *more] if any(relations.fold(row))}
+    chosen: list[Vector] = []
+    missing = set(range(len(basis.chosen)))
+    while options and len(chosen) < SURPLUS:
+        best = max(options, key=lambda row: len(options[row] & missing))
+        missing -= options.pop(best)
+        chosen.append(best)
+    return chosen
+
+
+def _used(basis: Basis, folded: Vector) -> set[int]:
+    """The equations of the basis that occur in an expression of a relation."""
+    total = [Fraction(0)] * len(basis.chosen)
+    for n, line in zip(folded, basis.inverse, strict=True):
+        if n:
+            total = [a + n * b for a, b in zip(total, line, strict=True)]
+    return {i for i, c in enumerate(total) if c}

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from sieve.curves.divisors import Divisor, Point
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 from sieve.errors import PrecisionLost
 from sieve.exact.padic_number import PadicNumber
 from sieve.local.condition import Condition
@@ -61,7 +61,7 @@ class ChabautyPlace:
     `PrecisionLost`.
     """
 
-    def __init__(self, curve: HyperellipticCurve, p: int, digits: int) -> None:
+    def __init__(self, curve: Curve, p: int, digits: int) -> None:
         self.curve = curve
         self.prime = p
         self.group: PicardGroup = picard_group(curve.modulo(p))

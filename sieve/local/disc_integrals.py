@@ -9,23 +9,21 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from flint import fmpz_mod_poly
-
 from sieve.curves.discs import ResidueDisc
-from sieve.curves.hyperelliptic import HyperellipticCurve
-from sieve.curves.hyperelliptic_mod import ReducedHyperelliptic
+from sieve.curves.protocol import Curve, ReducedCurve
 from sieve.errors import InternalError
 from sieve.exact.padic_linear import PadicVector
 from sieve.exact.series import (
+    characteristic,
     coefficients,
     distinguished_polynomial,
     floor_log,
     integral_length,
     integral_terms,
-    polynomial,
+    inverse_modulo,
     power_sums,
 )
-from sieve.local.supported_sections import Scheme, SupportedSection
+from sieve.local.supported_sections import Scheme, SupportedSection, model_of
 
 
 class DiscIntegrals:
@@ -33,23 +31,20 @@ class DiscIntegrals:
 
     Arguments: `curve`; `reduced`, its reduction, whose numbering of points is that of the discs.
 
+    >>> from sieve.curves.hyperelliptic import HyperellipticCurve
     >>> curve = HyperellipticCurve([1, -4, 2, -2, 1, 2, 1])
     >>> integrals = DiscIntegrals(curve, curve.modulo(7))
     >>> integrals.to_parameter(0, 7, 3).numerators
     (28, 98)
     """
 
-    def __init__(self, curve: HyperellipticCurve, reduced: ReducedHyperelliptic) -> None:
+    def __init__(self, curve: Curve, reduced: ReducedCurve) -> None:
         self.curve, self.reduced, self.prime, self.genus = curve, reduced, reduced.prime, curve.genus
+        self.model = model_of(curve)
         self.discs = [
-            ResidueDisc(curve.f, curve.h, curve.genus, reduced.prime, point, number)
+            ResidueDisc(self.model.rows, self.model.weight, self.model.degree, reduced.prime, point, number)
             for number, point in enumerate(reduced.points)
         ]
-        self.partner = [int(j) for j in reduced.partner]
-        #: the first disc of every pair of conjugate discs
-        self.leaders = [i for i, j in enumerate(self.partner) if i < j]
-        #: the discs that the involution maps to themselves
-        self.ramified = [i for i, j in enumerate(self.partner) if i == j]
 
     def working(self, roots: int, precision: int) -> tuple[int, int]:
         """(length, exponent) for sums over `roots` zeros modulo p^precision: terms, working precision."""
@@ -82,37 +77,44 @@ class DiscIntegrals:
             values.append(sum(a * b for a, b in zip(terms, sums, strict=True)) % modulus)
         return PadicVector.of(self.prime, values, shift, precision)
 
-    def over_zeros(self, section: SupportedSection, scheme: Scheme, precision: int) -> PadicVector:
-        """The integrals from the centres summed over the zeros outside the scheme of a section lifted to Z_p.
+    def over_zeros(
+        self, section: SupportedSection, precision: int, scheme: Scheme | None = None
+    ) -> PadicVector:
+        """The integrals from the centres summed over the zeros of a section lifted to Z_p.
 
-        Arguments: `scheme` over Z/p^N with N >= `working(largest contact order, precision)`.
+        Zeros in discs only; with a `scheme` over Z/p^N, N >= `working(largest contact order, precision)`, the
+        lift vanishes on it, and its own zeros are left out.
         """
         total = PadicVector.zero(self.prime, self.genus, precision)
+        rows = section.rows if scheme is None else section.through(scheme, self.prime)
         for number, order in section.contacts:
             _, exponent = self.working(order, precision)
-            even, odd = section.through(scheme.reduced(self.prime**exponent))
-            series = self.discs[number].restrict(even, odd, section.multiple, exponent, order * exponent + 1)
+            series = self.discs[number].restrict(rows, section.multiple, exponent, order * exponent + 1)
             monic = distinguished_polynomial(series, self.prime, exponent)
             if monic.degree() != order:
                 raise InternalError(f"{monic.degree()} zeros in a disc where {order} were prescribed")
             total = total + self.over_roots(number, coefficients(monic, order + 1), precision)
         return total
 
-    def over_scheme(self, number: int, u: fmpz_mod_poly, w: fmpz_mod_poly, precision: int) -> PadicVector:
-        """The integrals from the centre of an affine disc summed over a scheme (u, w) that lies in it.
+    def over_scheme(self, number: int, scheme: Scheme, precision: int) -> PadicVector:
+        """The integrals from the centre of a disc summed over a scheme all of whose points lie in it.
 
-        u and w modulo p^exponent, see `working` for deg u roots.
+        The scheme modulo p^exponent or better, see `working` for as many roots as its degree.
         """
-        disc, degree = self.discs[number], int(u.degree())
+        disc, degree = self.discs[number], scheme.degree
         _, exponent = self.working(degree, precision)
-        scheme = Scheme(u, w).reduced(self.prime**exponent)
-        u, w = scheme.u, scheme.w
+        modulus = self.prime**exponent
+        scheme = scheme.reduced(modulus)
+        pivot = {"z": scheme.z, "x": scheme.x, "y": scheme.y}[disc.chart]
+        first = scheme.z if disc.chart == "x" else scheme.x
+        second, weight = (scheme.z, 1) if disc.chart == "y" else (scheme.y, self.model.weight)
+        inverse = inverse_modulo(pivot, scheme.u, self.prime, exponent)
         a0, b0 = disc.centre(exponent)
-        if not disc.ramified:
-            monic = u.compose(polynomial([a0, 1], self.prime**exponent))
-            return self.over_roots(number, coefficients(monic, degree + 1), precision)
-        # u^2 divides the norm of y - w, so two points over a ramified one would be a singular point
-        if degree > 1:
-            raise InternalError("a divisor lies twice over a ramified point")
-        return self.to_parameter(number, int(w(-u[0])) - b0, precision)
-
+        if disc.ramified:
+            value = second
+            for _ in range(weight):
+                value = value * inverse % scheme.u
+            value = value - b0
+        else:
+            value = first * inverse % scheme.u - a0
+        return self.over_roots(number, characteristic(value, scheme.u), precision)

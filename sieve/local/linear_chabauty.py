@@ -16,6 +16,7 @@ from fractions import Fraction
 from sieve.curves.discs import ResidueDisc
 from sieve.curves.divisors import Divisor
 from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 from sieve.curves.search import points_over
 from sieve.errors import InternalError, PrecisionLost
 from sieve.exact.padic_linear import PadicVector
@@ -86,7 +87,7 @@ class ChabautyZeros:
 
 
 def chabauty_zeros(
-    curve: HyperellipticCurve,
+    curve: Curve,
     base: Divisor,
     generators: Sequence[Divisor],
     prime: int,
@@ -124,7 +125,7 @@ def chabauty_zeros(
 
 
 def _at_precision(
-    curve: HyperellipticCurve, base: Divisor, generators: Sequence[Divisor], prime: int, digits: int,
+    curve: Curve, base: Divisor, generators: Sequence[Divisor], prime: int, digits: int,
     working: int, group: PicardGroup,
 ) -> ChabautyZeros:
     integrals = PadicIntegrals(curve, prime, working, group)
@@ -186,13 +187,15 @@ def _series(
     return out, precision + shift
 
 
-def _alone(curve: HyperellipticCurve, disc: ResidueDisc, forms: Sequence[Annihilator], ball: Ball) -> bool:
+def _alone(curve: Curve, disc: ResidueDisc, forms: Sequence[Annihilator], ball: Ball) -> bool:
     """Whether two zeros near the centre are one double zero at a rational point with x = 0 or infinity.
 
     On a symmetric model x^j dx/(2y+h) is an even or odd function of t there, times dt; when it is odd the
     integral f is even.  f is 0 at the centre if that is a rational point, so the zeros are both there.
     """
-    if len(forms) != 1 or not forms[0].exact or disc.ramified or disc.residue[0] or ball.value:
+    if not isinstance(curve, HyperellipticCurve) or len(forms) != 1 or not forms[0].exact:
+        return False
+    if disc.ramified or disc.residue[0] or ball.value:
         return False
     j = forms[0].free
     order = curve.genus - 1 - j if disc.at_infinity else j

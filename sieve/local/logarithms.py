@@ -1,18 +1,19 @@
 """Abelian logarithms at a prime p of good reduction: of points, of p-adic points, of divisors over Q.
 
-Log(P) is half the vector of integrals of x^j dx/(2y+h), j = 0..g-1, from the conjugate of P to P; Log is
-additive, 0 on fibres and on zeros of sections, and on divisors of degree 0 it is the abelian logarithm of
-their class. How the values are found and why all digits hold: `sieve.local.centres`, `disc_integrals` and
-`closed_points`.
+Log(D) is the vector of integrals of the regular differentials x^i y^k dx / F_y, in the order of
+`sieve.curves.discs`, over D - (deg D / deg U) U.  So Log(U) = 0; Log is additive, 0 on the zeros of every
+section, and on divisors of degree 0 it is the abelian logarithm of their class.  For y^2 + h y = f, Log(P) is
+half the vector of integrals from the conjugate of P to P.  How the values are found and why all digits hold:
+`sieve.local.centres`, `disc_integrals` and `closed_points`.
 """
 
 from __future__ import annotations
 
 from fractions import Fraction
 
-from sieve.curves.discs import ResidueDisc
-from sieve.curves.divisors import Divisor, FibrePlace, MumfordPlace, Place, Point, RationalPlace
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.discs import ResidueDisc, in_chart, value_at
+from sieve.curves.divisors import Divisor, FibrePlace, Place, Point, RationalPlace
+from sieve.curves.protocol import Curve
 from sieve.errors import InternalError, PrecisionLost
 from sieve.exact.padic_linear import PadicVector, combine
 from sieve.exact.padic_number import PadicNumber
@@ -20,6 +21,9 @@ from sieve.local.centres import centre_logarithms
 from sieve.local.closed_points import scheme_logarithm
 from sieve.local.disc_integrals import DiscIntegrals
 from sieve.local.picard import PicardGroup, picard_group
+
+COORDINATES = {"z": (2, 0, 1), "x": (0, 2, 1), "y": (1, 0, 2)}
+"""For every chart: the coordinate that is 1, and those that are a and b, by position in (X, Y, Z)."""
 
 
 class PadicIntegrals:
@@ -33,6 +37,7 @@ class PadicIntegrals:
     point given modulo p^n modulo p^min(n, digits) or better.  Attributes: `prime`, `genus`, `digits`,
     `group`.
 
+    >>> from sieve.curves.hyperelliptic import HyperellipticCurve
     >>> curve = HyperellipticCurve([1, -4, 2, -2, 1, 2, 1])
     >>> integrals = PadicIntegrals(curve, 7, 5)
     >>> a, b, c = (integrals.log_point(P) for P in ((0, -1, 1), (1, 1, 0), (0, 1, 1)))
@@ -42,7 +47,7 @@ class PadicIntegrals:
     """
 
     def __init__(
-        self, curve: HyperellipticCurve, prime: int, digits: int, group: PicardGroup | None = None
+        self, curve: Curve, prime: int, digits: int, group: PicardGroup | None = None
     ) -> None:
         if digits < 1:
             raise InternalError(f"{digits} digits of integrals were asked for")
@@ -78,11 +83,10 @@ class PadicIntegrals:
         """(t, n): the parameter modulo p^n of a rational point, n = exponent (default: `digits`)."""
         n = self.digits if exponent is None else exponent
         chart = self.discs[self.disc_of(point)]
-        x, y, z = point
-        modulus = self.prime**n
-        scale = pow(x if chart.at_infinity else z, -1, modulus)
-        a = (z if chart.at_infinity else x) * scale % modulus
-        b = y * pow(scale, self.genus + 1, modulus) % modulus
+        modulus, weights = self.prime**n, (1, chart.weight, 1)
+        pivot, first, second = COORDINATES[chart.chart]
+        scale = pow(point[pivot], -1, modulus)
+        a, b = (point[i] * pow(scale, weights[i], modulus) % modulus for i in (first, second))
         return chart.parameter(a, b, n), n
 
     def parameter_of_padic(self, x: PadicNumber, y: PadicNumber, z: PadicNumber) -> tuple[int, int, int]:
@@ -91,33 +95,33 @@ class PadicIntegrals:
         The coordinates may have any common scale.  Raises `ValueError` when they are on no point of the
         curve, `PrecisionLost` when not even the disc is known.
         """
-        p, power = self.prime, self.genus + 1
-        if min(x.valuation, z.valuation) >= min(x.precision, z.precision):
+        p, model, numbers = self.prime, self._inside.model, (x, y, z)
+        pivots = ("z", "x", "y") if model.weight == 1 else ("z", "x")
+        known = [numbers[COORDINATES[c][0]] for c in pivots]
+        least = min(number.valuation for number in known)
+        if least >= min(number.precision for number in known):
             raise PrecisionLost(p, 0, 1, "a point with X and Z unknown")
-        at_infinity = x.valuation < z.valuation
-        scale = (x if at_infinity else z).inverse()
-        a, b = (z if at_infinity else x) * scale, y * scale**power
+        name = next(c for c, number in zip(pivots, known, strict=True) if number.valuation == least)
+        pivot, first, second = COORDINATES[name]
+        scale = numbers[pivot].inverse()
+        weights = (1, model.weight, 1)
+        a, b = (numbers[i] * scale ** weights[i] for i in (first, second))
         if not b.is_integral and not b.is_zero:
             raise ValueError("not on the curve: the y-coordinate has a pole")
         if a.precision < 1 or b.precision < 1:
             raise PrecisionLost(p, min(a.precision, b.precision), 1, "a point whose residue disc is unknown")
         n = min(a.precision, b.precision)
-        modulus = p**n
-        ai, bi = a.residue(n), b.residue(n)
-        f, h = [*self.curve.f], [*self.curve.h]
-        f += [0] * (2 * power + 1 - len(f))
-        h += [0] * (power + 1 - len(h))
-        if at_infinity:
-            f, h = f[::-1], h[::-1]
-        hi, fi = (sum(c * pow(ai, i, modulus) for i, c in enumerate(form)) for form in (h, f))
-        if (bi * bi + bi * hi - fi) % modulus:
+        rows = in_chart(model.rows, model.weight, model.degree, name)
+        if value_at(rows, a.residue(n), b.residue(n), p**n):
             raise ValueError(f"not on the curve modulo {p}^{n}")
-        disc = self.group.curve.index_of(*((1, bi, 0) if at_infinity else (ai, bi, 1)))
+        place = [0, 0, 0]
+        place[pivot], place[first], place[second] = 1, a.residue(1), b.residue(1)
+        disc = self.group.curve.index_of(*place)
         chart = self.discs[disc]
         # the parameter is one of the two coordinates, and may be known better than the other
-        known = b.precision if chart.ramified else a.precision
-        coordinate = (b if chart.ramified else a).residue(known)
-        return disc, chart.parameter(coordinate, coordinate, known), known
+        digits = b.precision if chart.ramified else a.precision
+        coordinate = (b if chart.ramified else a).residue(digits)
+        return disc, chart.parameter(coordinate, coordinate, digits), digits
 
     # ---- logarithms -------------------------------------------------------------------------------------
 
@@ -140,10 +144,10 @@ class PadicIntegrals:
         if known is None:
             if isinstance(place, RationalPlace):
                 known = self.log_point(place.point)
-            elif isinstance(place, MumfordPlace):
-                known = scheme_logarithm(self._inside, self._centres, self.group, place)
-            else:
+            elif isinstance(place, FibrePlace):
                 known = PadicVector.zero(self.prime, self.genus, self._centres.precision)
+            else:
+                known = scheme_logarithm(self._inside, self._centres, self.group, place)
             self._places[place] = known
         return known
 

@@ -1,36 +1,79 @@
-"""Sections with a prescribed divisor modulo p: from classes in the Picard group to functions even(x) + odd(x)
-y.
+"""Sections with a prescribed divisor modulo p: from classes in the Picard group to forms H(X, Y, Z).
 
-A section of multiple m is a function even(x) + odd(x) y with deg even <= m, deg odd <= m - g - 1: these are
-all functions whose poles are bounded by m times the fibre at infinity.  Its divisor of zeros E has degree 2 m
-and the class m U.  Conversely an effective E of degree 2 m with this class over F_p is the divisor of exactly
-one section up to scalars. Which E on rational points have it is a lattice, read off the group.
+A section of multiple n is a weighted form of degree n modulo the equation.  Its divisor of zeros E has degree
+n D / w and the class n U.  Conversely an effective E of this degree and class over F_p is the divisor of
+exactly one section up to scalars, because forms cut out complete linear systems on a smooth weighted plane
+curve. Which E on rational points have the class is a lattice, read off the group.
 """
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from fractions import Fraction
 
 from flint import fmpz_mat, fmpz_mod_poly, nmod_mat
 
 from sieve.curves.discs import ResidueDisc
+from sieve.curves.divisors import ClosedPlace, MumfordPlace, Place
+from sieve.curves.protocol import Curve
 from sieve.errors import InternalError
 from sieve.exact.lattice import hermite
 from sieve.exact.series import coefficients, polynomial
 from sieve.local.picard import PicardGroup
 
+Monomial = tuple[int, int, int]
+"""Exponents of X, Y, Z."""
+
+
+@dataclass(frozen=True)
+class Model:
+    """F(X, Y, Z) = 0 of weighted degree `degree`, weights (1, weight, 1), as in `sieve.curves.discs`."""
+
+    rows: tuple[tuple[int, ...], ...]
+    weight: int
+    degree: int
+
+    @property
+    def unit_degree(self) -> int:
+        """The degree of U."""
+        return self.degree // self.weight
+
+    def monomials(self, multiple: int, prime: int) -> list[Monomial]:
+        """Monomials of a degree that form a basis modulo F and p: no multiples of the leading one of F.
+
+        >>> Model(((-1, 0, 0, 0, 0, -1), (), (1,)), 3, 6).monomials(3, 7)
+        [(0, 0, 3), (1, 0, 2), (2, 0, 1), (3, 0, 0), (0, 1, 0)]
+        """
+        w = self.weight
+        k, i = max((k, i) for k, row in enumerate(self.rows) for i, c in enumerate(row) if c % prime)
+        rest = self.degree - i - w * k
+        out = []
+        for b in range(multiple // w + 1):
+            for a in range(multiple - w * b + 1):
+                c = multiple - w * b - a
+                if a < i or b < k or c < rest:
+                    out.append((a, b, c))
+        return out
+
+
+def model_of(curve: Curve) -> Model:
+    """The equation of a curve."""
+    return Model(tuple(tuple(row) for row in curve.rows), curve.weight, curve.degree)
+
 
 @dataclass(frozen=True)
 class Scheme:
-    """The effective divisor u(x) = 0, y = w(x) over Z/p^exponent, u monic.
+    """All conjugates of (x : y : z) over Z/p^exponent: polynomials in t modulo the monic u(t).
 
-    >>> Scheme(polynomial([1, 0, 1], 9), polynomial([2], 9)).degree
+    >>> Scheme(*(polynomial(c, 9) for c in ([1, 0, 1], [0, 1], [2], [1]))).degree
     2
     """
 
     u: fmpz_mod_poly
-    w: fmpz_mod_poly
+    x: fmpz_mod_poly
+    y: fmpz_mod_poly
+    z: fmpz_mod_poly
 
     @property
     def degree(self) -> int:
@@ -39,34 +82,134 @@ class Scheme:
 
     def reduced(self, modulus: int) -> Scheme:
         """The same modulo a divisor of the modulus."""
-        return Scheme(*(polynomial(coefficients(c, c.length()), modulus) for c in (self.u, self.w)))
+        return Scheme(
+            *(polynomial(coefficients(c, c.length()), modulus) for c in (self.u, self.x, self.y, self.z))
+        )
 
-    @staticmethod
-    def empty(modulus: int) -> Scheme:
-        """The zero divisor."""
-        return Scheme(polynomial([1], modulus), polynomial([], modulus))
+    def part(self, factor: fmpz_mod_poly) -> Scheme:
+        """The part above a monic factor of u."""
+        return Scheme(factor, self.x % factor, self.y % factor, self.z % factor)
+
+    def values(self, monomials: Sequence[Monomial]) -> list[list[int]]:
+        """For every monomial its coefficients in 1, t, .., t^(deg u - 1)."""
+        one = polynomial([1], int(self.u.modulus())) % self.u
+        tables = []
+        for part, base in enumerate((self.x, self.y, self.z)):
+            powers = [one]
+            for _ in range(max((m[part] for m in monomials), default=0)):
+                powers.append(powers[-1] * base % self.u)
+            tables.append(powers)
+        x, y, z = tables
+        known: dict[tuple[int, int], fmpz_mod_poly] = {}
+        out = []
+        for a, b, c in monomials:
+            if (b, c) not in known:
+                known[b, c] = y[b] * z[c] % self.u
+            out.append(coefficients(x[a] * known[b, c] % self.u, self.degree))
+        return out
+
+    def independent(self, monomials: Sequence[Monomial], prime: int) -> bool:
+        """Whether vanishing here imposes as many conditions modulo p as the degree says."""
+        return len(independent_columns(self.values(monomials), prime)) == self.degree
+
+
+def coordinates_of(place: Place) -> tuple[tuple[Fraction, ...], ...]:
+    """(u, x, y, z) of a closed place: it consists of all (x(t) : y(t) : z(t)), u(t) = 0."""
+    if isinstance(place, MumfordPlace):
+        one, zero = Fraction(1), Fraction(0)
+        x = (-place.u[0],) if place.degree == 1 else (zero, one)
+        return place.u, x, place.w, (one,)
+    if isinstance(place, ClosedPlace):
+        return place.u, place.x, place.y, place.z
+    raise InternalError(f"{place} is no closed place")
+
+
+def scheme_of(place: Place, modulus: int) -> Scheme:
+    """A closed place modulo a power of p; its coefficients must be integral at p."""
+    u, x, y, z = (
+        polynomial([c.numerator * pow(c.denominator, -1, modulus) for c in part], modulus)
+        for part in coordinates_of(place)
+    )
+    return Scheme(u, x, y, z)
 
 
 @dataclass(frozen=True)
 class SupportedSection:
-    """A section modulo p: the chosen multiples of the scheme and of (y - w), see `through`; and where it
-    vanishes.
+    """A section modulo p and where it vanishes.
 
-    `contacts`: (disc, order) pairs with order >= 1, sorted: the zeros apart from the scheme.  The two lists
-    are the coefficients of r and b in even = r u - (b w mod u), odd = b, entries in 0..p-1.
+    `contacts`: (disc, order) pairs with order >= 1, sorted: the zeros apart from a scheme.  `terms`:
+    monomials with coefficients in 0..p-1 (0 where a lift may have others).
     """
 
     multiple: int
     contacts: tuple[tuple[int, int], ...]
-    r: tuple[int, ...]
-    b: tuple[int, ...]
+    terms: tuple[tuple[Monomial, int], ...]
 
-    def through(self, scheme: Scheme) -> tuple[list[int], list[int]]:
-        """Coefficients of even and odd for a section over the ring of the scheme that vanishes on it."""
+    @property
+    def rows(self) -> list[list[int]]:
+        """The section by powers of y, as `ResidueDisc.restrict` takes it."""
+        return _rows(self.terms)
+
+    def through(self, scheme: Scheme, prime: int) -> list[list[int]]:
+        """Rows of a lift to the ring of the scheme that vanishes on it.
+
+        The section vanishes on the scheme modulo p, which imposes independent conditions on the monomials.
+        """
+        if scheme.degree == 0:
+            return self.rows
         modulus = int(scheme.u.modulus())
-        r, b = polynomial(self.r, modulus), polynomial(self.b, modulus)
-        even = r * scheme.u - b * scheme.w % scheme.u
-        return coefficients(even, self.multiple + 1), list(self.b)
+        monomials = [m for m, _ in self.terms]
+        vector = [c for _, c in self.terms]
+        values = scheme.values(monomials)
+        pivots = independent_columns(values, prime)
+        if len(pivots) < scheme.degree:
+            raise InternalError("a scheme without independent conditions")
+        degree = scheme.degree
+        square = [[values[j][i] for j in pivots] for i in range(degree)]
+        inverse = invert(square, prime, modulus)
+        for j in pivots:
+            vector[j] = 0
+        total = [sum(c * v[i] for c, v in zip(vector, values, strict=True) if c) for i in range(degree)]
+        for j, row in zip(pivots, inverse, strict=True):
+            vector[j] = -sum(a * b for a, b in zip(row, total, strict=True)) % modulus
+        return _rows(tuple(zip(monomials, vector, strict=True)))
+
+
+def independent_columns(values: Sequence[Sequence[int]], prime: int) -> list[int]:
+    """Indices of vectors that are a basis of the span of all of them modulo p: the first possible ones."""
+    height = len(values[0])
+    matrix = nmod_mat(height, len(values), [v[i] % prime for i in range(height) for v in values], prime)
+    reduced, rank = matrix.rref()
+    out: list[int] = []
+    for i in range(rank):
+        start = out[-1] + 1 if out else 0
+        out.append(next(j for j in range(start, len(values)) if int(reduced[i, j])))
+    return out
+
+
+def invert(square: Sequence[Sequence[int]], prime: int, modulus: int) -> list[list[int]]:
+    """The inverse modulo a power of p of a matrix that is invertible modulo p, by Newton's iteration."""
+    n = len(square)
+    start = nmod_mat(n, n, [c % prime for row in square for c in row], prime).inv()
+    matrix = fmpz_mat([list(row) for row in square])
+    inverse = fmpz_mat([[int(start[i, j]) for j in range(n)] for i in range(n)])
+    known = prime
+    while True:
+        known = min(known * known, modulus)
+        product = inverse * (matrix * inverse)
+        pairs = [[(int(inverse[i, j]), int(product[i, j])) for j in range(n)] for i in range(n)]
+        entries = [[(2 * a - b) % known for a, b in row] for row in pairs]
+        if known == modulus:
+            return entries
+        inverse = fmpz_mat(entries)
+
+
+def _rows(terms: Sequence[tuple[Monomial, int]]) -> list[list[int]]:
+    rows: list[list[int]] = [[] for _ in range(max((b for (_, b, _), _ in terms), default=-1) + 1)]
+    for (a, b, _), c in terms:
+        rows[b] += [0] * (a + 1 - len(rows[b]))
+        rows[b][a] = c
+    return rows
 
 
 def relation_lattice(
@@ -84,7 +227,7 @@ def relation_lattice(
         classes.insert(0, list(extra))
     k = len(classes)
     rows = [row + [int(i == j) for j in range(k)] for i, row in enumerate(classes)]
-    rows.append([2, *group.unit_log] + [0] * k)
+    rows.append([int(group.curve.unit_degree), *group.unit_log] + [0] * k)
     for i, d in enumerate(group.invariants):
         rows.append([0] * (1 + i) + [d] + [0] * (s - 1 - i + k))
     kernel = [list(row[s + 1 :]) for row in hermite(rows) if not any(row[: s + 1])]
@@ -97,54 +240,50 @@ def relation_lattice(
 
 
 def find_section(
-    discs: Sequence[ResidueDisc], contacts: dict[int, int], scheme: Scheme, prime: int, genus: int
+    discs: Sequence[ResidueDisc], model: Model, contacts: Sequence[int] | dict[int, int],
+    scheme: Scheme | None = None,
 ) -> SupportedSection:
     """The section whose zeros modulo p are the scheme and the given points with the given orders.
 
-    Arguments: `scheme` over F_p, of degree at most multiple + 1, where 2 * multiple is the degree of the
-    zeros. Raises `InternalError` when there is none, that is, when the class is not a multiple of U.
+    Arguments: `contacts`, orders by number of the disc; `scheme` over F_p.
+    Raises `InternalError` when there is none, that is, when the class is not a multiple of U.
     """
-    orders = tuple(sorted((c, e) for c, e in contacts.items() if e))
-    degree = scheme.degree + sum(e for _, e in orders)
-    multiple = degree // 2
-    if degree % 2 or scheme.degree > multiple + 1:
-        raise InternalError(f"zeros of degree {degree} with a scheme of degree {scheme.degree}")
-    width = max(0, multiple - genus)
-    monomials = _monomial_conditions(discs, orders, multiple, width, prime)
-    parameters = []
-    power = scheme.u
-    for _ in range(multiple - scheme.degree + 1):
-        parameters.append(coefficients(power, multiple + 1) + [0] * width)
-        power = power * polynomial([0, 1], prime)
-    power = scheme.w % scheme.u
-    for j in range(width):
-        even = coefficients(-power, multiple + 1)
-        parameters.append(even + [int(i == j) for i in range(width)])
-        power = power * polynomial([0, 1], prime) % scheme.u
-    size, count = multiple + 1 + width, len(parameters)
-    basis = nmod_mat(size, count, [parameters[j][i] for i in range(size) for j in range(count)], prime)
-    conditions = nmod_mat(len(monomials), size, [c for row in monomials for c in row], prime) * basis
-    null, nullity = conditions.nullspace()
+    pairs = contacts.items() if isinstance(contacts, dict) else enumerate(contacts)
+    orders = tuple(sorted((c, e) for c, e in pairs if e))
+    degree = sum(e for _, e in orders) + (scheme.degree if scheme else 0)
+    multiple, rest = divmod(degree, model.unit_degree)
+    if rest:
+        raise InternalError(f"zeros of degree {degree}")
+    prime = discs[0].prime
+    monomials = model.monomials(multiple, prime)
+    conditions: list[list[int]] = []
+    for number, order in orders:
+        conditions += _contact_conditions(discs[number], order, monomials)
+    if scheme is not None and scheme.degree:
+        values = scheme.values(monomials)
+        conditions += [[v[i] for v in values] for i in range(scheme.degree)]
+    matrix = nmod_mat(len(conditions), len(monomials), [c for row in conditions for c in row], prime)
+    null, nullity = matrix.nullspace()
     if nullity != 1:
         raise InternalError(f"{nullity} sections with zeros {orders} modulo {prime}")
-    vector = [int(null[i, 0]) for i in range(count)]
-    return SupportedSection(multiple, orders, tuple(vector[: count - width]), tuple(vector[count - width :]))
+    terms = tuple((m, int(null[i, 0])) for i, m in enumerate(monomials))
+    return SupportedSection(multiple, orders, terms)
 
 
-def _monomial_conditions(
-    discs: Sequence[ResidueDisc], orders: Sequence[tuple[int, int]], multiple: int, width: int, prime: int
-) -> list[list[int]]:
-    """Rows: Taylor coefficients of order below the contact at each disc; columns: x^i, then x^j y."""
-    rows: list[list[int]] = []
-    for number, order in orders:
-        disc = discs[number]
-        series = disc.expansion(1, order)
-        a, b = series.a.truncate(order), series.b.truncate(order)
-        powers = [polynomial([1], disc.prime)]
-        for _ in range(multiple):
-            powers.append(powers[-1].mul_low(a, order))
-        odd = [powers[j].mul_low(b, order) for j in range(width)]
-        columns = powers[::-1] + odd[::-1] if disc.at_infinity else powers + odd
-        table = [coefficients(c, order) for c in columns]
-        rows += [[column[k] for column in table] for k in range(order)]
-    return rows
+def _contact_conditions(disc: ResidueDisc, order: int, monomials: Sequence[Monomial]) -> list[list[int]]:
+    """Rows: Taylor coefficients of order below the contact; columns: monomials."""
+    first, second = {"z": (0, 1), "x": (2, 1), "y": (0, 2)}[disc.chart]
+    p = disc.prime
+    if order == 1:
+        a, b = disc.residue
+        return [[pow(a, m[first], p) * pow(b, m[second], p) % p for m in monomials]]
+    series = disc.expansion(1, order)
+    tables = []
+    for part, base in ((first, series.a), (second, series.b)):
+        powers = [polynomial([1], p)]
+        for _ in range(max(m[part] for m in monomials)):
+            powers.append(powers[-1].mul_low(base, order))
+        tables.append(powers)
+    products = [tables[0][m[first]].mul_low(tables[1][m[second]], order) for m in monomials]
+    columns = [coefficients(product, order) for product in products]
+    return [[column[k] for column in columns] for k in range(order)]

@@ -14,7 +14,7 @@ from sieve.curves.protocol import Curve, Disc, ReducedCurve
 
 CURVE = HyperellipticCurve([1, -2, 1, 2, 2, 4, 1])
 REDUCED = CURVE.modulo(7)
-DISC = ResidueDisc(CURVE.f, CURVE.h, 2, 7, REDUCED.points[0], 0)
+DISC = ResidueDisc(CURVE.rows, CURVE.weight, CURVE.degree, 7, REDUCED.points[0], 0)
 
 
 def static_check() -> tuple[Curve, ReducedCurve, Disc]:

@@ -180,7 +180,7 @@ def test_multiples_of_a_divisor_are_used(monkeypatch: pytest.MonkeyPatch) -> Non
     places = [curve.mumford([Fraction(int(a)) for a in c.coeffs()], [0, 2, 2, -1]) for c in (u, v)]
     first, second = (integrals.log_place(place) for place in places)
     assert (first + second).is_zero and not first.is_zero
-    assert used == [3, 3] and min(first.precision, second.precision) >= 6
+    assert set(used) == {3} and min(first.precision, second.precision) >= 6
 
 
 def test_sum_of_rational_points_as_one_divisor() -> None:
@@ -249,8 +249,8 @@ def test_a_wrong_integral_is_noticed(monkeypatch: pytest.MonkeyPatch) -> None:
     original = centres._right_side
     calls: list[PadicVector] = []
 
-    def wrong(integrals, row, fixed, precision):  # type: ignore[no-untyped-def]
-        value = original(integrals, row, fixed, precision)
+    def wrong(integrals, row, precision):  # type: ignore[no-untyped-def]
+        value = original(integrals, row, precision)
         calls.append(value)
         if len(calls) == 1:
             error = PadicVector.of(value.prime, [7 ** (value.precision - 1), 0], 0, value.precision)

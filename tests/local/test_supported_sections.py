@@ -7,14 +7,15 @@ from itertools import product
 import flint
 import pytest
 
-from sieve.curves.discs import ResidueDisc
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.errors import InternalError
+from sieve.exact.lattice import hermite
 from sieve.exact.series import polynomial
-from sieve.local.centres import contact_orders
+from sieve.local.centres import relation_basis
 from sieve.local.disc_integrals import DiscIntegrals
+from sieve.local.effective import EffectiveRelations, unit_vectors
 from sieve.local.picard import picard_group
-from sieve.local.supported_sections import Scheme, SupportedSection, find_section, relation_lattice
+from sieve.local.supported_sections import SupportedSection, find_section, relation_lattice, scheme_of
 
 X0_67 = HyperellipticCurve([1, -4, 2, -2, 1, 2, 1])
 CURVES = [
@@ -28,7 +29,8 @@ CURVES = [
 
 def zeros_of(curve: HyperellipticCurve, p: int, section: SupportedSection) -> dict[tuple[int, int, int], int]:
     """The zeros of a section that vanishes on F_p-points, no two of them conjugate: read off its norm."""
-    even, odd = (flint.nmod_poly(list(c), p) for c in section.through(Scheme.empty(p)))
+    rows = [*section.rows, []]
+    even, odd = (flint.nmod_poly(list(c), p) for c in rows[:2])
     f, h = (flint.nmod_poly([a % p for a in c], p) for c in (curve.f, curve.h))
     norm = even * even - h * even * odd - f * odd * odd
     zeros: dict[tuple[int, int, int], int] = {}
@@ -62,20 +64,39 @@ def test_relations_are_all_vectors_of_trivial_class(curve: HyperellipticCurve, p
         assert trivial == all(int(solution[i, 0].q) == 1 for i in range(len(numbers)))
 
 
+def conjugate_pairs(curve: HyperellipticCurve, p: int, vector: tuple[int, ...]) -> bool:
+    """Whether both points of some fibre occur, or a ramified point twice."""
+    partner = curve.modulo(p).partner.tolist()
+    return any(n and vector[partner[i]] and (i != partner[i] or n > 1) for i, n in enumerate(vector))
+
+
 @pytest.mark.parametrize(("curve", "p"), CURVES)
 def test_sections_have_the_prescribed_zeros(curve: HyperellipticCurve, p: int) -> None:
     group = picard_group(curve.modulo(p))
     integrals = DiscIntegrals(curve, group.curve)
+    basis = relation_basis(integrals, group)
     checked = 0
-    for row in relation_lattice(group, integrals.leaders + integrals.ramified):
-        contacts = contact_orders(integrals, row)
-        if not contacts:
-            continue
-        section = find_section(integrals.discs, contacts, Scheme.empty(p), p, curve.genus)
-        expected = {integrals.discs[i].point: e for i, e in contacts.items()}
-        assert zeros_of(curve, p, section) == expected
-        checked += 1
+    for row in basis.rows:
+        section = find_section(integrals.discs, integrals.model, row)
+        expected = {integrals.discs[i].point: e for i, e in enumerate(row) if e}
+        orders = [disc.order(section.rows, section.multiple, 30) for disc in integrals.discs]
+        assert orders == list(row)
+        if not conjugate_pairs(curve, p, row):
+            assert zeros_of(curve, p, section) == expected
+            checked += 1
     assert checked
+
+
+@pytest.mark.parametrize(("curve", "p"), CURVES)
+def test_effective_relations_span_all_relations(curve: HyperellipticCurve, p: int) -> None:
+    """The index of the effective vectors in Z^n equals that of the kernel of the class map."""
+    group = picard_group(curve.modulo(p))
+    integrals = DiscIntegrals(curve, group.curve)
+    basis = relation_basis(integrals, group)
+    everything = relation_lattice(group, range(group.curve.count))
+    assert all(n >= 0 for row in basis.rows for n in row)
+    rows = hermite([*basis.rows, *basis.relations.units])
+    assert rows == hermite(everything)
 
 
 def test_a_section_through_a_divisor_vanishes_on_it() -> None:
@@ -86,21 +107,30 @@ def test_a_section_through_a_divisor_vanishes_on_it() -> None:
     integrals = DiscIntegrals(curve, group.curve)
     place = curve.mumford([1, 0, 1], [2, 1])
     local = group.curve.reduce(place)
-    numbers = integrals.leaders + integrals.ramified
+    numbers = list(range(group.curve.count))
     first, *rest = relation_lattice(group, numbers, [2, *group.log(local)])
     assert first[0] >= 1 and all(row[0] == 0 for row in rest)
     assert [row[1:] for row in rest] == relation_lattice(group, numbers)
-    modulus, scheme = p**5, Scheme(polynomial([1, 0, 1], p**5), polynomial([2, 1], p**5))
+    modulus = p**5
+    scheme = scheme_of(place, modulus)
     assert first[0] == 1
-    section = find_section(integrals.discs, contact_orders(integrals, first[1:]), scheme.reduced(p), p, 2)
-    even, odd = (polynomial(c, modulus) for c in section.through(scheme))
-    assert ((even + odd * scheme.w) % scheme.u).is_zero()
+    relations = EffectiveRelations(
+        integrals.discs, integrals.model, group, unit_vectors(integrals.discs, integrals.model)
+    )
+    extra = relation_lattice(group, relations.heads, [2, *group.log(local)])[0]
+    vector = relations.effective(extra[1:])
+    section = find_section(integrals.discs, integrals.model, vector, scheme.reduced(p))
+    rows = [*section.through(scheme, p), []]
+    even, odd = (polynomial(c, modulus) for c in rows[:2])
+    assert ((even + odd * scheme.y) % scheme.u).is_zero()
     assert even.degree() <= section.multiple and odd.degree() <= section.multiple - 3
+    pairs = [pair for x, y in zip(rows[:-1], section.rows, strict=True) for pair in zip(x, y, strict=True)]
+    assert all((a - b) % p == 0 for a, b in pairs)
 
 
 def test_zeros_of_nontrivial_class_are_refused() -> None:
     group = picard_group(X0_67.modulo(7))
-    discs = [ResidueDisc(X0_67.f, X0_67.h, 2, 7, point, i) for i, point in enumerate(group.curve.points)]
+    integrals = DiscIntegrals(X0_67, group.curve)
     for contacts in ({0: 6}, {0: 3}, {0: 2, 2: 4}):
         with pytest.raises(InternalError):
-            find_section(discs, contacts, Scheme.empty(7), 7, 2)
+            find_section(integrals.discs, integrals.model, contacts)
