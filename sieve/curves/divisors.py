@@ -55,8 +55,8 @@ class FibrePlace:
 class ClosedPlace:
     """All conjugates of the point (x(t) : y(t) : z(t)), t a root of u.
 
-    Coefficients low degree first; u monic and squarefree of degree >= 1, coordinates of degree < deg u; different
-    roots give different points.
+    Coefficients low degree first; u monic and squarefree of degree >= 1, coordinates of degree < deg u;
+    different roots give different points.
     """
 
     u: tuple[Fraction, ...]

@@ -1,8 +1,8 @@
 """Closed points of small degree on a smooth plane curve: what lines cut out besides rational points.
 
 Lines through two known points and tangents at known points leave the fewest other zeros (for a quartic two, a
-closed point of degree 2 or two rational points); lines with small coefficients find bitangents and other closed
-points.
+closed point of degree 2 or two rational points); lines with small coefficients find bitangents and other
+closed points.
 """
 
 from __future__ import annotations
@@ -23,9 +23,9 @@ Line = tuple[int, int, int]
 def line_places(curve: Curve, points: Sequence[Point], size: int) -> list[ClosedPlace]:
     """Closed points of degree 2 to degree - 2 on lines, without repetition.
 
-    Arguments: known points, the first of which are joined by lines; `size` >= 0, a bound for the coefficients of
-    other lines.  The search is bounded: an empty list proves nothing.  Sorted by degree, then by size.  Cost: a
-    factorisation for each line.
+    Arguments: known points, the first of which are joined by lines; `size` >= 0, a bound for the
+    coefficients of other lines. The search is bounded: an empty list proves nothing. Sorted by degree, then
+    by size. Cost: a factorisation for each line.
     """
     lines: dict[Line, None] = {}
     for p in points:

@@ -101,8 +101,9 @@ class Disc(Protocol):
 class Curve(Protocol):
     """A smooth curve of genus >= 2 over Q in a weighted projective plane, given by an integral equation.
 
-    F(X, Y, Z) = 0 is weighted homogeneous of degree `degree` for the weights 1, `weight`, 1; rows[k] holds the
-    coefficients of y^k in F(x, y, 1), low degree first.  The user's y is the model's divided by `y_scale`.
+    F(X, Y, Z) = 0 is weighted homogeneous of degree `degree` for the weights 1, `weight`, 1; rows[k] holds
+    the coefficients of y^k in F(x, y, 1), low degree first. The user's y is the model's divided by
+    `y_scale`.
     """
 
     genus: int

@@ -51,8 +51,8 @@ def _rational_roots(coefficients: list[int]) -> list[Fraction]:
 def search_points(curve: Curve, height: int) -> list[Point]:
     """All rational points with x = a/b, |a|, b <= height, and those with Z = 0; sorted by height.
 
-    Arguments: `height` >= 1, at most 10^6.  Tables say for which a, b modulo small prime powers F(a, Y, b) can have
-    a root; what they leave is solved exactly.  Cost about 2 height^2 look-ups.
+    Arguments: `height` >= 1, at most 10^6. Tables say for which a, b modulo small prime powers F(a, Y, b)
+    can have a root; what they leave is solved exactly. Cost about 2 height^2 look-ups.
     """
     tables = [(m, _table(curve, m)) for m in _MODULI]
     numerators = np.arange(-height, height + 1, dtype=np.int64)
@@ -70,7 +70,7 @@ def search_points(curve: Curve, height: int) -> list[Point]:
 def _table(curve: Curve, m: int) -> NDArray[np.bool_]:
     """For b, a modulo m: can F(a, Y, b) have a rational root?  Int64, all products below m^2.
 
-    A root with denominator prime to m is one modulo m; another one needs a leading coefficient that is no unit.
+    A root with denominator prime to m is one modulo m; another needs a leading coefficient that is no unit.
     """
     w, degree = curve.weight, curve.degree
     everyone = np.arange(m, dtype=np.int64)

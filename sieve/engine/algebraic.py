@@ -2,9 +2,9 @@
 
 The zeros of a Chabauty function often are points over a quadratic or another small field (common practice:
 they, or a multiple of their classes, lie in the closure of J(Q), so that no sieve can exclude them).  A short
-integer polynomial that vanishes at x modulo p^n is a guess.  On y^2 + h y = f, that 4 f + h^2 is a square in the
-field it defines, with the root that the candidate has, is checked exactly; on a plane curve the coordinates are
-guessed as elements of the field and the equation is checked exactly.
+integer polynomial that vanishes at x modulo p^n is a guess. On y^2 + h y = f, that 4 f + h^2 is a square in
+the field it defines, with the root that the candidate has, is checked exactly; on a plane curve the
+coordinates are guessed as elements of the field and the equation is checked exactly.
 """
 
 from __future__ import annotations
@@ -271,7 +271,7 @@ def _on_plane_curve(curve: Curve, prime: int,
 
 
 def _element(value: int, t: int, prime: int, modulus: int, degree: int) -> tuple[Fraction, ...] | None:
-    """The number that agrees with `value` modulo `modulus`, as a short polynomial in t of degree < `degree`."""
+    """The number that agrees with `value` modulo `modulus`, as a short polynomial in t."""
     rows = [[modulus] + [0] * degree]
     for k in range(1, degree + 1):
         power = pow(t, k, modulus) if k < degree else value

@@ -58,7 +58,8 @@ def propose(
 ) -> Proposal:
     """Search until `rank` independent divisors that generate a group saturated at small primes are found.
 
-    The closed points are those on curves y = c(x)/d or, on a plane curve, on lines.  With rational points a small search comes first; the last one has the bound `largest`.
+    The closed points are those on curves y = c(x)/d or, on a plane curve, on lines. With rational points a
+    small search comes first; the last one has the bound `largest`.
 
     Arguments: `rank`, the number of generators wanted (None: whatever `largest` gives).  A proposal with
     fewer generators proves nothing.  Raises `LimitReached` for a plane curve without a known rational point.

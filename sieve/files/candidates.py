@@ -140,9 +140,10 @@ def check_on_curve(curve: Curve, candidate: Candidate) -> None:
 def model_coordinates(curve: Curve, candidate: Candidate) -> PadicPoint:
     """The candidate's point in weighted coordinates of the integral model.
 
-    Returns (X, Y, Z), known at least modulo p, integral, X or Z (on a plane curve X, Y or Z) a unit.  The unit is
-    1 to more digits than the others have when the point was given in affine coordinates with x integral.
-    Raises `InputError` when some residue of the normalised point is not known or when it is not on the curve.
+    Returns (X, Y, Z), known at least modulo p, integral, X or Z (on a plane curve X, Y or Z) a unit. The
+    unit is 1 to more digits than the others have when the point was given in affine coordinates with x
+    integral. Raises `InputError` when some residue of the normalised point is not known or when it is not
+    on the curve.
     """
     if candidate.point is None:
         raise candidate.origin.error("no point", "a candidate given by a point")
@@ -169,8 +170,8 @@ def model_coordinates(curve: Curve, candidate: Candidate) -> PadicPoint:
 def disc_residues(curve: Curve, candidate: Candidate) -> tuple[int, int, int]:
     """The point modulo p that names the candidate's residue disc, in the integral model.
 
-    Returns (x, y, 1), (1, y, 0) or, on a plane curve, (0, 1, 0), entries in [0, p).  Raises `InputError` when it is
-    not on the curve modulo p or when X and Z (and Y) are zero.
+    Returns (x, y, 1), (1, y, 0) or, on a plane curve, (0, 1, 0), entries in [0, p). Raises `InputError`
+    when it is not on the curve modulo p or when X and Z (and Y) are zero.
     """
     if candidate.disc is None:
         raise candidate.origin.error("no disc", "a candidate given by a residue disc")

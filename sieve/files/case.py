@@ -90,10 +90,11 @@ class WrittenDivisor:
 class Case:
     """The content of a case file.
 
-    Fields: `equation`; `integral`, whether the integral points of the affine equation are asked for and not all
-    rational points; `base` (one point is a divisor with one term, half a fibre is one whole fibre); `index_prime_to` (sorted primes that do not divide
-    [J(Q) : G] on the user's word); `generators` (as many as the rank, or none); `generators_from`
-    ("known_points" or None); `torsion` (pairs of an order >= 2 and a divisor).
+    Fields: `equation`; `integral`, whether the integral points of the affine equation are asked for and not
+    all rational points; `base` (one point is a divisor with one term, half a fibre is one whole fibre);
+    `index_prime_to` (sorted primes that do not divide [J(Q) : G] on the user's word); `generators` (as many
+    as the rank, or none); `generators_from` ("known_points" or None); `torsion` (pairs of an order >= 2 and
+    a divisor).
     """
 
     path: str

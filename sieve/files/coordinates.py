@@ -1,6 +1,7 @@
 """Weighted coordinates (X : Y : Z), weights 1, w, 1, of points as files write them, for every model.
 
-On y^2 + h y = f, w = g + 1 and X, Z are never both zero; on a plane curve w = 1 and X, Y, Z are never all zero.
+On y^2 + h y = f, w = g + 1 and X, Z are never both zero; on a plane curve w = 1 and X, Y, Z are never all
+zero.
 """
 
 from __future__ import annotations

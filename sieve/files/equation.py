@@ -1,8 +1,8 @@
 """The table [curve] of a case file: which model an equation is of, and in which variables.
 
-A homogeneous equation in three variables is a plane curve; everything else is read as y^2 + h(x)*y = f(x).  The
-variables of a plane curve are any three names: in the order of the key `variables`, else x, y, z when these
-are the names used, else in the order in which they occur.
+A homogeneous equation in three variables is a plane curve; everything else is read as y^2 + h(x)*y = f(x).
+The variables of a plane curve are any three names: in the order of the key `variables`, else x, y, z when
+these are the names used, else in the order in which they occur.
 """
 
 from __future__ import annotations
@@ -22,8 +22,8 @@ _USUAL = ("x", "y", "z")
 class WrittenEquation:
     """An equation as written.
 
-    Fields: `polynomial`, left side minus right side, exponents in the order of the three `variables`; `plane`,
-    whether it is a homogeneous equation of a plane curve (else only x and y occur).
+    Fields: `polynomial`, left side minus right side, exponents in the order of the three `variables`;
+    `plane`, whether it is a homogeneous equation of a plane curve (else only x and y occur).
     """
 
     polynomial: Polynomial

@@ -50,8 +50,8 @@ class LogView:
     """What a log says.
 
     Fields: `sha256` and `size` of the file; `lines`, the number of records; `curve`, `base`, `free`,
-    `torsion` (pairs of order and divisor) in model coordinates; `integral`, whether integral points are meant;
-    the records of the other kinds as they stand.
+    `torsion` (pairs of order and divisor) in model coordinates; `integral`, whether integral points are
+    meant; the records of the other kinds as they stand.
     """
 
     sha256: str
@@ -210,7 +210,8 @@ def _condition(view: LogView, local: Record) -> Condition:
     unit = list(local["unit"])
     closed: dict[Place, list[int]] = {}
     for k, section, zeros in local["places"]:
-        closed[places[k]] = [_int(section[0]) * a - sum(logs[i][j] for i in zeros) for j, a in enumerate(unit)]
+        n = _int(section[0])
+        closed[places[k]] = [n * a - sum(logs[i][j] for i in zeros) for j, a in enumerate(unit)]
 
     def log(divisor: Divisor) -> list[int]:
         total = [0] * len(moduli)

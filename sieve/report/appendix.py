@@ -79,15 +79,15 @@ def _coordinates(view: LogView) -> str:
     text = ""
     if curve.y_scale != 1:
         text += (
-            f" This model is integral; its $y$ is ${m.fraction(curve.y_scale)}$ times that of the equation given, "
-            "in whose coordinates points and divisors are written here; tables of $p$-adic points are in those "
-            "of the model."
+            f" This model is integral; its $y$ is ${m.fraction(curve.y_scale)}$ times that of the equation "
+            "given, in whose coordinates points and divisors are written here; tables of $p$-adic points are in "
+            "those of the model."
         )
     if len(curve.rows[0]) > 2 * curve.weight or len(curve.rows[1]) > curve.weight:
         weights = f"$1, {curve.weight}, 1$"
         return text + (
-            " Points are written $(x, y)$, or $(1 : s : 0)$ at infinity, in coordinates $(X : Y : Z)$ of weights "
-            f"{weights}."
+            " Points are written $(x, y)$, or $(1 : s : 0)$ at infinity, in coordinates $(X : Y : Z)$ of "
+            f"weights {weights}."
         )
     return text + " The point at infinity is written $(1 : 0 : 0)$."
 

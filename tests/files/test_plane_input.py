@@ -1,4 +1,4 @@
-"""Case and candidate files of plane curves: equations in any variables, points in every chart, closed points."""
+"""Case and candidate files of plane curves: equations in any variables, points in every chart, places."""
 
 from __future__ import annotations
 
