@@ -226,6 +226,8 @@ def _condition(view: LogView, local: Record) -> Condition:
         return [t % d for t, d in zip(total, moduli, strict=True)]
 
     origin, degree = log(view.base), view.base.degree
+    if view.integral:
+        logs = logs[: curve.affine_count]
     rows = sorted(
         {tuple((degree * a - b) % d for a, b, d in zip(row, origin, moduli, strict=True)) for row in logs}
     )

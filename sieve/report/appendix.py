@@ -80,8 +80,8 @@ def _coordinates(view: LogView) -> str:
     if curve.y_scale != 1:
         text += (
             f" This model is integral; its $y$ is ${m.fraction(curve.y_scale)}$ times that of the equation "
-            "given, in whose coordinates points and divisors are written here; tables of $p$-adic points are in "
-            "those of the model."
+            "given, in whose coordinates points and divisors are written here; tables of $p$-adic points are "
+            "in those of the model."
         )
     if len(curve.rows[0]) > 2 * curve.weight or len(curve.rows[1]) > curve.weight:
         weights = f"$1, {curve.weight}, 1$"
@@ -117,9 +117,9 @@ def _premises(view: LogView) -> list[str]:
             p = r["prime"]
             n = sum(c["prime"] == p for c in view.of("candidate"))
             listed = _count(n, f"${p}$-adic candidate")
-            words = f"every rational point of $X$ agrees with one of the {listed} below"
+            words = f"every {_kind(view)} point of $X$ agrees with one of the {listed} below"
         elif r["id"].startswith("bound "):
-            most = _count(r["at_most"], "rational point")
+            most = _count(r["at_most"], f"{_kind(view)} point")
             words = (
                 f"at most {most} of $X$ agree with the candidate {plain(r['candidate'])} at ${r['prime']}$"
             )
@@ -127,29 +127,35 @@ def _premises(view: LogView) -> list[str]:
     return out
 
 
+def _kind(view: LogView) -> str:
+    return "integral" if view.integral else "rational"
+
+
 def _statement(view: LogView) -> str:
     end = view.end
     curve = view.curve
     if end["conclusion"] == "empty":
-        return "$X(\\mathbb{Q}) = \\varnothing$."
+        ring = "Z" if view.integral else "Q"
+        return f"$X(\\mathbb{{{ring}}}) = \\varnothing$."
     if end["conclusion"] == "points":
         found = [tuple(p) for p in end["points"]]
         points = sorted(by_height(curve, found), key=lambda p: p[2] != 0)
         shown = ",\\ ".join(m.rational_point(curve, p) for p in points)
         breakable = shown.replace(",\\ ", "$, $")
-        return f"$X$ has exactly {_count(len(points), 'rational point')}: ${breakable}$."
+        return f"$X$ has exactly {_count(len(points), f'{_kind(view)} point')}: ${breakable}$."
     text = []
     dead = Counter(p for p, _ in end["eliminated"])
     for p in sorted(dead):
         text.append(
             f"{_count(dead[p], f'${p}$-adic candidate')} below, those marked as eliminated, "
-            + ("is not a rational point of $X$." if dead[p] == 1 else "are not rational points of $X$.")
+            + ("is no" if dead[p] == 1 else "are no")
+            + f" {_kind(view)} point{'' if dead[p] == 1 else 's'} of $X$."
         )
     for r in view.of("classes"):
         what = f"$[{_multiple(view)}P - B]$"
         text.append(
-            f"For every rational point $P$ of $X$, {what} lies in one of {_count(r['count'], 'class')[:-1]}"
-            f"{'es' if r['count'] != 1 else 's'} of $G$ modulo a subgroup of index ${r['index']}$ "
+            f"For every {_kind(view)} point $P$ of $X$, {what} lies in one of {r['count']} "
+            f"class{'es' if r['count'] != 1 else ''} of $G$ modulo a subgroup of index ${r['index']}$ "
             "(up to an index prime to that number)."
         )
     return " ".join(text) or "No candidate is eliminated."
@@ -195,7 +201,8 @@ def _primes(view: LogView) -> list[Block]:
                 "$G$ in the "
                 f"$\\ell$-primary parts in use ($\\ell$ = {listed}) and the number of its elements that "
                 f"are classes of "
-                f"${_multiple(view)}P - B$ for points $P$ of $X(\\mathbb{{F}}_{{v}})$."
+                f"${_multiple(view)}P - B$ for {'affine ' if view.integral else ''}points $P$ of "
+                "$X(\\mathbb{F}_{v})$."
             )
         )
         header = (
@@ -240,7 +247,7 @@ def _candidates(view: LogView, p: int) -> list[Block]:
     rows = []
     for c in view.of("candidate"):
         if c["prime"] == p:
-            rows.append((plain(c["id"]), _located(view, c), _fate(view, fates[c["id"]])))
+            rows.append((plain(c["id"]), _located(view, c), _fate(view, fates[c["id"]], c)))
     complete = any(r["id"] == f"complete {p}" for r in view.of("premise"))
     digits = max([r["digits"] for r in view.of("padic") if r["prime"] == p] or [0])
     text = f"The list at ${p}$ has {_count(len(rows), 'candidate')}"
@@ -300,13 +307,16 @@ def _residue(view: LogView, point: list[int], p: int) -> str:
     return f"{shown} \\in X(\\mathbb{{F}}_{{{p}}})"
 
 
-def _fate(view: LogView, fate: Record) -> str:
+def _fate(view: LogView, fate: Record, candidate: Record) -> str:
     if fate["verdict"] == "rational":
         points = ", ".join(f"${m.rational_point(view.curve, tuple(p))}$" for p in fate["points"])
         return f"rational: {points}" + ("" if fate["sole"] else " (perhaps not alone)")
     if fate["verdict"] == "open":
         return f"open: {plain(fate['reason'])}"
     if not fate["uses"]:
+        located = view.integral and candidate.get("point") is not None
+        if located and _chart(candidate["point"]) != 2:
+            return "eliminated: not integral"
         return "eliminated: outside the image"
     return f"eliminated by {_names(fate['uses'])}"
 
