@@ -226,10 +226,9 @@ def _condition(view: LogView, local: Record) -> Condition:
         return [t % d for t, d in zip(total, moduli, strict=True)]
 
     origin, degree = log(view.base), view.base.degree
-    if view.integral:
-        logs = logs[: curve.affine_count]
+    meant = logs[: curve.affine_count] if view.integral else logs
     rows = sorted(
-        {tuple((degree * a - b) % d for a, b, d in zip(row, origin, moduli, strict=True)) for row in logs}
+        {tuple((degree * a - b) % d for a, b, d in zip(row, origin, moduli, strict=True)) for row in meant}
     )
     allowed = np.array(rows, dtype=np.int64).reshape(len(rows), len(moduli))
     return Condition(f"v = {v}", v, moduli, tuple(tuple(log(d)) for d in view.generators), allowed)
