@@ -16,6 +16,7 @@ from __future__ import annotations
 import json
 import os
 import re
+import struct
 import sys
 import unicodedata
 from collections.abc import Callable, Iterable, Iterator, Sequence
@@ -26,14 +27,20 @@ from typing import Any, BinaryIO
 Row = list[int]
 Vector = tuple[int, ...]
 Point = tuple[int, int, int]
+Form = list[tuple[int, int, int, int]]
+"""A form as terms (c, i, k, j) for c X^i Y^k Z^j; X, Y, Z have weights 1, w, 1."""
+Poly = dict[tuple[int, int], int]
+"""A polynomial in chart coordinates: (i, k) -> coefficient of a^i b^k."""
 
 FORMAT = "sieve-proof/1"
 MAX_LINE, MAX_FILE, MAX_DEPTH, MAX_DIGITS = 4_000_000, 400_000_000, 8, 4000
 MAX_RECORDS, MAX_CLASSES, MAX_PRIME, MAX_ELL = 50_000, 400_000, 2**20, 2**64
 MAX_GENUS, MAX_RANK, MAX_BASE, MAX_TERMS, MAX_BITS, MAX_FIELD = 12, 60, 400, 5000, 4000, 200_000
-MAX_SECTION, MAX_PLACES, MAX_HEIGHT, MAX_SERIES = 100, 100, 200_000, 400_000
+MAX_MULTIPLE, MAX_PLACES, MAX_HEIGHT, MAX_SERIES = 60, 100, 200_000, 400_000
 MAX_WORK = 3 * 10**9
 """Elementary steps, about a microsecond each."""
+LARGE_PRIMES = (2**61 - 1, 2**89 - 1, 2**107 - 1)
+"""What holds modulo one of these holds over Q: smoothness, independence."""
 
 
 class Fault(Exception):
@@ -66,8 +73,7 @@ class Work:
     def spend(self, steps: int) -> None:
         """Add steps."""
         self.done += steps
-        if self.done > MAX_WORK:
-            raise Declined("more work than this checker does")
+        limit(self.done <= MAX_WORK, "more work than this checker does")
 
 
 def need(holds: bool, code: str, reason: str) -> None:
@@ -76,12 +82,17 @@ def need(holds: bool, code: str, reason: str) -> None:
         raise Rejected(code, reason)
 
 
+def limit(holds: bool, reason: str) -> None:
+    """Decline the log unless it is within a limit."""
+    if not holds:
+        raise Declined(reason)
+
+
 # ---- text to values ----------------------------------------------------------------------------------
 
 
 def _integer_token(token: str) -> int:
-    if len(token) > MAX_DIGITS:
-        raise Declined(f"an integer of more than {MAX_DIGITS} digits")
+    limit(len(token) <= MAX_DIGITS, f"an integer of more than {MAX_DIGITS} digits")
     return int(token)
 
 
@@ -105,8 +116,7 @@ def decode(line: bytes) -> dict[str, Any]:
     for outside in text.replace("\\\\", "").replace('\\"', "").split('"')[::2]:
         for bracket in re.findall(r"[\[\]{}]", outside):
             depth += 1 if bracket in "[{" else -1
-            if depth > MAX_DEPTH:
-                raise Declined(f"nesting deeper than {MAX_DEPTH}")
+            limit(depth <= MAX_DEPTH, f"nesting deeper than {MAX_DEPTH}")
     try:
         value = json.loads(text, parse_int=_integer_token, parse_float=_no_number, parse_constant=_no_number,
                            object_pairs_hook=_pairs)
@@ -174,13 +184,6 @@ def rational(value: Any) -> Fraction:
     return number
 
 
-def section(value: Any, low: int | None = None, high: int | None = None) -> Row:
-    """The coefficients of a section."""
-    if len(items(value)) > MAX_SECTION:
-        raise Declined(f"a section with more than {MAX_SECTION} coefficients")
-    return integers(value, low, high)
-
-
 def fields(record: dict[str, Any], *keys: str) -> list[Any]:
     """The values of exactly these keys, which follow `kind` in this order."""
     if list(record) != ["kind", *keys]:
@@ -214,9 +217,7 @@ def is_prime(n: int) -> bool:
 
 def prime(value: Any, bound: int) -> int:
     """A prime below the bound."""
-    integer(value, 2)
-    if value >= bound:
-        raise Declined(f"a prime beyond {bound}")
+    limit(integer(value, 2) < bound, f"a prime beyond {bound}")
     need(is_prime(value), "not-prime", f"{value} is not a prime")
     return int(value)
 
@@ -235,8 +236,8 @@ def part(n: int, primes: Iterable[int]) -> int:
 
 
 def trim(a: Iterable[int], modulus: int) -> Row:
-    """Coefficients modulo the modulus, low degree first, without trailing zeros."""
-    out = [c % modulus for c in a]
+    """Coefficients modulo the modulus (0: over Z), low degree first, without trailing zeros."""
+    out = [c % modulus for c in a] if modulus else list(a)
     while out and out[-1] == 0:
         out.pop()
     return out
@@ -266,14 +267,15 @@ def plus(a: Sequence[int], b: Sequence[int], factor: int = 1) -> Row:
 
 
 def divide(a: Sequence[int], b: Sequence[int], modulus: int) -> tuple[Row, Row]:
-    """Quotient and remainder by b, whose leading coefficient is a unit."""
-    rest, inverse = [c % modulus for c in a], pow(b[-1], -1, modulus)
+    """Quotient and remainder by b, whose leading coefficient is a unit (over Z, modulus 0: is 1)."""
+    rest, inverse = list(a), pow(b[-1], -1, modulus) if modulus else 1
     quotient = [0] * max(0, len(a) - len(b) + 1)
     for i in reversed(range(len(quotient))):
-        quotient[i] = rest[i + len(b) - 1] * inverse % modulus
+        lead = rest[i + len(b) - 1] * inverse
+        quotient[i] = lead % modulus if modulus else lead
         for j, c in enumerate(b):
-            rest[i + j] = (rest[i + j] - quotient[i] * c) % modulus
-    return quotient, trim(rest, modulus)
+            rest[i + j] -= quotient[i] * c
+    return quotient, trim(rest[: len(b) - 1], modulus)
 
 
 def common(a: Row, b: Row, v: int) -> Row:
@@ -283,14 +285,9 @@ def common(a: Row, b: Row, v: int) -> Row:
     return a
 
 
-def derivative(a: Sequence[int]) -> Row:
-    """The derivative."""
-    return [i * c for i, c in enumerate(a)][1:]
-
-
 def squarefree(a: Row, v: int) -> bool:
     """Is the polynomial over F_v, not 0, prime to its derivative?"""
-    return len(common(a, trim(derivative(a), v), v)) == 1
+    return len(common(a, trim([i * c for i, c in enumerate(a)][1:], v), v)) == 1
 
 
 def factor_degrees(a: Row, v: int) -> Row:
@@ -310,7 +307,27 @@ def factor_degrees(a: Row, v: int) -> Row:
     return degrees + ([len(a) - 1] if len(a) > 1 else [])
 
 
-# ---- lattices ----------------------------------------------------------------------------------------
+# ---- linear algebra and lattices ---------------------------------------------------------------------
+
+
+def independent(rows: Iterable[Row], v: int, enough: int) -> Row:
+    """The numbers of rows that are independent over F_v of those before them; stops when there are enough."""
+    basis: list[tuple[int, Row]] = []
+    chosen: Row = []
+    for number, row in enumerate(rows):
+        if len(chosen) == enough:
+            break
+        row = [c % v for c in row]
+        for place, known in basis:
+            factor = row[place]
+            if factor:
+                row = [(x - factor * y) % v for x, y in zip(row, known)]
+        first = next((i for i, c in enumerate(row) if c), None)
+        if first is not None:
+            inverse = pow(row[first], -1, v)
+            basis.append((first, [c * inverse % v for c in row]))
+            chosen.append(number)
+    return chosen
 
 
 def insert(basis: list[Row], row: Row, modulus: int = 0) -> Row:
@@ -368,24 +385,11 @@ def index_of(basis: list[Row]) -> int:
 def lattice_index(rows: list[Row], width: int, work: Work) -> int:
     """The index in Z^width of the lattice that the rows span; 0 for infinite index."""
     work.spend(width**2 * (width + len(rows)) // 4)
-    q = 2**61 - 1
     rows = sorted(rows, key=lambda row: (sum(map(abs, row)), row))
-    chosen: list[Row] = []
-    reduced: list[tuple[int, Row]] = []
-    for row in rows:
-        image = [c % q for c in row]
-        for place, known in reduced:
-            if image[place]:
-                factor = image[place]
-                image = [(x - factor * y) % q for x, y in zip(image, known)]
-        first = next((i for i, c in enumerate(image) if c), None)
-        if first is not None:
-            inverse = pow(image[first], -1, q)
-            reduced.append((first, [c * inverse % q for c in image]))
-            chosen.append(row)
+    chosen = independent(rows, LARGE_PRIMES[0], width)
     if len(chosen) < width:
         return 0
-    multiple = determinant(chosen)
+    multiple = determinant([rows[i] for i in chosen])
     basis = diagonal([multiple] * width)
     for row in rows:
         insert(basis, row, multiple)
@@ -408,112 +412,291 @@ def determinant(matrix: list[Row]) -> int:
     return abs(rows[-1][-1]) if rows else 1
 
 
+# ---- forms and series --------------------------------------------------------------------------------
+
+
+def homogeneous(rows: Sequence[Sequence[int]], weight: int, degree: int) -> Form:
+    """The form of weighted degree `degree` that is sum rows[k][i] x^i y^k where Z = 1."""
+    form = [(c, i, k, degree - i - weight * k) for k, row in enumerate(rows) for i, c in enumerate(row) if c]
+    need(all(j >= 0 for _, _, _, j in form), "form-degree", f"a term of weighted degree above {degree}")
+    return form
+
+
+def partials(form: Form) -> list[Form]:
+    """The derivatives by X, Y and Z."""
+    by_x = [(c * i, i - 1, k, j) for c, i, k, j in form if i]
+    by_y = [(c * k, i, k - 1, j) for c, i, k, j in form if k]
+    return [by_x, by_y, [(c * j, i, k, j - 1) for c, i, k, j in form if j]]
+
+
+def evaluate(form: Form, point: Point, modulus: int) -> int:
+    """The value of a form at a point, modulo the modulus (0: over Z)."""
+    x, y, z = point
+    if modulus:
+        return sum(c * pow(x, i, modulus) * pow(y, k, modulus) * pow(z, j, modulus)
+                   for c, i, k, j in form) % modulus
+    return sum(c * x**i * y**k * z**j for c, i, k, j in form)
+
+
+def chart_of(point: Point) -> int:
+    """0 for Z = 1, with coordinates (x, y); 1 for X = 1, with (Z, Y); 2 for Y = 1, with (X, Z)."""
+    return 0 if point[2] else 1 if point[0] else 2
+
+
+def in_chart(form: Form, chart: int) -> Poly:
+    """A form in the coordinates (a, b) of a chart."""
+    return {((i, k), (j, k), (i, j))[chart]: c for c, i, k, j in form}
+
+
+class Series:
+    """(Z/q)[t] modulo t^length."""
+
+    def __init__(self, modulus: int, length: int, work: Work) -> None:
+        self.modulus, self.length, self.work = modulus, length, work
+        self.width = (2 * modulus.bit_length() + length.bit_length() + 8) // 8
+
+    def reduce(self, a: Row) -> Row:
+        """Coefficients modulo q, as many as the length."""
+        return [c % self.modulus for c in a[: self.length]] + [0] * (self.length - len(a))
+
+    def product(self, a: Sequence[int], b: Sequence[int]) -> Row:
+        """The product, through one product of large integers (Kronecker)."""
+        w, q = self.width, self.modulus
+        self.work.spend(self.length + int((self.length * w / 60) ** 1.6))
+        x, y = (int.from_bytes(b"".join((c % q).to_bytes(w, "little") for c in s), "little") for s in (a, b))
+        packed = (x * y).to_bytes(w * (len(a) + len(b) + 1), "little")
+        return [int.from_bytes(packed[i * w : (i + 1) * w], "little") % q for i in range(self.length)]
+
+    def compose(self, poly: Poly, a: list[Row], b: list[Row]) -> Row:
+        """A polynomial at two series, which are given by their powers; these lists grow as needed."""
+        for place, known in enumerate((a, b)):
+            while len(known) <= max((key[place] for key in poly), default=0):
+                known.append(self.product(known[-1], known[1]))
+        rows: dict[int, Row] = {}
+        for (i, k), c in poly.items():
+            rows[k] = plus(rows.get(k, []), a[i], c)
+        total: Row = []
+        for k, row in rows.items():
+            total = plus(total, self.product(row, b[k]) if k else row)
+        return self.reduce(total)
+
+    def inverse(self, a: Row) -> Row:
+        """The inverse of a series with a unit constant term."""
+        out = self.reduce([pow(a[0], -1, self.modulus)])
+        for _ in range(self.length.bit_length()):
+            out = self.product(out, plus([2], self.product(a, out), -1))
+        return out
+
+
+class Disc:
+    """The points near a point of the curve over F_p: chart coordinates and differentials in a parameter t.
+
+    The parameter is a - a0 where the derivative by b is a unit, else (*vertical*) b - b0; a0 and b0 are in
+    0..p-1, and the centre is t = 0.
+    """
+
+    def __init__(self, curve: Curve, series: Series, p: int, point: Point) -> None:
+        x, y, z = point
+        self.curve, self.series, self.chart = curve, series, chart_of(point)
+        first, second = ((x, y) if z else (0, y) if x else (0, 0))
+        equation, mod = in_chart(curve.form, self.chart), series.modulus
+        slope = sum(c * k * first**i * second ** (k - 1) for (i, k), c in equation.items() if k)
+        self.vertical = slope % p == 0
+        if self.vertical:
+            first, second = second, first
+            equation = {(k, i): c for (i, k), c in equation.items()}
+        derivative = {(i, k - 1): c * k for (i, k), c in equation.items() if k}
+        start = sum(c * first**i * second**k for (i, k), c in derivative.items())
+        need(start % p != 0, "expansion", "a residue disc was not expanded")
+        one, inverse, other = series.reduce([1]), series.reduce([pow(start, -1, p)]), series.reduce([second])
+        moving = [one, series.reduce([first, 1])]
+        # Newton's iteration for the other coordinate and for the inverse of the slope; both are verified
+        for _ in range(mod.bit_length() + series.length.bit_length() + 2):
+            powers = [one, other]
+            value = series.compose(equation, moving, powers)
+            check = series.product(series.compose(derivative, moving, powers), inverse)
+            if not any(value) and check == one:
+                break
+            inverse = series.product(inverse, plus([2], check, -1))
+            other = series.reduce(plus(other, series.product(value, inverse), -1))
+        else:
+            raise Rejected("expansion", "a residue disc was not expanded")
+        self.powers = (powers, moving) if self.vertical else (moving, powers)
+        self.centre, self.slope = (self.powers[0][1][0], self.powers[1][1][0]), inverse
+
+    def restrict(self, form: Form) -> Row:
+        """A form, divided by a power of the coordinate that is 1 in the chart, as a series."""
+        return self.series.compose(in_chart(form, self.chart), *self.powers)
+
+    def differentials(self) -> list[Row]:
+        """x^i y^k dx / F_y in t; the sign changes on other charts than Z = 1, and where t = b - b0."""
+        sign = -1 if (self.chart > 0) != self.vertical else 1
+        regular = (self.restrict([(sign, *key)]) for key in self.curve.exponents)
+        return [self.series.product(form, self.slope) for form in regular]
+
+
 # ---- the curve ---------------------------------------------------------------------------------------
 
 
 class Curve:
-    """y^2 + h(x) y = f(x) over Q, integer coefficients."""
+    """F(X, Y, Z) = 0 over Q, F of weighted degree D with weights 1, w, 1, smooth.
 
-    def __init__(self, f: Row, h: Row, genus: int) -> None:
-        self.f, self.h, self.genus = f, h, genus
-        self.square = times(h, h)
-        self.square = plus(self.square, f, 4)
-        while self.square and self.square[-1] == 0:
-            self.square.pop()
-        need(not (f and f[-1] == 0) and not (h and h[-1] == 0), "trailing-zero", "a leading coefficient 0")
-        need(len(f) <= 2 * genus + 3 and len(h) <= genus + 2, "degree", "f or h of too large a degree")
-        need(len(self.square) in (2 * genus + 2, 2 * genus + 3), "genus", "4 f + h^2 has another degree")
-        self.full_f = f + [0] * (2 * genus + 3 - len(f))
-        self.full_h = h + [0] * (genus + 2 - len(h))
-        small = (v for v in range(3, 10_000, 2) if is_prime(v) and self.square[-1] % v)
-        need(any(squarefree(trim(self.square, v), v) for v in small), "singular",
-             "no prime below 10000 shows that 4 f + h^2 is squarefree")
+    A plane curve (w = 1), or y^2 + h(x) y = f(x) with w = g + 1.  The class U is that of the zeros of X, of
+    degree D / w; the zeros of a form of weighted degree n have the class n U.
+    """
+
+    def __init__(self, rows: list[Row], weight: int, genus: int, work: Work) -> None:
+        self.weight, self.genus, self.work = weight, genus, work
+        need(len(rows) > 0 and len(rows[-1]) > 0 and all(row[-1] for row in rows if row), "trailing-zero",
+             "a leading coefficient 0, or no equation")
+        degree = max(len(row) - 1 + weight * k for k, row in enumerate(rows) if row)
+        if weight > 1:
+            need(len(rows) == 3 and rows[2] == [1], "model", "an equation of an unknown model")
+            need(degree == 2 * weight, "degree", "f or h of too large a degree")
+        limit(degree <= 2 * MAX_GENUS + 2, "an equation of too large a degree")
+        self.degree, self.unit = degree, degree // weight
+        self.form = homogeneous(rows, weight, degree)
+        # the regular differentials x^i y^k dx / F_y, with the exponent of Z that makes them homogeneous
+        top = degree - weight - 2
+        self.exponents = [(i, k, top - i - weight * k) for k in range(top // weight + 1)
+                          for i in range(top - weight * k + 1)]
+        need(len(self.exponents) == genus, "genus", f"the genus is {len(self.exponents)}")
+        self.tested: dict[int, bool] = {}
+        need(any(self.smooth(v) for v in LARGE_PRIMES), "singular", "the curve is not smooth")
+        self.rows = rows
+        # 4 f + h^2 of y^2 + h y = f
+        self.square = trim(plus(times(rows[1], rows[1]), rows[0], -4), 0) if weight > 1 else []
 
     def smooth(self, v: int) -> bool:
-        """Is the model smooth over F_v?"""
-        g = self.genus
-        if v > 2:
-            square = trim(self.square, v)
-            return len(square) >= 2 * g + 2 and squarefree(square, v)
-        # v = 2: singular where h(x) = 0 and h'(x) y = f'(x); y^2 = f(x) there
-        f, h = trim(self.f, 2), trim(self.h, 2)
-        df, dh = trim(derivative(f), 2), trim(derivative(h), 2)
-        test = trim(plus(times(times(dh, dh), f), times(df, df), -1), 2)
-        if len(common(h, test, 2)) != 1:
-            return False
-        lead = self.full_h[g] * self.full_f[2 * g + 2] - self.full_f[2 * g + 1]
-        return self.full_h[g + 1] % 2 == 1 or lead % 2 == 1
+        """Is the model smooth over F_v?  Exactly if F and its derivatives have no common zero.
 
-    def contains(self, point: Point, modulus: int = 0) -> bool:
-        """Is the point with weighted coordinates on the curve (modulo the modulus)?"""
-        x, y, z = point
-        top = 2 * self.genus + 2
-        left = y * y + sum(c * x**i * z ** (self.genus + 1 - i) for i, c in enumerate(self.full_h)) * y
-        value = left - sum(c * x**i * z ** (top - i) for i, c in enumerate(self.full_f))
-        return value % modulus == 0 if modulus else value == 0
+        Then three of their combinations form a regular sequence of weighted degrees D, D - 1, D - w (or less
+        in sum), and all forms of degree 3 D - 2 w - 2 are in the ideal (Macaulay 1916).
+        """
+        if v not in self.tested:
+            d, w = self.degree, self.weight
+            top = 3 * d - 2 * w - 2
+            column = {key: n for n, key in enumerate(monomials(top, w))}
+            self.work.spend(len(column) ** 3 // 3)
+
+            def multiples() -> Iterator[Row]:
+                for form, degree in zip([self.form, *partials(self.form)], (d, d - 1, d - w, d - 1)):
+                    for i, k, j in monomials(top - degree, w):
+                        row = [0] * len(column)
+                        for c, *key in form:
+                            row[column[key[0] + i, key[1] + k, key[2] + j]] = c
+                        yield row
+
+            self.tested[v] = len(independent(multiples(), v, len(column))) == len(column)
+        return self.tested[v]
 
     def residue(self, point: Point, modulus: int, p: int) -> Point:
-        """A rational point modulo a power of p in the normal form (x, y, 1) or (1, s, z), p | z."""
+        """A point modulo a power of p in normal form: Z = 1; else X = 1, p | Z; else Y = 1, p | X and Z."""
         x, y, z = point
-        scale = pow(z if z % p else x, -1, modulus)
-        y = y * scale ** (self.genus + 1) % modulus
-        return (x * scale % modulus, y, 1) if z % p else (1, y, z * scale % modulus)
+        scale = pow(z if z % p else x if x % p else y, -1, modulus)
+        return x * scale % modulus, y * scale**self.weight % modulus, z * scale % modulus
+
+
+def monomials(degree: int, weight: int) -> list[tuple[int, int, int]]:
+    """The exponents (i, k, j) of all monomials of a weighted degree."""
+    return [(i, k, degree - i - weight * k) for k in range(degree // weight + 1)
+            for i in range(degree - weight * k + 1)]
+
+
+class Section:
+    """A form of weighted degree `multiple`; its zeros have the class `multiple` U."""
+
+    def __init__(self, curve: Curve, value: Any, low: int | None = None, high: int | None = None) -> None:
+        if not items(value):
+            raise Malformed("length", "a section without its degree")
+        self.multiple = integer(value[0], 1)
+        limit(self.multiple <= MAX_MULTIPLE, f"a section of degree above {MAX_MULTIPLE}")
+        size = max([len(value) - 1, *(len(items(row)) for row in value[1:])])
+        need(size <= self.multiple + 1, "form-degree", "more coefficients than its degree has")
+        rows = [integers(row, low, high) for row in value[1:]]
+        self.form = homogeneous(rows, curve.weight, self.multiple)
+
+    def proper(self, curve: Curve, v: int) -> bool:
+        """Does its degree show that it is not 0 on the curve over F_v?"""
+        return self.multiple < curve.degree and any(c % v for c, *_ in self.form)
 
 
 class Reduction:
-    """The points of the curve over F_v in their numbering, and their conjugates."""
+    """The points of the curve over F_v in their numbering, and the divisors of sections."""
 
-    def __init__(self, curve: Curve, v: int, work: Work) -> None:
+    def __init__(self, curve: Curve, v: int) -> None:
         need(curve.smooth(v), "not-smooth", f"the model is not smooth modulo {v}")
-        work.spend(v * (curve.genus + 2))
         self.curve, self.prime = curve, v
-        self.f, self.h = [c % v for c in curve.full_f], [c % v for c in curve.full_h]
-        top = (self.h[-1], self.f[-1])
-        roots: dict[int, Row] = {}
-        for root in range(v):
-            roots.setdefault(root * root % v, []).append(root)
-
-        def fibre(h: int, f: int) -> Row:
-            """The solutions of y^2 + h y = f."""
-            if v == 2:
-                return [y for y in (0, 1) if (y * y + h * y - f) % 2 == 0]
-            return sorted((root - h) * (v + 1) // 2 % v for root in roots.get((h * h + 4 * f) % v, ()))
-
-        self.points: list[Point] = []
-        for x in range(v):
-            ys = fibre(value_at(self.h, x, v), value_at(self.f, x, v))
-            self.points += [(x, y, 1) for y in ys]
-        self.points += [(1, s, 0) for s in fibre(*top)]
+        curve.work.spend(v * (curve.degree + 2) + (0 if curve.weight > 1 else v * v // 10))
+        lines = [[value_at(row, x, v) for row in curve.rows] for x in range(v)]
+        lines.append([sum(c for c, i, k, j in curve.form if (k, j) == (n, 0)) % v
+                      for n in range(len(curve.rows))])
+        ys = quadratic_roots(lines, v) if curve.weight > 1 and v > 2 else all_roots(lines, v)
+        self.points: list[Point] = [(x, y, 1) for x in range(v) for y in ys[x]]
+        self.points += [(1, s, 0) for s in ys[v]]
+        if evaluate(curve.form, (0, 1, 0), v) == 0:
+            self.points.append((0, 1, 0))
         self.number = {point: i for i, point in enumerate(self.points)}
+        self.discs: dict[int, Disc] = {}
 
-    def conjugate(self, i: int) -> int:
-        """The number of the conjugate point."""
-        x, y, z = self.points[i]
-        h = value_at(self.h, x, self.prime) if z else self.h[-1]
-        return self.number[(x, (-y - h) % self.prime, z)]
+    def conjugate(self, i: int) -> int | None:
+        """The number of the conjugate point, if there is a conjugation."""
+        (x, y, z), w, v = self.points[i], self.curve.weight, self.prime
+        if w == 1:
+            return None
+        h = evaluate([term for term in self.curve.form if term[2] == 1], (x, 1, z), v)
+        return self.number[(x, (-y - h) % v, z)]
 
-    def zeros(self, c: Row, zeros: Row, u: Row) -> int:
-        """Check that the zeros of y - c(x) are the divisor (u, c) and the points given; returns m."""
-        v, g = self.prime, self.curve.genus
-        c = trim(c, v)
-        m = max(len(c) - 1, g + 1)
-        norm = trim(plus(plus(times(c, c), times(self.h, c)), self.f, -1), v)
-        rest = divide(norm, u, v)[0]
+    def disc(self, i: int, length: int) -> Disc:
+        """The expansion over F_v at a point, to at least a length."""
+        if i not in self.discs or self.discs[i].series.length < length:
+            series = Series(self.prime, max(length, 4), self.curve.work)
+            self.discs[i] = Disc(self.curve, series, self.prime, self.points[i])
+        return self.discs[i]
+
+    def order_reaches(self, form: Form, i: int, order: int) -> bool:
+        """Does the form vanish at the point to this order?"""
+        if order <= 1:
+            return order < 1 or evaluate(form, self.points[i], self.prime) == 0
+        return not any(self.disc(i, order).restrict(form)[:order])
+
+    def divisor(self, section: Section, zeros: Row, place: dict[int, int], degree: int) -> None:
+        """Check that the zeros of a section are `zeros` and a place of this degree and with these points."""
+        count = section.multiple * self.curve.unit - degree
+        self.curve.work.spend(len(section.form) * (len(zeros) + 1))
         need(zeros == sorted(zeros), "zeros-order", "the zeros are not sorted")
-        need(len(zeros) == 2 * m - len(u) + 1, "zeros-count", f"{len(zeros)} zeros, the degree is {2 * m}")
-        infinite = 2 * m + 1 - len(norm)
-        for i in zeros:
+        need(len(zeros) == count, "zeros-count", f"{len(zeros)} zeros, expected {count}")
+        orders = {i: zeros.count(i) + place.get(i, 0) for i in zeros}
+        for i, order in orders.items():
             need(0 <= i < len(self.points), "zero-number", f"no point has number {i}")
-            x, y, z = self.points[i]
-            if z == 0:
-                need(m == g + 1 and y == (c[m] if len(c) > m else 0), "zero", f"point {i} is no zero")
-                infinite -= 1
-            else:
-                need(value_at(c, x, v) == y, "zero", f"point {i} is no zero of the section")
-                rest, left = divide(rest, [-x, 1], v)
-                need(not left, "zero-multiplicity", f"point {i} is no zero of this multiplicity")
-        need(infinite == 0, "zeros-infinity", "a wrong number of zeros at infinity")
-        return m
+            need(self.order_reaches(section.form, i, 1), "zero", f"point {i} is no zero of the section")
+            need(self.order_reaches(section.form, i, order), "zero-multiplicity",
+                 f"point {i} is no zero of this multiplicity")
+        if not section.proper(self.curve, self.prime):
+            i = zeros[0] if zeros else 0
+            more = self.order_reaches(section.form, i, orders.get(i, place.get(i, 0)) + 1)
+            need(not more, "section-vanishes", "the section vanishes on the curve, or to a higher order")
+
+
+def all_roots(lines: list[Row], v: int) -> list[Row]:
+    """The roots in F_v of every polynomial: its values at 0..v-1 side by side in one large integer."""
+    degree = max(map(len, lines))
+    table = [int.from_bytes(struct.pack(f"<{v}Q", *(pow(y, k, v) for y in range(v))), "little")
+             for k in range(degree)]
+    out = []
+    for line in lines:
+        packed = sum(c * powers for c, powers in zip(line, table)).to_bytes(8 * v, "little")
+        out.append([y for y, value in enumerate(struct.unpack(f"<{v}Q", packed)) if value % v == 0])
+    return out
+
+
+def quadratic_roots(lines: list[Row], v: int) -> list[Row]:
+    """The roots of monic quadratic polynomials over F_v, v odd."""
+    roots: dict[int, Row] = {}
+    for root in range(v):
+        roots.setdefault(root * root % v, []).append(root)
+    return [sorted((root - h) * (v + 1) // 2 % v for root in roots.get((h * h - 4 * c) % v, ()))
+            for c, h, _ in lines]
 
 
 # ---- orders of Jacobians over F_v --------------------------------------------------------------------
@@ -537,60 +720,100 @@ def weil_lower_bound(v: int, g: int, points: int) -> int:
     return max(1, -(-bound.numerator // bound.denominator))
 
 
-def field_tables(v: int, degree: int) -> tuple[Row, Row]:
-    """Powers of a generator of F_{v^degree}, degree >= 2, as codes (base v digits); logarithms of codes."""
-    size = v**degree
-    for tail in range(1, size):
-        low = [tail // v**i % v for i in range(degree)]
-        powers, element = [1], [0, 1] + [0] * (degree - 2)
-        while element[0] != 1 or any(element[1:]):
-            powers.append(sum(c * v**i for i, c in enumerate(element)))
-            if powers[-1] == 0 or len(powers) == size:
+class Field:
+    """F_q, q = v^degree, degree >= 2: elements are logarithms to a generator, -1 stands for 0."""
+
+    def __init__(self, v: int, degree: int) -> None:
+        self.v, self.size, self.order = v, v**degree, v**degree - 1
+        powers: Row = []
+        for tail in range(1, self.size):
+            # powers of t modulo t^degree - (low), as codes in base v, until t is a generator
+            low = [tail // v**i % v for i in range(degree)]
+            powers, element = [1], [0, 1] + [0] * (degree - 2)
+            while element[0] != 1 or any(element[1:]):
+                powers.append(sum(c * v**i for i, c in enumerate(element)))
+                if powers[-1] == 0 or len(powers) == self.size:
+                    break
+                top = element[-1]
+                element = [(a + top * c) % v for a, c in zip([0, *element[:-1]], low)]
+            if len(powers) == self.order and powers[-1]:
                 break
-            top = element[-1]
-            element = [(a - top * c) % v for a, c in zip([0, *element[:-1]], low)]
-        if len(powers) == size - 1 and powers[-1]:
-            logs = [-1] * size
-            for i, code in enumerate(powers):
-                logs[code] = i
-            return powers, logs
-    raise Rejected("field", f"no field of order {size} was found")
+        else:
+            raise Rejected("field", f"no field of order {self.size} was found")
+        self.logs = [-1] * self.size
+        for i, code in enumerate(powers):
+            self.logs[code] = i
+        # the logarithms of 1 + x (Zech)
+        self.zech = [self.logs[code - v + 1 if code % v == v - 1 else code + 1] for code in powers]
 
-
-def extension_points(reduction: Reduction, degree: int, work: Work) -> int:
-    """#X(F_{v^degree}), from tables of powers and of the logarithms of 1 + x (Zech)."""
-    v = reduction.prime
-    size = v**degree
-    work.spend(size * (reduction.curve.genus + 2) * 2)
-    powers, logs = field_tables(v, degree)
-    order = size - 1
-    zech = [logs[code - v + 1 if code % v == v - 1 else code + 1] for code in powers]
-
-    def add(a: int, b: int) -> int:
-        """The logarithm of a sum; -1 stands for 0."""
+    def add(self, a: int, b: int) -> int:
+        """The sum."""
         if a < 0 or b < 0:
             return max(a, b)
-        c = zech[(a - b) % order]
-        return -1 if c < 0 else (b + c) % order
+        c = self.zech[(a - b) % self.order]
+        return -1 if c < 0 else (b + c) % self.order
 
-    def evaluate(coefficients: Row, x: int) -> int:
+    def value(self, coefficients: Row, x: int) -> int:
+        """A polynomial over F_v, with integer coefficients, at x."""
         total = -1
         for c in reversed(coefficients):
-            total = add((total + x) % order if total >= 0 and x >= 0 else -1, logs[c % v])
+            total = self.add((total + x) % self.order if total >= 0 and x >= 0 else -1, self.logs[c % self.v])
         return total
 
-    def solutions(h: int, f: int) -> int:
-        """The number of y with y^2 + h y = f; arguments are logarithms."""
-        if v > 2:
-            square = add(2 * h % order if h >= 0 else -1, (f + logs[4 % v]) % order if f >= 0 else -1)
-            return 1 if square < 0 else 2 * (square % 2 == 0)
-        if h < 0:
-            return 1
-        return 2 * ((f - 2 * h) % order in traceless if f >= 0 else 1)
+    def divide(self, a: Row, b: Row) -> Row:
+        """The remainder of a by b, whose leading coefficient is not 0; without trailing zeros."""
+        rest = a[:]
+        shift = (0 if self.v == 2 else self.order // 2) - b[-1]
+        while len(rest) >= len(b):
+            lead = rest.pop()
+            if lead >= 0:
+                offset = len(rest) + 1 - len(b)
+                for j, c in enumerate(b[:-1]):
+                    if c >= 0:
+                        rest[offset + j] = self.add(rest[offset + j], (lead + shift + c) % self.order)
+        while rest and rest[-1] < 0:
+            rest.pop()
+        return rest
 
-    traceless = {add(2 * z % order, z) for z in range(order)} if v == 2 else set()
-    affine = sum(solutions(evaluate(reduction.h, x), evaluate(reduction.f, x)) for x in range(-1, order))
-    return affine + solutions(logs[reduction.h[-1]], logs[reduction.f[-1]])
+    def times(self, a: Row, b: Row) -> Row:
+        """The product of polynomials."""
+        out = [-1] * max(0, len(a) + len(b) - 1)
+        for i, c in enumerate(a):
+            for j, d in enumerate(b):
+                if c >= 0 and d >= 0:
+                    out[i + j] = self.add(out[i + j], (c + d) % self.order)
+        return out
+
+    def count_roots(self, a: Row) -> int:
+        """The number of different roots of a polynomial, not 0: the degree of its gcd with Y^q - Y."""
+        a = self.divide(a, [-1] * len(a) + [0])
+        power: Row = [0]
+        for bit in bin(self.size)[2:]:
+            power = self.divide(self.times(power, power), a)
+            if bit == "1":
+                power = self.divide([-1, *power], a)
+        minus = 0 if self.v == 2 else self.order // 2
+        b = power + [-1] * (2 - len(power))
+        b[1] = self.add(b[1], minus)
+        b = self.divide(b, a)
+        while b:
+            a, b = b, self.divide(a, b)
+        return len(a) - 1
+
+
+def extension_points(curve: Curve, v: int, degree: int) -> int:
+    """#X(F_{v^degree}), degree >= 2; conjugate values of x have as many points."""
+    size = v**degree
+    curve.work.spend(size * (20 + 4 * curve.degree**2 * size.bit_length() // degree))
+    field = Field(v, degree)
+    total = int(evaluate(curve.form, (0, 1, 0), v) == 0)
+    total += field.count_roots([field.logs[sum(c for c, i, k, j in curve.form if (k, j) == (n, 0)) % v]
+                                for n in range(len(curve.rows))])
+    for x in range(-1, field.order):
+        orbit = {x * v**i % field.order for i in range(degree)} if x > 0 else {x}
+        if x == min(orbit):
+            total += len(orbit) * field.count_roots([field.value(row, x) for row in curve.rows])
+    return total
 
 
 def jacobian_order(v: int, g: int, counts: Row) -> int:
@@ -606,42 +829,97 @@ def jacobian_order(v: int, g: int, counts: Row) -> int:
 # ---- divisors ----------------------------------------------------------------------------------------
 
 
-class Mumford:
-    """The effective divisor u(x) = 0, y = w(x) over Q."""
+class Place:
+    """The points (x(t) : y(t) : z(t)) over Q, t a root of u; more exactly the subscheme Q[t]/u of the curve.
 
-    def __init__(self, curve: Curve, u: list[Fraction], w: list[Fraction]) -> None:
+    Where all is integral at v and the reduction is still a closed subscheme, Z_(v)[t]/u is one, and flat: the
+    class of the place reduces to that of its reduction, and a section that vanishes there has it as zeros.
+    """
+
+    def __init__(self, curve: Curve, u: list[Fraction], coordinates: list[list[Fraction]]) -> None:
         need(len(u) > 1 and u[-1] == 1, "place-monic", "u is not monic of positive degree")
-        need(len(w) < len(u) and not (w and w[-1] == 0), "place-degree", "w has no smaller degree than u")
-        self.u, self.w, self.degree = u, w, len(u) - 1
-        scale = lcm(*(c.denominator for c in u + w))
-        size = max(c.numerator.bit_length() for c in u + w) + scale.bit_length()
-        if size * (self.degree + 2 * curve.genus) > MAX_HEIGHT:
-            raise Declined("a place of too large a height or degree")
-        # with x = X / scale all is integral
-        top = 2 * curve.genus + 2
-        big_u = [int(c * scale ** (self.degree - i)) for i, c in enumerate(u)]
-        big_w = [int(c * scale ** (curve.genus + 1 + self.degree) / scale**i) for i, c in enumerate(w)]
-        extra = scale**self.degree
-        big_h = [c * scale ** (curve.genus + 1 - i) * extra for i, c in enumerate(curve.full_h)]
-        big_f = [c * scale ** (top - i) * extra**2 for i, c in enumerate(curve.full_f)]
-        norm = plus(plus(times(big_w, big_w), times(big_h, big_w)), big_f, -1)
-        for i in reversed(range(self.degree, len(norm))):
-            lead = norm[i]
-            for j, c in enumerate(big_u):
-                norm[i - self.degree + j] -= lead * c
-        need(not any(norm), "place-off-curve", "u does not divide w^2 + h w - f")
+        need(all(len(c) < len(u) and c[-1:] != [0] for c in coordinates), "place-degree",
+             "a coordinate of no smaller degree than u")
+        self.curve, self.u, self.coordinates, self.degree = curve, u, coordinates, len(u) - 1
+        numbers = [*u, *(c for row in coordinates for c in row)]
+        self.denominator = lcm(*(c.denominator for c in numbers))
+        size = max(c.numerator.bit_length() for c in numbers) + self.denominator.bit_length()
+        limit(size * (self.degree + curve.degree) <= MAX_HEIGHT, "a place of too large a height or degree")
+        bits = size * self.degree * curve.weight * curve.degree
+        curve.work.spend(len(curve.form) * self.degree**2 * (1 + int((bits / 600) ** 1.6)))
+        # with t = T / s, and the coordinates multiplied by s^e, s^(e w), s^e, all is integral
+        s, e = self.denominator, self.degree
+        big_u = [int(c * s ** (e - i)) for i, c in enumerate(u)]
+        big = [[int(c * s ** (e * weight) / s**i) for i, c in enumerate(row)]
+               for row, weight in zip(coordinates, (1, curve.weight, 1))]
+        need(not on_place(curve.form, big_u, big, 0), "place-off-curve", "a place that is not on the curve")
+        need(any(self.closed(v) for v in LARGE_PRIMES if s % v), "place-collapses",
+             "different roots of u are the same point")
 
-    def modulo(self, p: int, modulus: int) -> tuple[Row, Row]:
-        """u and w modulo a power of p."""
-        denominators = lcm(*(c.denominator for c in self.u + self.w))
-        need(denominators % p != 0, "place-denominator", f"a place has a denominator divisible by {p}")
-        u, w = ([c.numerator * pow(c.denominator, -1, modulus) % modulus for c in a]
-                for a in (self.u, self.w))
-        return u, w
+    def modulo(self, p: int, modulus: int) -> tuple[Row, list[Row]]:
+        """u and the coordinates modulo a power of p."""
+        need(self.denominator % p != 0, "place-denominator", f"a place has a denominator divisible by {p}")
+        u, *coordinates = ([c.numerator * pow(c.denominator, -1, modulus) % modulus for c in row]
+                           for row in (self.u, *self.coordinates))
+        return u, coordinates
+
+    def spans(self, v: int, degree: int) -> bool:
+        """Do the forms of a weighted degree restrict onto all of F_v[t]/u?
+
+        Then u has different points as roots, and a section over Z_v of this degree that vanishes on the place
+        modulo v^N is, modulo v^N, one that vanishes on it.
+        """
+        u, coordinates = self.modulo(v, v)
+        e, keys = self.degree, monomials(degree, self.curve.weight)
+        self.curve.work.spend(len(keys) * e**2)
+        x, y, z = powers_on_place(keys, u, coordinates, v)
+        products = (divide(times(divide(times(x[i], y[k]), u, v)[1], z[j]), u, v)[1] for i, k, j in keys)
+        return len(independent((row + [0] * (e - len(row)) for row in products), v, e)) == e
+
+    def closed(self, v: int) -> bool:
+        """Is F_v[t]/u a closed subscheme of the curve?  Polynomials of degree e - 1 in the charts decide."""
+        return self.spans(v, max(1, self.curve.weight * (self.degree - 1)))
+
+    def points(self, reduction: Reduction) -> dict[int, int]:
+        """The rational points of the reduction, with multiplicities."""
+        v, out = reduction.prime, {}
+        u, coordinates = self.modulo(v, v)
+        self.curve.work.spend(v * self.degree)
+        for t in range(v):
+            multiplicity = 0
+            while len(u) > 1 and value_at(u, t, v) == 0:
+                u, multiplicity = divide(u, [-t, 1], v)[0], multiplicity + 1
+            if multiplicity:
+                x, y, z = (value_at(c, t, v) for c in coordinates)
+                out[reduction.number[self.curve.residue((x, y, z), v, v)]] = multiplicity
+        return out
+
+
+def powers_on_place(
+    keys: Iterable[Sequence[int]], u: Row, coordinates: list[Row], modulus: int
+) -> list[list[Row]]:
+    """The powers of the coordinates modulo u that monomials with these exponents need."""
+    powers: list[list[Row]] = []
+    for row, exponents in zip(coordinates, zip(*keys)):
+        powers.append([[1]])
+        for _ in range(max(exponents)):
+            powers[-1].append(divide(times(powers[-1][-1], row), u, modulus)[1])
+    return powers
+
+
+def on_place(form: Form, u: Row, coordinates: list[Row], modulus: int) -> Row:
+    """A form at (x(t), y(t), z(t)) modulo u, over Z or modulo a number."""
+    total: Row = []
+    if form:
+        x, y, z = powers_on_place([key for _, *key in form], u, coordinates, modulus)
+    for c, i, k, j in form:
+        product = times(divide(times(x[i], y[k]), u, modulus)[1], z[j])
+        total = plus(total, divide(product, u, modulus)[1], c)
+    return trim(total, modulus)
 
 
 Divisor = list[tuple[int, str, Any]]
-"""Triples (multiplicity, "point", point), (.., "mumford", number of the place), (.., "fibres", how many)."""
+"""Triples (multiplicity, "point", point), (.., "closed", number of the place), (.., "fibres", how many)."""
 
 
 # ---- J(F_v) from sections: the record `local` ---------------------------------------------------------
@@ -651,57 +929,65 @@ class Local:
     """A checked record `local`: the class of every point of X(F_v) and of the places over Q."""
 
     def __init__(self, proof: Proof, record: dict[str, Any]) -> None:
-        v, invariants, origin, unit, base, define, close, mumford, counts = fields(
-            record, "prime", "invariants", "origin", "unit", "base", "define", "close", "mumford", "counts")
-        self.prime = prime(v, MAX_PRIME)
+        v, invariants, origin, unit, base, define, close, places, counts = fields(
+            record, "prime", "invariants", "origin", "unit", "base", "define", "close", "places", "counts")
+        self.proof, self.curve, self.prime = proof, proof.curve, prime(v, MAX_PRIME)
         need(self.prime not in proof.locals, "duplicate", f"a second record for {v}")
-        self.reduction = Reduction(proof.curve, self.prime, proof.work)
+        self.reduction = Reduction(proof.curve, self.prime)
         self.moduli = integers(invariants, 2)
-        need(len(self.moduli) <= 2 * proof.curve.genus, "invariants", "more than 2 g invariants")
+        need(len(self.moduli) <= 2 * self.curve.genus, "invariants", "more than 2 g invariants")
         self.points, self.unit = len(self.reduction.points), [0] * len(self.moduli)
         self.logs: dict[int, Row] = {}
         self.places: list[Row] = []
         if self.points == 0:
             empty = origin is None and counts == 0 and type(counts) is int
-            empty = empty and all(x == [] for x in (invariants, unit, base, define, close, mumford))
+            empty = empty and all(x == [] for x in (invariants, unit, base, define, close, places))
             need(empty, "empty-record", "there is no point modulo the prime, and the record claims more")
             return
         # a character of J(F_v) constant on X(F_v) has a sum of N terms and an L-polynomial of degree 2 g - 2
-        need(self.points**2 > (2 * proof.curve.genus - 2) ** 2 * self.prime, "generation",
+        need(self.points**2 > (2 * self.curve.genus - 2) ** 2 * self.prime, "generation",
              "too few points to generate the group")
-        reduced = [place.modulo(self.prime, self.prime) for place in proof.places]
         need(all(b % a == 0 for a, b in zip(self.moduli, self.moduli[1:])), "invariants",
              "the invariants do not divide each other")
         self.unit = self.element(unit)
         self.column: dict[int, int | tuple[int, Row]] = {}
         self.vectors: dict[int, Row] = {}
         self.learn(integer(origin, 0, self.points - 1), [0] * len(self.moduli), 0)
-        if len(items(base)) > MAX_BASE:
-            raise Declined(f"more than {MAX_BASE} base points")
+        limit(len(items(base)) <= MAX_BASE, f"more than {MAX_BASE} base points")
         self.width = 1 + len(base)
         for k, entry in enumerate(base, start=1):
             i, log = items(entry, 2)
             need(integer(i, 0, self.points - 1) not in self.logs, "base", f"base point {i} is known before")
             self.learn(i, self.element(log), k)
         for entry in items(define):
-            self.define(*items(entry, 2))
+            n, zeros = self.section(entry)
+            unknown = [i for i in zeros if i not in self.logs]
+            need(len(unknown) == 1, "define", f"{len(unknown)} unknown zeros, expected 1")
+            known = [i for i in zeros if i in self.logs]
+            self.learn(unknown[0], self.rest(n, known), (n, known))
         need(len(self.logs) == self.points, "undefined-point", "some point of X(F_v) has no class")
-        relations = [self.relation(*items(entry, 2)) for entry in items(close)]
-        for i in range(self.points):
-            if self.reduction.conjugate(i) == i:
-                need(not any(self.sum([(2, self.logs[i]), (-1, self.unit)])), "relation-log",
-                     "the logarithms do not satisfy 2 P = U")
-                relations.append(plus([2 * c for c in self.vector(i)], [1], -1))
-        self.certify(relations, proof, integer(counts))
-        for k, entry in enumerate(items(mumford, len(proof.places))):
-            number, c, zeros = items(entry, 3)
+        relations = [self.relation(*self.section(entry)) for entry in items(close)]
+        own = (i for i in range(self.points) if self.reduction.conjugate(i) == i)
+        relations += [self.relation(1, [i, i]) for i in own]
+        self.certify(relations, integer(counts))
+        for k, entry in enumerate(items(places, len(proof.places))):
+            number, *entry = items(entry, 3)
             need(integer(number) == k, "place-order", "the places are not listed in their order")
-            u, w = reduced[k]
-            c, zeros = section(c, 0, self.prime - 1), integers(zeros)
-            missed = divide(plus(c, w, -1), u, self.prime)[1]
+            self.places.append(self.rest(*self.section(entry, proof.places[k])))
+
+    def section(self, entry: Any, place: Place | None = None) -> tuple[int, Row]:
+        """The degree of a section, and its zeros other than the place."""
+        form, zeros = items(entry, 2)
+        section, zeros = Section(self.curve, form, 0, self.prime - 1), integers(zeros)
+        inside: dict[int, int] = {}
+        if place is not None:
+            u, coordinates = place.modulo(self.prime, self.prime)
+            need(place.closed(self.prime), "place-collapses", "different points of a place meet modulo v")
+            missed = on_place(section.form, u, coordinates, self.prime)
             need(not missed, "place-section", "the section misses the place")
-            m = self.reduction.zeros(c, zeros, u)
-            self.places.append(self.sum([(m, self.unit), *((-1, self.logs[i]) for i in zeros)]))
+            inside = place.points(self.reduction)
+        self.reduction.divisor(section, zeros, inside, place.degree if place else 0)
+        return section.multiple, zeros
 
     def element(self, value: Any) -> Row:
         """An element of A, entries reduced."""
@@ -716,22 +1002,16 @@ class Local:
             total = [t + k * a for t, a in zip(total, row)]
         return [t % d for t, d in zip(total, self.moduli)]
 
+    def rest(self, n: int, zeros: Row) -> Row:
+        """The class of n U less the zeros."""
+        return self.sum([(n, self.unit), *((-1, self.logs[i]) for i in zeros)])
+
     def learn(self, i: int, log: Row, origin: int | tuple[int, Row]) -> None:
         """Enter a point and its conjugate: the class, and how it is expressed in the columns."""
-        other = self.reduction.conjugate(i)
         self.logs[i], self.column[i] = log, origin
-        if other != i:
-            self.logs[other], self.column[other] = self.sum([(1, self.unit), (-1, log)]), (1, [i])
-
-    def define(self, c: Any, zeros: Any) -> None:
-        """A section with one unknown zero defines its class."""
-        c, zeros = section(c, 0, self.prime - 1), integers(zeros)
-        m = self.reduction.zeros(c, zeros, [1])
-        unknown = [i for i in zeros if i not in self.logs]
-        need(len(unknown) == 1, "define", f"{len(unknown)} unknown zeros, expected 1")
-        known = [i for i in zeros if i in self.logs]
-        log = self.sum([(m, self.unit), *((-1, self.logs[i]) for i in known)])
-        self.learn(unknown[0], log, (m, known))
+        other = self.reduction.conjugate(i)
+        if other is not None and other != i:
+            self.logs[other], self.column[other] = self.rest(1, [i]), (1, [i])
 
     def vector(self, i: int) -> Row:
         """A point in the columns (U, base points); the origin is 0."""
@@ -741,68 +1021,61 @@ class Local:
             if type(origin) is int:
                 self.vectors[j] = [int(origin == k > 0) for k in range(self.width)]
             elif type(origin) is tuple:
-                m, known = origin
+                n, known = origin
                 missing = [k for k in known if k not in self.vectors]
                 if missing:
                     todo += missing
                     continue
-                row = [m] + [0] * (self.width - 1)
+                row = [n] + [0] * (self.width - 1)
                 for k in known:
-                    row = [a - b for a, b in zip(row, self.vectors[k])]
+                    row = plus(row, self.vectors[k], -1)
                 self.vectors[j] = row
-                if max(map(abs, row)) >> MAX_BITS:
-                    raise Declined("points far from the base")
+                limit(not max(map(abs, row)) >> MAX_BITS, "points far from the base")
             todo.pop()
         return self.vectors[i]
 
-    def relation(self, c: Any, zeros: Any) -> Row:
-        """A section whose zeros are all known: a relation, checked in A."""
-        c, zeros = section(c, 0, self.prime - 1), integers(zeros)
-        m = self.reduction.zeros(c, zeros, [1])
-        log = self.sum([(-m, self.unit), *((1, self.logs[i]) for i in zeros)])
-        need(not any(log), "relation-log", "the logarithms do not satisfy a closing relation")
-        row = [-m] + [0] * (self.width - 1)
+    def relation(self, n: int, zeros: Row) -> Row:
+        """Points that are all known and n U are equivalent: a relation in the columns, checked in A."""
+        need(not any(self.rest(n, zeros)), "relation-log", "the logarithms do not satisfy a closing relation")
+        row = [-n] + [0] * (self.width - 1)
         for i in zeros:
-            row = [a + b for a, b in zip(row, self.vector(i))]
+            row = plus(row, self.vector(i))
         return row
 
-    def certify(self, relations: list[Row], proof: Proof, counts: int) -> None:
+    def certify(self, relations: list[Row], counts: int) -> None:
         """A is J(F_v): the logarithms are onto, the relations have index #J(F_v)."""
-        v, g, order = self.prime, proof.curve.genus, prod(self.moduli)
+        v, g, order = self.prime, self.curve.genus, prod(self.moduli)
         image = diagonal(self.moduli)
         for row in [self.unit, *(self.logs[i] for i, k in self.column.items() if type(k) is int)]:
             insert(image, row)
         need(index_of(image) == 1, "not-onto", "the logarithms do not generate the group")
-        index = lattice_index(relations, self.width, proof.work)
+        index = lattice_index(relations, self.width, self.curve.work)
         need(index == order, "index", "the index of the relations is not the order of the group")
         need(counts in (0, g), "counts", f"counts is {counts}, expected 0 or {g}")
         if counts == 0:
             need(index < 2 * weil_lower_bound(v, g, self.points), "bound", "a multiple of #J is possible")
         else:
-            if v**g > MAX_FIELD:
-                raise Declined(f"a field of more than {MAX_FIELD} elements")
-            tower = [self.points] + [extension_points(self.reduction, i, proof.work) for i in range(2, g + 1)]
+            limit(v**g <= MAX_FIELD, f"a field of more than {MAX_FIELD} elements")
+            tower = [self.points] + [extension_points(self.curve, v, i) for i in range(2, g + 1)]
             need(index == jacobian_order(v, g, tower), "order", "the index is not #J(F_v)")
 
-    def log(self, divisor: Divisor, proof: Proof) -> Row:
+    def log(self, divisor: Divisor) -> Row:
         """The class of a divisor over Q, less its degree times the origin."""
         terms = []
         for k, kind, what in divisor:
             if kind == "point":
-                terms.append((k, self.class_of(what, proof)))
-            elif kind == "mumford":
-                terms.append((k, self.places[what]))
-            elif kind == "fibres":
-                terms.append((k * what, self.unit))
+                terms.append((k, self.class_of(what)))
+            else:
+                terms.append((k, self.places[what]) if kind == "closed" else (k * what, self.unit))
         return self.sum(terms)
 
-    def class_of(self, point: Point, proof: Proof) -> Row:
+    def class_of(self, point: Point) -> Row:
         """The class of a rational point."""
-        return self.logs[self.reduction.number[proof.curve.residue(point, self.prime, self.prime)]]
+        return self.logs[self.reduction.number[self.curve.residue(point, self.prime, self.prime)]]
 
-    def shifted(self, log: Row, proof: Proof) -> Vector:
+    def shifted(self, log: Row) -> Vector:
         """The class of iota(P) = d P - B from that of P."""
-        return tuple(self.sum([(proof.degree, log), (-1, self.log(proof.base, proof))]))
+        return tuple(self.sum([(self.proof.degree, log), (-1, self.log(self.proof.base))]))
 
 
 # ---- p-adic integrals: the record `padic` --------------------------------------------------------------
@@ -816,191 +1089,51 @@ class Ball:
         self.numerators, self.shift, self.precision = [c % modulus for c in numerators], shift, precision
 
 
-class Disc:
-    """A residue disc: chart coordinates a, b and differentials as series in the parameter.
-
-    Affine: a = x, b = y; at infinity a = 1/x, b = y/x^(g+1).  The parameter is a - a0, or b - b0 where 2 b +
-    h(a) vanishes modulo p (ramified).
-    """
-
-    def __init__(self, padic: Padic, point: Point) -> None:
-        self.padic, p, q, length = padic, padic.prime, padic.modulus, padic.terms
-        f, h = padic.proof.curve.full_f, padic.proof.curve.full_h
-        self.infinite = point[2] == 0
-        self.f, self.h = (f[::-1], h[::-1]) if self.infinite else (f, h)
-        a0, b0 = (0, point[1]) if self.infinite else (point[0], point[1])
-        df, dh = derivative(self.f), derivative(self.h)
-        self.ramified = (2 * b0 + value_at(self.h, a0, p)) % p == 0
-        if self.ramified and p > 2:
-            # the centre is a Weierstrass point
-            square = plus(times(self.h, self.h), self.f, 4)
-            slope = derivative(square)
-            for _ in range(q.bit_length()):
-                a0 = (a0 - value_at(square, a0, q) * pow(value_at(slope, a0, q), -1, q)) % q
-            b0 = -value_at(self.h, a0, q) * pow(2, -1, q) % q
-        variable = [0, 1] + [0] * (length - 2)
-        constant = [0] * (length - 1)
-        self.a, self.b = [a0, *constant], [b0, *constant]
-        moving = self.b if self.ramified else self.a
-        moving[:] = plus(moving, variable)
-        start = value_at(dh, a0, p) * b0 - value_at(df, a0, p) if self.ramified else 2 * b0 + value_at(
-            self.h, a0, p)
-        inverse = [pow(start, -1, p), *constant]
-        one = [1, *constant]
-        # Newton's iteration for the other coordinate and for the inverse of the slope; both are verified
-        for _ in range(q.bit_length() + length.bit_length() + 2):
-            ha, fa = padic.compose(self.h, self.a), padic.compose(self.f, self.a)
-            value = padic.reduce(plus(padic.product(self.b, plus(self.b, ha)), fa, -1))
-            if self.ramified:
-                slope_series = padic.product(padic.compose(dh, self.a), self.b)
-                slope_series = plus(slope_series, padic.compose(df, self.a), -1)
-            else:
-                slope_series = plus(ha, self.b, 2)
-            check = padic.product(slope_series, inverse)
-            if not any(value) and check == one:
-                break
-            inverse = padic.product(inverse, padic.reduce(plus([2, *constant], check, -1)))
-            step = padic.reduce(padic.product(value, inverse))
-            if self.ramified:
-                self.a = padic.reduce(plus(self.a, step, -1))
-            else:
-                self.b = padic.reduce(plus(self.b, step, -1))
-        else:
-            raise Rejected("expansion", "a residue disc was not expanded")
-        self.centre = (self.a[0], self.b[0])
-        # dx / (2 y + h), or - db over the derivative of the equation by a
-        first = padic.reduce([-c for c in inverse]) if self.ramified else inverse
-        self.forms = [first]
-        for _ in range(1, padic.proof.curve.genus):
-            self.forms.append(padic.product(self.forms[-1], self.a))
-        if self.infinite:
-            self.forms = [padic.reduce([-c for c in form]) for form in reversed(self.forms)]
-
-    def section(self, even: Row, odd: Row, m: int) -> Row:
-        """even(x) + odd(x) y, at infinity divided by x^m, as a series."""
-        if self.infinite:
-            even = (even + [0] * (m + 1 - len(even)))[::-1]
-            odd = (odd + [0] * (m - self.padic.proof.curve.genus - len(odd)))[::-1]
-        left = self.padic.compose(even, self.a)
-        return self.padic.reduce(plus(left, self.padic.product(self.padic.compose(odd, self.a), self.b)))
-
-    def small_roots(self, series: Row) -> Row:
-        """The monic polynomial whose roots are the zeros of the series in the disc (Weierstrass)."""
-        padic, p, q = self.padic, self.padic.prime, self.padic.modulus
-        m = next((k for k, c in enumerate(series) if c % p), None)
-        if m is None:
-            raise Rejected("section-vanishes", "a section vanishes modulo p on a disc")
-        need(padic.terms >= m * padic.digits, "terms", "too few terms for the zeros of a section")
-        low, high = series[:m], series[m:] + [0] * m
-        inverse = padic.inverse(high)
-        quotient = inverse
-        for _ in range(padic.digits):
-            rest = padic.product(quotient, low + [0] * (padic.terms - m))
-            quotient = padic.product(inverse, plus([1], rest[m:] + [0] * m, -1))
-        rest = padic.product(quotient, low + [0] * (padic.terms - m))
-        monic = [c % q for c in rest[:m]] + [1]
-        need(divide(series, monic, q)[1] == [] and not any(c % p for c in monic[:m]), "roots",
-             "the zeros of a section were not separated")
-        return monic
-
-    def integral(self, monic: Row) -> Ball:
-        """The integrals from the centre, summed over the roots of a polynomial t^m + .. = t^m modulo p.
-
-        The terms are a_{k-1} s_k / k, s_k the sum of the k-th powers of the roots, v(s_k) >= k / m.  Those
-        with k <= K = m N are known modulo p^(N - e), p^e <= K < p^(e+1).  The others vanish there: if
-        p^(e+j) <= k < p^(e+j+1), j >= 1, then k / m > p^(j-1) N >= N + j - 1, so v(s_k / k) >= N - e.
-        """
-        padic, p, q, m = self.padic, self.padic.prime, self.padic.modulus, len(monic) - 1
-        g = padic.proof.curve.genus
-        if not any(monic[:m]):
-            return Ball(p, [0] * g, 0, padic.digits)
-        length, lost = m * padic.digits, 0
-        need(length <= padic.terms, "terms", f"{padic.terms} terms, more are needed for {m} zeros")
-        while p ** (lost + 1) <= length:
-            lost += 1
-        sums: Row = []
-        for k in range(1, length + 1):
-            total = k * monic[m - k] if k <= m else 0
-            total += sum(monic[m - i] * sums[k - 1 - i] for i in range(1, min(k - 1, m) + 1))
-            sums.append(-total % q)
-        weights = []
-        for k, s in enumerate(sums, start=1):
-            e = valuation(k, p)
-            weights.append(s * p ** (lost - e) * pow(k // p**e, -1, q))
-        numerators = [sum(a * b for a, b in zip(form, weights)) for form in self.forms]
-        return Ball(p, numerators, lost, padic.digits - lost)
-
-
 class Padic:
     """A checked record `padic`: Log of centres, of rational points and of the places over Q.
 
-    Log(P) is half the integral from the conjugate of P to P; Log of the zeros of a section is 0.
+    Log(D) is the integral of the regular differentials over D - (deg D / deg U) U, so that it is 0 for the
+    zeros of a section.
     """
 
     def __init__(self, proof: Proof, record: dict[str, Any]) -> None:
-        p, digits, terms, sections, discs, mumford, reduction = fields(
-            record, "prime", "digits", "terms", "sections", "discs", "mumford", "reduction")
-        self.prime = prime(p, MAX_PRIME)
-        self.digits, self.terms = integer(digits, 1), integer(terms, 2)
+        p, digits, terms, sections, discs, places, reduction = fields(
+            record, "prime", "digits", "terms", "sections", "discs", "places", "reduction")
+        self.proof, self.curve, self.prime = proof, proof.curve, prime(p, MAX_PRIME)
+        self.digits, length = integer(digits, 1), integer(terms, 2)
         need(self.prime not in proof.padics, "duplicate", f"a second record for {p}")
         bits = self.digits * self.prime.bit_length()
-        if self.terms > MAX_TERMS or bits > MAX_BITS or bits * self.terms > MAX_SERIES:
-            raise Declined("more terms or digits than this checker handles")
-        self.proof, self.modulus = proof, self.prime**self.digits
-        self.width = (2 * self.modulus.bit_length() + self.terms.bit_length() + 8) // 8
+        limit(length <= MAX_TERMS and bits <= MAX_BITS and bits * length <= MAX_SERIES,
+              "more terms or digits than this checker handles")
+        self.series = Series(self.prime**self.digits, length, self.curve.work)
         self.reduced = boolean(reduction)
-        if self.reduced:
-            local = proof.locals.get(self.prime)
-            need(local is not None and local.points > 0, "no-local", f"no group at {p}")
-        self.reduction = Reduction(proof.curve, self.prime, proof.work)
-        self.known: dict[int, Disc] = {}
+        local = proof.locals.get(self.prime)
+        need(not self.reduced or (local is not None and local.points > 0), "no-local", f"no group at {p}")
+        self.reduction = Reduction(self.curve, self.prime)
+        self.discs: dict[int, Disc] = {}
+        self.forms: dict[int, list[Row]] = {}
         self.logs: dict[int, Ball] = {}
-        self.sections = [self.section(*(section(c) for c in items(entry, 2))) for entry in items(sections)]
-        totals = [self.total(*section[:2]) for section in self.sections]
+        self.sections: list[tuple[dict[int, int], Ball]] = []
+        for entry in items(sections):
+            section = Section(self.curve, entry)
+            orders, integrals = self.vanishing(section, set())
+            need(sum(orders.values()) == section.multiple * self.curve.unit, "section-zeros",
+                 "not all zeros of a section are rational modulo p")
+            self.sections.append((orders, self.combine([(1, ball) for ball in integrals.values()])))
         for entry in items(discs):
-            self.solve(entry, totals)
-        self.places: list[Ball | None] = [None] * len(proof.places)
-        given = [integer(items(entry, 3)[0], 0, len(proof.places) - 1) for entry in items(mumford)]
-        need(given == sorted(set(given)), "place-order", "the places are not listed in their order")
-        sources = {k: (section(even), section(odd)) for k, even, odd in mumford}
-        for k in range(len(proof.places)):
-            self.places[k] = self.place(proof.places[k], sources.get(k))
-
-    # -- series modulo (p^N, t^T)
-
-    def reduce(self, a: Row) -> Row:
-        """Coefficients modulo p^N, T of them."""
-        return [c % self.modulus for c in a[: self.terms]]
-
-    def product(self, a: Sequence[int], b: Sequence[int]) -> Row:
-        """The product, through one product of large integers (Kronecker)."""
-        w, q, length = self.width, self.modulus, self.terms
-        self.proof.work.spend(length + int((length * w / 60) ** 1.6))
-        x, y = (int.from_bytes(b"".join((c % q).to_bytes(w, "little") for c in s), "little") for s in (a, b))
-        packed = (x * y).to_bytes(w * (len(a) + len(b) + 1), "little")
-        return [int.from_bytes(packed[i * w : (i + 1) * w], "little") % q for i in range(length)]
-
-    def compose(self, coefficients: Row, series: Row) -> Row:
-        """A polynomial at a series."""
-        total = [0] * self.terms
-        for c in reversed(coefficients):
-            total = self.product(total, series)
-            total[0] = (total[0] + c) % self.modulus
-        return total
-
-    def inverse(self, a: Row) -> Row:
-        """The inverse of a series with a unit constant term."""
-        out = [pow(a[0], -1, self.modulus)] + [0] * (self.terms - 1)
-        for _ in range(self.terms.bit_length()):
-            out = self.product(out, self.reduce(plus([2], self.product(a, out), -1)))
-        return out
+            self.solve(entry)
+        self.places: list[Ball] = []
+        for k, entry in enumerate(items(places, len(proof.places))):
+            number, form = items(entry, 2)
+            need(integer(number) == k, "place-order", "the places are not listed in their order")
+            self.places.append(self.place(proof.places[k], Section(self.curve, form)))
 
     def combine(self, terms: Sequence[tuple[int, Ball]], divisor: int = 1) -> Ball:
         """A combination with integer coefficients, divided by an integer."""
         p, used = self.prime, [(c, ball) for c, ball in terms if c]
         shift = max([ball.shift for _, ball in used], default=0)
         precision = min([ball.precision + valuation(c, p) for c, ball in used], default=self.digits)
-        total = [0] * self.proof.curve.genus
+        total = [0] * self.curve.genus
         for c, ball in used:
             factor = c * p ** (shift - ball.shift)
             total = [t + factor * a for t, a in zip(total, ball.numerators)]
@@ -1012,142 +1145,135 @@ class Padic:
 
     def disc(self, i: int) -> Disc:
         """The expansion of the disc of point i."""
-        if i not in self.known:
-            self.known[i] = Disc(self, self.reduction.points[i])
-        return self.known[i]
+        if i not in self.discs:
+            self.discs[i] = Disc(self.curve, self.series, self.prime, self.reduction.points[i])
+        return self.discs[i]
 
-    def section(self, even: Row, odd: Row) -> tuple[dict[int, int], dict[int, Ball], int]:
-        """The order of vanishing on every disc, the integrals S_c, and what is missing to the degree."""
-        orders, integrals, missing = self.vanishing(even, odd)
-        need(missing == 0, "section-zeros", "not all zeros of a section are rational modulo p")
-        return orders, integrals, missing
+    def small_roots(self, series: Row) -> Row:
+        """The monic polynomial whose roots are the zeros of the series in the disc (Weierstrass)."""
+        ring, p, q = self.series, self.prime, self.series.modulus
+        m = next((k for k, c in enumerate(series) if c % p), None)
+        if m is None:
+            raise Rejected("section-vanishes", "a section vanishes modulo p on a disc")
+        need(ring.length >= m * self.digits, "terms", "too few terms for the zeros of a section")
+        low, inverse = series[:m], ring.inverse(ring.reduce(series[m:]))
+        quotient = inverse
+        for _ in range(self.digits):
+            rest = ring.product(quotient, low)
+            quotient = ring.product(inverse, plus([1], rest[m:], -1))
+        rest = ring.product(quotient, low)
+        monic = [c % q for c in rest[:m]] + [1]
+        need(divide(series, monic, q)[1] == [] and not any(c % p for c in monic[:m]), "roots",
+             "the zeros of a section were not separated")
+        return monic
 
-    def vanishing(self, even: Row, odd: Row) -> tuple[dict[int, int], dict[int, Ball], int]:
-        """As `section`, for sections with other zeros too."""
-        p, g = self.prime, self.proof.curve.genus
-        m = multiple(even, odd, g)
-        even, odd = even[: m + 1], odd[: max(0, m - g)]
+    def integral(self, i: int, monic: Row) -> Ball:
+        """The integrals from the centre of a disc, summed over the roots of t^m + .. = t^m modulo p.
+
+        The terms are a_{k-1} s_k / k, s_k the sum of the k-th powers of the roots, v(s_k) >= k / m.  Those
+        with k <= K = m N are known modulo p^(N - e), p^e <= K < p^(e+1).  The others vanish there: if
+        p^(e+j) <= k < p^(e+j+1), j >= 1, then k / m > p^(j-1) N >= N + j - 1, so v(s_k / k) >= N - e.
+        """
+        p, q, m = self.prime, self.series.modulus, len(monic) - 1
+        if not any(monic[:m]):
+            return Ball(p, [0] * self.curve.genus, 0, self.digits)
+        length, lost = m * self.digits, 0
+        need(length <= self.series.length, "terms", f"too few terms for {m} zeros")
+        while p ** (lost + 1) <= length:
+            lost += 1
+        self.curve.work.spend(length * (m + self.curve.genus))
+        sums: Row = []
+        for k in range(1, length + 1):
+            total = k * monic[m - k] if k <= m else 0
+            total += sum(monic[m - i] * sums[k - 1 - i] for i in range(1, min(k - 1, m) + 1))
+            sums.append(-total % q)
+        weights = []
+        for k, s in enumerate(sums, start=1):
+            e = valuation(k, p)
+            weights.append(s * p ** (lost - e) * pow(k // p**e, -1, q))
+        if i not in self.forms:
+            self.forms[i] = self.disc(i).differentials()
+        numerators = [sum(a * b for a, b in zip(form, weights)) for form in self.forms[i]]
+        return Ball(p, numerators, lost, self.digits - lost)
+
+    def vanishing(self, section: Section, apart: set[int]) -> tuple[dict[int, int], dict[int, Ball]]:
+        """The order of vanishing on every disc that is not set apart, and the integrals S_c."""
+        points = self.reduction.points
+        self.curve.work.spend(len(section.form) * (len(points) + 1))
+        need(len(apart) < len(points) or section.proper(self.curve, self.prime), "section-vanishes",
+             "nothing shows that the section is not 0 modulo p")
         orders, integrals = {}, {}
-        for i, (x, y, z) in enumerate(self.reduction.points):
-            if z:
-                value = value_at(even, x, p) + value_at(odd, x, p) * y
-            else:
-                value = sum(even[m:]) + sum(odd[max(0, m - g - 1) :]) * y
-            if value % p == 0:
-                monic = self.disc(i).small_roots(self.disc(i).section(even, odd, m))
-                orders[i], integrals[i] = len(monic) - 1, self.disc(i).integral(monic)
-        return orders, integrals, 2 * m - sum(orders.values())
+        for i in sorted(set(range(len(points))) - apart):
+            if evaluate(section.form, points[i], self.prime) == 0:
+                monic = self.small_roots(self.disc(i).restrict(section.form))
+                orders[i], integrals[i] = len(monic) - 1, self.integral(i, monic)
+        return orders, integrals
 
-    def total(self, orders: dict[int, int], integrals: dict[int, Ball]) -> Ball:
-        """The sum of the S_c and of the known m_c Log(centre c), c ramified."""
-        terms = [(1, ball) for ball in integrals.values()]
-        terms += [(m, self.centre_log(i)) for i, m in orders.items() if self.disc(i).ramified]
-        return self.combine(terms)
-
-    def centre_log(self, i: int) -> Ball:
-        """Log of the centre of a disc."""
-        if i not in self.logs and self.disc(i).ramified:
-            # half the integral from the conjugate of the centre; 0 at a Weierstrass point
-            a, b = self.disc(i).centre
-            t = (-2 * b - value_at(self.disc(i).h, a, self.modulus)) % self.modulus
-            self.logs[i] = self.combine([(-1, self.disc(i).integral([-t % self.modulus, 1]))], 2)
-        need(i in self.logs, "disc-missing", f"Log is not given for the disc of point {i}")
-        return self.logs[i]
-
-    def solve(self, entry: Any, totals: list[Ball]) -> None:
-        """n Log(centre) = minus a combination of the known parts of sections."""
+    def solve(self, entry: Any) -> None:
+        """n Log(centre) = - sum of k S_c, for a combination of sections that leaves n times this disc."""
         i, n, combination = items(entry, 3)
         integer(i, 0, len(self.reduction.points) - 1)
-        other = self.reduction.conjugate(i)
-        need(other != i and i not in self.logs, "disc", f"point {i} is ramified or was treated before")
-        need(integer(n) != 0, "disc", "a multiple 0")
+        need(i not in self.logs and integer(n) != 0, "disc", f"point {i} was treated before, or 0 times it")
         weights: dict[int, int] = {}
-        used = []
+        terms = []
         for s, k in (integers(pair, None, None, 2) for pair in items(combination)):
-            need(0 <= s < len(totals) and s not in used, "disc", f"section {s} is missing or occurs twice")
-            used.append(s)
-            for c, m in self.sections[s][0].items():
-                conjugate = self.reduction.conjugate(c)
+            need(0 <= s < len(self.sections), "disc", f"there is no section {s}")
+            orders, total = self.sections[s]
+            terms.append((-k, total))
+            for c, m in orders.items():
                 weights[c] = weights.get(c, 0) + k * m
-                weights[conjugate] = weights.get(conjugate, 0) - k * m
-        wanted = {i: n, other: -n}
-        need({c: w for c, w in weights.items() if w} == wanted, "combination",
+        need({c: w for c, w in weights.items() if w} == {i: n}, "combination",
              "the combination does not isolate the disc")
-        self.logs[i] = self.combine([(-k, totals[s]) for s, k in combination], n)
-        self.logs[other] = self.combine([(-1, self.logs[i])])
+        self.logs[i] = self.combine(terms, n)
+
+    def place(self, place: Place, section: Section) -> Ball:
+        """Log of a place: minus that of the other zeros of a section, all in discs that the place avoids.
+
+        Modulo p^N the section is one that vanishes on the place.
+        """
+        p, q = self.prime, self.series.modulus
+        u, coordinates = place.modulo(p, q)
+        need(place.spans(p, section.multiple), "place-collapses",
+             "the place meets itself, or its degree is too large for the section")
+        missed = on_place(section.form, u, coordinates, q)
+        need(not missed, "place-section", "the section misses the place")
+        orders, integrals = self.vanishing(section, set(place.points(self.reduction)))
+        rest = section.multiple * self.curve.unit - place.degree
+        need(sum(orders.values()) == rest, "section-zeros", "other zeros are irrational or near the place")
+        centres = [(-m, self.centre_log(i)) for i, m in orders.items()]
+        return self.combine([*centres, *((-1, ball) for ball in integrals.values())])
 
     # -- logarithms
 
+    def centre_log(self, i: int) -> Ball:
+        """Log of the centre of a disc."""
+        need(i in self.logs, "disc-missing", f"Log is not given for the disc of point {i}")
+        return self.logs[i]
+
     def log_at(self, i: int, t: int, digits: int) -> Ball:
         """Log of the point with parameter t, known modulo p^digits, in the disc of point i."""
-        inside = self.disc(i).integral([-t % self.modulus, 1])
+        inside = self.integral(i, [-t % self.series.modulus, 1])
         inside.precision = min(inside.precision, digits)
-        ball = self.combine([(1, self.centre_log(i)), (1, inside)])
-        return Ball(self.prime, ball.numerators, ball.shift, ball.precision)
+        return self.combine([(1, self.centre_log(i)), (1, inside)])
 
     def log_residue(self, point: Point, digits: int) -> Ball:
         """Log of a point given modulo p^digits in normal form."""
-        p, (x, y, z) = self.prime, point
-        i = self.reduction.number[(x % p, y % p, 1) if z == 1 else (1, y % p, 0)]
-        a, b = (x, y) if z == 1 else (z, y)
-        centre = self.disc(i).centre
-        t = b - centre[1] if self.disc(i).ramified else a - centre[0]
-        return self.log_at(i, t, min(digits, self.digits))
-
-    def place(self, place: Mumford, source: tuple[Row, Row] | None) -> Ball:
-        """Log of a place: minus the logarithms of the other zeros of a section through it."""
-        p, q = self.prime, self.modulus
-        u, w = place.modulo(p, q)
-        inside: dict[int, int] = {}
-        rest = [c % p for c in u]
-        for x in range(p):
-            while value_at(rest, x, p) == 0:
-                i = self.reduction.number[(x, value_at(w, x, p), 1)]
-                inside[i], rest = inside.get(i, 0) + 1, divide(rest, [-x, 1], p)[0]
-        terms: list[tuple[int, Ball]] = []
-        if source is None:
-            need(len(rest) == 1, "place-missing", "no section through a place with irrational points")
-            orders: dict[int, int] = {}
-        else:
-            even, odd = source
-            need(place.degree <= multiple(even, odd, self.proof.curve.genus) + 1, "place-section",
-                 "a section of too small a degree for the place")
-            missed = divide(plus(even, times(odd, w)), u, q)[1]
-            need(not missed, "place-section", "the section misses the place")
-            orders, integrals, missing = self.vanishing(even, odd)
-            need(missing == len(rest) - 1, "section-zeros", "the section has other irrational zeros")
-        for i in sorted({*orders, *inside}):
-            if source is not None and orders.get(i, 0) == inside.get(i, 0):
-                continue
-            if i in orders:
-                terms += [(-1, integrals[i]), (-orders[i], self.centre_log(i))]
-            if i in inside:
-                need(not self.disc(i).ramified, "place-ramified", "a place meets a ramified disc")
-                shifted = [0] * self.terms
-                for c in reversed(u):
-                    shifted = plus([c], plus([0, *shifted], shifted, self.disc(i).centre[0]))[: self.terms]
-                monic = self.disc(i).small_roots(self.reduce(shifted))
-                need(len(monic) - 1 == inside[i], "place-roots", "the points of a place were not separated")
-                terms += [(1, self.disc(i).integral(monic)), (inside[i], self.centre_log(i))]
-        return self.combine(terms)
+        x, y, z = (c % self.prime for c in point)
+        i = self.reduction.number[x, y, z]
+        disc = self.disc(i)
+        own = (point[0], point[1]) if z else (point[2], point[1]) if x else (point[0], point[2])
+        return self.log_at(i, own[disc.vertical] - disc.centre[disc.vertical], min(digits, self.digits))
 
     def log(self, divisor: Divisor) -> Ball:
         """Log of a divisor over Q."""
         terms: list[tuple[int, Ball]] = []
         for k, kind, what in divisor:
             if kind == "point":
-                residue = self.proof.curve.residue(what, self.modulus, self.prime)
+                residue = self.curve.residue(what, self.series.modulus, self.prime)
                 terms.append((k, self.log_residue(residue, self.digits)))
-            elif kind == "mumford":
-                terms.append((k, self.places[what] or self.combine([])))
+            elif kind == "closed":
+                terms.append((k, self.places[what]))
         return self.combine(terms)
-
-
-def multiple(even: Row, odd: Row, g: int) -> int:
-    """The least m for which even(x) + odd(x) y is a section of m U."""
-    degrees = [i for i, c in enumerate(even) if c] + [i + g + 1 for i, c in enumerate(odd) if c]
-    need(bool(degrees), "section", "a section is 0")
-    return max(degrees)
 
 
 # ---- the sieve ---------------------------------------------------------------------------------------
@@ -1233,8 +1359,7 @@ def apply(state: State, table: Table, join: bool, work: Work) -> State:
             for other in found:
                 moved = [a + b - c for a, b, c in zip(vector, correction, other)]
                 joined.add(tuple(remainder(table.kernel, moved)))
-            if len(joined) > MAX_CLASSES:
-                raise Declined(f"more than {MAX_CLASSES} classes")
+            limit(len(joined) <= MAX_CLASSES, f"more than {MAX_CLASSES} classes")
     if join:
         return State(table.kernel, table.exponent, sorted(joined))
     return State(state.basis, state.exponent, kept)
@@ -1263,13 +1388,13 @@ class Proof:
 
     def __init__(self) -> None:
         self.work = Work()
-        self.stage, self.records, self.rank = -1, 0, 0
+        self.stage, self.records, self.rank, self.integral = -1, 0, 0, False
         self.curve: Curve
         self.base: Divisor = []
         self.degree = 1
         self.torsion: Row = []
         self.generators: list[Divisor] = []
-        self.places: list[Mumford] = []
+        self.places: list[Place] = []
         self.premises: dict[str, dict[str, Any]] = {}
         self.candidates: dict[tuple[int, str], Candidate] = {}
         self.names: list[tuple[int, str]] = []
@@ -1308,44 +1433,49 @@ class Proof:
         self.stage = stage
         handler(record)
         self.records += 1
-        if self.records > MAX_RECORDS:
-            raise Declined(f"more than {MAX_RECORDS} records")
+        limit(self.records <= MAX_RECORDS, f"more than {MAX_RECORDS} records")
 
     # -- statement
 
     def header(self, record: dict[str, Any]) -> None:
         """The format and the curve."""
-        if record.get("format") != FORMAT:
-            raise Declined(f"not the format {FORMAT}")
-        _, program, case, f, h, genus, scale = fields(
-            record, "format", "program", "case", "f", "h", "genus", "y_scale")
+        limit(record.get("format") == FORMAT, f"not the format {FORMAT}")
+        _, program, case, equation, weight, genus, scale, variables = fields(
+            record, "format", "program", "case", "equation", "weight", "genus", "y_scale", "variables")
         self.program = text(program)
         if type(case) is not dict or list(case) != ["name", "sha256"]:
             raise Malformed("keys", "a case is a name and a digest")
         self.case, digest = text(case["name"]), text(case["sha256"])
         need(re.fullmatch("[0-9a-f]{64}", digest) is not None, "digest", "no SHA-256 digest")
-        if integer(genus, 2) > MAX_GENUS:
-            raise Declined(f"a genus above {MAX_GENUS}")
+        limit(max(integer(genus, 2), integer(weight, 1) - 1) <= MAX_GENUS, f"a genus above {MAX_GENUS}")
         self.scale = rational(scale)
         need(self.scale != 0, "scale", "a scale 0")
-        self.curve = Curve(integers(f), integers(h), genus)
+        self.variables = [text(name) for name in items(variables, 3)]
+        good = all(re.fullmatch("[A-Za-z][A-Za-z0-9_]{0,30}", name) for name in self.variables)
+        need(good and len(set(self.variables)) == 3, "variables", "no names of three variables")
+        self.curve = Curve([integers(row) for row in items(equation)], weight, genus, self.work)
 
     def group(self, record: dict[str, Any]) -> None:
-        """The base divisor and the generators."""
-        rank, base, free, torsion = fields(record, "rank", "base", "free", "torsion")
+        """The base divisor and the generators; whether rational points are asked for, or integral ones."""
+        rank, base, free, torsion, integral = fields(record, "rank", "base", "free", "torsion", "integral")
         self.rank = integer(rank, 0)
-        self.base = self.divisor(base, None)
-        self.generators = [self.divisor(d, 0) for d in items(free)]
-        need(len(self.generators) == self.rank, "rank", "the number of free generators is not the rank")
+        self.base, self.degree = self.divisor(base)
+        need(1 <= self.degree <= self.curve.unit, "divisor-degree", "a base of degree 0 or above that of U")
+        generators = items(free)
+        need(len(generators) == self.rank, "rank", "the number of free generators is not the rank")
         for entry in items(torsion):
             order, divisor = items(entry, 2)
             self.torsion.append(integer(order, 2))
-            self.generators.append(self.divisor(divisor, 0))
-        if len(self.generators) > MAX_RANK:
-            raise Declined(f"more than {MAX_RANK} generators")
+            generators = [*generators, divisor]
+        limit(len(generators) <= MAX_RANK, f"more than {MAX_RANK} generators")
+        for value in generators:
+            divisor, degree = self.divisor(value)
+            need(degree == 0, "divisor-degree", "a generator of degree other than 0")
+            self.generators.append(divisor)
+        self.integral = boolean(integral)
 
-    def divisor(self, value: Any, degree: int | None) -> Divisor:
-        """A divisor over Q of the given degree; None for the base, of degree 1 or 2."""
+    def divisor(self, value: Any) -> tuple[Divisor, int]:
+        """A divisor over Q and its degree."""
         out: Divisor = []
         total = 0
         for entry in items(value):
@@ -1354,37 +1484,45 @@ class Proof:
                 raise Malformed("place", "no place")
             ((kind, what),) = place.items()
             if kind == "point":
-                out.append((integer(k), kind, self.rational_point(what)))
+                out.append((integer(k), kind, self.point_of_curve(what)))
                 total += k
-            elif kind == "mumford":
-                u, w = ([rational(c) for c in items(a)] for a in items(what, 2))
-                same = (i for i, known in enumerate(self.places) if (known.u, known.w) == (u, w))
-                number = next(same, None)
-                if number is None:
-                    number = len(self.places)
-                    if number == MAX_PLACES:
-                        raise Declined(f"more than {MAX_PLACES} places")
-                    self.places.append(Mumford(self.curve, u, w))
-                out.append((integer(k), kind, number))
-                total += k * (len(u) - 1)
+            elif kind == "closed":
+                out.append((integer(k), kind, self.place(what)))
+                total += k * self.places[out[-1][2]].degree
             elif kind == "fibres":
                 out.append((integer(k), kind, integer(what)))
-                total += 2 * k * what
+                total += self.curve.unit * k * what
             else:
                 raise Malformed("place", "an unknown kind of place")
-        if degree is None:
-            need(total in (1, 2), "divisor-degree", "a base of another degree than 1 or 2")
-            self.degree = total
-        else:
-            need(total == degree, "divisor-degree", "a generator of degree other than 0")
-        return out
+        return out, total
 
-    def rational_point(self, value: Any) -> Point:
+    def place(self, value: Any) -> int:
+        """The number of a place; a new one is checked."""
+        u, *coordinates = ([rational(c) for c in items(row)] for row in items(value, 4))
+        for number, known in enumerate(self.places):
+            if (known.u, known.coordinates) == (u, coordinates):
+                return number
+        limit(len(self.places) < MAX_PLACES, f"more than {MAX_PLACES} places")
+        self.places.append(Place(self.curve, u, coordinates))
+        return len(self.places) - 1
+
+    def point_of_curve(self, value: Any) -> Point:
         """A rational point of the curve in normal form."""
         x, y, z = integers(value, None, None, 3)
-        need(gcd(x, z) == 1 and (z > 0 or (z == 0 and x == 1)), "point-form", "a point not in normal form")
-        need(self.curve.contains((x, y, z)), "point-off-curve", "a point that is not on the curve")
+        if self.curve.weight == 1:
+            normal = gcd(x, y, z) == 1 and (z > 0 or (z == 0 and (x > 0 or (x == 0 and y == 1))))
+        else:
+            normal = gcd(x, z) == 1 and (z > 0 or (z == 0 and x == 1))
+        need(normal, "point-form", "a point not in normal form")
+        on_curve = evaluate(self.curve.form, (x, y, z), 0) == 0
+        need(on_curve, "point-off-curve", "a point that is not on the curve")
         return x, y, z
+
+    def answer(self, value: Any) -> Point:
+        """A rational point, an integral one where only these are asked for."""
+        point = self.point_of_curve(value)
+        need(not self.integral or point[2] == 1, "not-integral", "a point that is not integral")
+        return point
 
     def premise(self, record: dict[str, Any]) -> None:
         """A premise; what it says follows from its id, the text is for the reader."""
@@ -1421,8 +1559,7 @@ class Proof:
             names = ("point", "digits", "multiplicity")
             point, digits, k = fields(record, "prime", "id", "form", *names)[3:]
             new.digits, new.multiplicity = integer(digits, 1), integer(k, 1)
-            if new.digits * p.bit_length() > MAX_BITS:
-                raise Declined("more digits than this checker handles")
+            limit(new.digits * p.bit_length() <= MAX_BITS, "more digits than this checker handles")
             new.point = self.residue(point, p, new.digits)
         elif form == "disc":
             point, k = fields(record, "prime", "id", "form", "point", "multiplicity")[3:]
@@ -1432,8 +1569,7 @@ class Proof:
             values, torsion, disc = fields(record, "prime", "id", "form", *names)[3:]
             for entry in items(values, self.rank):
                 c, digits = integers(entry, 0, None, 2)
-                if digits * p.bit_length() > MAX_BITS:
-                    raise Declined("more digits than this checker handles")
+                limit(digits * p.bit_length() <= MAX_BITS, "more digits than this checker handles")
                 need(c < p**digits, "not-reduced", "a coefficient beyond its digits")
                 new.coefficients.append((c, digits))
             if torsion is not None:
@@ -1449,8 +1585,10 @@ class Proof:
         """A point modulo p^digits in normal form."""
         modulus = p**digits
         x, y, z = integers(value, 0, modulus - 1, 3)
-        need(z == 1 or (x == 1 and z % p == 0), "point-form", "a residue not in normal form")
-        need(self.curve.contains((x, y, z), modulus), "point-off-curve", "a residue that is not on the curve")
+        normal = z == 1 or (z % p == 0 and (x == 1 or (x % p == 0 and y == 1)))
+        need(normal, "point-form", "a residue not in normal form")
+        on_curve = evaluate(self.curve.form, (x, y, z), modulus) == 0
+        need(on_curve, "point-off-curve", "a residue that is not on the curve")
         return x, y, z
 
     # -- evidence
@@ -1469,6 +1607,7 @@ class Proof:
         """dim J(Q)[2] from irreducible factors of 4 f + h^2 (Mumford 1984, IIIa)."""
         factors, primes = fields(record, "factors", "primes")
         need(self.two_torsion is None, "duplicate", "a second record on the branch points")
+        need(self.curve.weight > 1, "branch", "the curve is not of the form y^2 + h y = f")
         total, degrees = [1], []
         need(len(items(factors)) <= len(self.curve.square), "factor", "too many factors")
         for entry in items(factors):
@@ -1529,17 +1668,15 @@ class Proof:
             local = self.locals.get(v)
             if local is None or local.points == 0:
                 raise Rejected("no-local", f"no group at {v}")
-            images = [local.log(d, self) for d in self.generators]
+            images = [local.log(d) for d in self.generators]
             for image, order in zip(images[self.rank :], self.torsion):
                 need(not any(order * c % d for c, d in zip(image, local.moduli)), "torsion-order",
                      f"a torsion generator has another order modulo {v}")
             columns += [[images[i][j] % ell for i in rows]
                         for j, d in enumerate(local.moduli) if d % ell == 0]
-        basis = diagonal([ell] * len(rows))
-        for column in columns:
-            insert(basis, column, ell)
         # the columns generate F_l^rows exactly if the map from L/lL is injective
-        need(index_of(basis) == 1, "not-injective", f"a class that is no multiple of {ell} looks like one")
+        injective = len(independent(columns, ell, len(rows))) == len(rows)
+        need(injective, "not-injective", f"a class that is no multiple of {ell} looks like one")
         self.saturated.append(ell)
 
     # -- conditions and fates
@@ -1556,8 +1693,9 @@ class Proof:
             raise Rejected("no-local", f"no record at {v}")
         if local.points == 0:
             return Condition([], [[] for _ in self.generators], [])
-        images = [local.log(d, self) for d in self.generators]
-        allowed = sorted({local.shifted(log, self) for log in local.logs.values()})
+        images = [local.log(d) for d in self.generators]
+        allowed = sorted({local.shifted(log) for i, log in local.logs.items()
+                          if local.reduction.points[i][2] == 1 or not self.integral})
         return Condition(local.moduli, images, allowed)
 
     def candidate_condition(self, p: int, candidates: list[Candidate], primes: Row) -> Condition:
@@ -1595,13 +1733,15 @@ class Proof:
                 values = [row + more for row, more in zip(values, scaled[n:])]
         if with_class and local is not None:
             moduli = moduli + local.moduli
-            images = [local.log(d, self) for d in self.generators]
+            images = [local.log(d) for d in self.generators]
             columns += [[row[k] for row in images] for k in range(len(local.moduli))]
             numbers = [local.reduction.number[(c.point[0] % p, c.point[1] % p, c.point[2] % p)]
                        for c in candidates if c.point is not None]
-            values = [row + list(local.shifted(local.logs[i], self)) for row, i in zip(values, numbers)]
+            values = [row + list(local.shifted(local.logs[i])) for row, i in zip(values, numbers)]
         rows = [[column[i] for column in columns] for i in range(n)]
-        return Condition(moduli, rows, [tuple(row) for row in values])
+        # no integral point reduces to a point at infinity
+        near = [not (self.integral and c.point is not None and c.point[2] != 1) for c in candidates]
+        return Condition(moduli, rows, [tuple(row) for row, possible in zip(values, near) if possible])
 
     def whole(self) -> State:
         """The one class of L/L."""
@@ -1664,7 +1804,7 @@ class Proof:
         elif verdict == "rational":
             points, given, sole = fields(record, "prime", "id", "verdict", "points", "given", "sole")[3:]
             boolean(given)
-            candidate.points, candidate.sole = [self.rational_point(x) for x in items(points)], boolean(sole)
+            candidate.points, candidate.sole = [self.answer(x) for x in items(points)], boolean(sole)
             need(0 < len(set(candidate.points)) == len(points), "points", "no point, or one twice")
             if candidate.sole:
                 bound = self.premises.get(f"bound {p} {name}", {}).get("at_most") == 1
@@ -1690,9 +1830,9 @@ class Proof:
         # the vectors of L that the point can be, as far as the log tells
         state = self.whole()
         for local in self.locals.values():
-            images = [local.log(d, self) for d in self.generators]
+            images = [local.log(d) for d in self.generators]
             if local.points:
-                value = local.shifted(local.class_of(point, self), self)
+                value = local.shifted(local.class_of(point))
                 state = self.restrict(state, Condition(local.moduli, images, [value]), True)
         condition = self.candidate_condition(p, [candidate], self.allowed_primes())
         possible = self.restrict(state, condition, False).classes
@@ -1712,8 +1852,7 @@ class Proof:
         need(integer(count) == len(state.classes), "count", f"{len(state.classes)} classes are left")
         need(integer(index) == index_of(state.basis), "index", "another index")
         classes, seen = set(state.classes), set()
-        if len(items(vectors)) > 1000:
-            raise Declined("more than 1000 vectors")
+        limit(len(items(vectors)) <= 1000, "more than 1000 vectors")
         for entry in vectors:
             vector = tuple(remainder(state.basis, integers(entry, None, None, len(self.generators))))
             need(vector in classes and vector not in seen, "vector", "a vector of no class, or a class twice")
@@ -1728,7 +1867,7 @@ class Proof:
         pairs = [[integer(p), text(name)] for p, name in (items(entry, 2) for entry in items(eliminated))]
         need(pairs == [[c.prime, c.id] for c in self.fates if c.verdict == "eliminated"], "claim",
              "the eliminated candidates are others")
-        self.points = [self.rational_point(x) for x in items(points)]
+        self.points = [self.answer(x) for x in items(points)]
         need(len(set(self.points)) == len(points), "points", "a point occurs twice")
         lists = [[c for c in self.fates if f"complete {p}" in self.premises and c.prime == p]
                  for p in sorted({r["prime"] for k, r in self.premises.items() if k.startswith("complete ")})]
@@ -1751,16 +1890,27 @@ class Proof:
 # ---- the verdict in words ----------------------------------------------------------------------------
 
 
-def polynomial_words(coefficients: Row) -> str:
-    """A polynomial in x as text."""
+def polynomial_words(form: Iterable[tuple[int, ...]], names: Sequence[str]) -> str:
+    """A polynomial, terms (coefficient, exponents of the variables), as text."""
     out = ""
-    for i, c in reversed(list(enumerate(coefficients))):
-        if c:
-            power = "" if i == 0 else "x" if i == 1 else f"x^{i}"
-            size = str(abs(c)) if abs(c) != 1 or i == 0 else ""
-            sign = (" - " if c < 0 else " + ") if out else ("-" if c < 0 else "")
-            out += sign + size + ("*" if size and power else "") + power
+    for c, *exponents in form:
+        power = "*".join(name if e == 1 else f"{name}^{e}" for name, e in zip(names, exponents) if e)
+        size = str(abs(c)) if abs(c) != 1 or not power else ""
+        sign = (" - " if c < 0 else " + ") if out else ("-" if c < 0 else "")
+        out += sign + size + ("*" if size and power else "") + power
     return out or "0"
+
+
+def equation_words(proof: Proof) -> str:
+    """The equation of the curve as text."""
+    curve, names = proof.curve, proof.variables
+    if curve.weight == 1:
+        form = sorted(curve.form, key=lambda term: term[1:], reverse=True)
+        return f"{polynomial_words(form, names)} = 0"
+    x, y = names[:2]
+    f = polynomial_words([(-c, i) for i, c in reversed(list(enumerate(curve.rows[0]))) if c], [x])
+    h = polynomial_words([(c, i) for i, c in reversed(list(enumerate(curve.rows[1]))) if c], [x])
+    return f"{y}^2" + (f" + ({h})*{y}" if curve.rows[1] else "") + f" = {f}"
 
 
 def point_words(point: Point) -> str:
@@ -1771,41 +1921,43 @@ def point_words(point: Point) -> str:
 def premise_words(proof: Proof, name: str) -> str:
     """What a premise says, from its id alone."""
     record, word = proof.premises[name], name.split(" ")[0]
+    kind = "integral" if proof.integral else "rational"
     if word == "rank":
         return f"the rank of J(Q) is at most {proof.rank}"
     if word == "index":
         return f"{record['ell']} does not divide the index in J(Q) of the subgroup of the generators"
     if word == "complete":
-        return (f"every rational point agrees with a candidate of the list at {record['prime']}, and at most "
+        return (f"every {kind} point agrees with a candidate of the list at {record['prime']}, and at most "
                 "one with each candidate of form point and multiplicity 1")
     where = f"candidate {record['candidate']} at {record['prime']}"
-    return f"at most {record['at_most']} rational points agree with {where}"
+    return f"at most {record['at_most']} {kind} points agree with {where}"
 
 
 def statement(proof: Proof) -> str:
     """The theorem, true under the premises."""
-    curve = proof.curve
-    h = f" + ({polynomial_words(curve.h)})*y" if curve.h else ""
-    out = [f"X: y^2{h} = {polynomial_words(curve.f)}, of genus {curve.genus}."]
+    kind, points_of = ("integral", "X(Z)") if proof.integral else ("rational", "X(Q)")
+    out = [f"X: {equation_words(proof)}, of genus {proof.curve.genus}."]
+    if proof.integral:
+        out.append("X(Z) are the points ({} : {} : 1) with integer coordinates.".format(*proof.variables))
     dead = [c for c in proof.fates if c.verdict == "eliminated"]
     if dead:
-        out.append("No rational point agrees with the candidates "
+        out.append(f"No {kind} point agrees with the candidates "
                    + ", ".join(f"{c.id} (p = {c.prime})" for c in dead) + ".")
     for c in proof.fates:
         if c.verdict == "rational":
             where = ", ".join(map(point_words, c.points))
-            alone = ", the only rational point there" if c.sole else ""
+            alone = f", the only {kind} point there" if c.sole else ""
             out.append(f"Candidate {c.id} (p = {c.prime}) agrees with {where}{alone}.")
     if proof.conclusion == "points":
         points = ", ".join(map(point_words, proof.points))
-        out.append(f"X(Q) has exactly {len(proof.points)} points: {points}.")
+        out.append(f"{points_of} has exactly {len(proof.points)} points: {points}.")
     elif proof.conclusion == "empty":
-        out.append("X(Q) is empty.")
+        out.append(f"{points_of} is empty.")
     still = sum(c.verdict == "open" for c in proof.fates)
     if still:
         out.append(f"{still} candidates stay open.")
     if proof.count:
-        out.append(f"Rational points of X lie in {proof.count} classes of the group of the generators.")
+        out.append(f"{points_of} lies in {proof.count} classes of the group of the generators.")
     return " ".join(out)
 
 
