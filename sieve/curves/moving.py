@@ -1,4 +1,7 @@
-"""Moving a divisor over Q within its class so that it reduces well at a prime.
+"""Other equations for a divisor over Q, or for one in its class, that reduce well at a prime.
+
+The points of a closed place (u, x, y, z) are also functions of the values of a quotient of two linear forms;
+for most quotients these are integral at p, if the points are told apart modulo p at all.
 
 A Mumford representation (u, w) has denominators at p when a point reduces to infinity, or when two points
 reduce to conjugate ones.  A section even(x) + odd(x) y of multiple m that vanishes on the divisor D leaves a
@@ -15,7 +18,8 @@ from math import lcm
 import flint
 import numpy as np
 
-from sieve.curves.divisors import MumfordPlace
+from sieve.curves.algebras import characteristic_polynomial, express, fractions_of, rational_poly
+from sieve.curves.divisors import ClosedPlace, MumfordPlace
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.exact.lattice import hermite
 
@@ -61,6 +65,36 @@ def residual_places(
         moved = MumfordPlace(_fractions(rest), _fractions(value))
         if all(c.denominator % prime for c in moved.u + moved.w):
             yield multiple, moved
+
+
+def rewritten_places(place: ClosedPlace, prime: int, tries: int) -> Iterator[ClosedPlace]:
+    """The same place with all coefficients integral at the prime, from at most `tries` quotients of forms.
+
+    Deterministic (seeded by the prime).
+
+    >>> place = ClosedPlace((Fraction(-2, 9), Fraction(0), Fraction(1)), (Fraction(1),),
+    ...     (Fraction(0), Fraction(3)), (Fraction(1),))  # (1 : s : 1), s^2 = 2
+    >>> all(c.denominator % 3 for c in next(rewritten_places(place, 3, 20)).u)
+    True
+    """
+    rng = np.random.default_rng([prime, place.degree, 5])
+    u, *coordinates = (rational_poly(c) for c in (place.u, place.x, place.y, place.z))
+    for _ in range(tries):
+        top, bottom = rational_poly([]), rational_poly([])
+        for c, d, f in zip(*rng.integers(-2, 3, (2, 3)).tolist(), coordinates, strict=True):
+            top, bottom = top + c * f, bottom + d * f
+        common, inverse, _ = bottom.xgcd(u)
+        if common.degree() != 0:
+            continue
+        inverse = inverse / common
+        value = top * inverse % u
+        modulus = characteristic_polynomial(value, u)
+        if modulus.gcd(modulus.derivative()).degree() > 0:
+            continue
+        parts = [fractions_of(express(f * inverse % u, value, u)) for f in coordinates]
+        found = ClosedPlace(fractions_of(modulus), *parts)
+        if all(c.denominator % prime for part in (found.u, *parts) for c in part):
+            yield found
 
 
 def _vanishing(u: flint.fmpq_poly, w: flint.fmpq_poly, multiple: int, width: int) -> list[list[int]]:

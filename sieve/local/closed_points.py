@@ -16,9 +16,9 @@ from typing import Any
 from flint import fmpz_mod_poly, nmod_mat, nmod_poly
 
 from sieve.curves.discs import in_chart
-from sieve.curves.divisors import MumfordPlace, Place
+from sieve.curves.divisors import ClosedPlace, MumfordPlace, Place
 from sieve.curves.hyperelliptic import HyperellipticCurve
-from sieve.curves.moving import residual_places
+from sieve.curves.moving import residual_places, rewritten_places
 from sieve.errors import BadReduction, InternalError, Uncertified
 from sieve.exact.padic_linear import PadicVector, combine
 from sieve.exact.series import (
@@ -51,8 +51,9 @@ def scheme_logarithm(
     """Log of a closed place over Q.
 
     Known modulo p^(precision of the centres - v_p(k)), k the multiple above; v_p(k) is at most their guard. A
-    place with denominators at p, or which k > 1 and ramified places forbid, is replaced by the other zeros of
-    a section through it.  Raises `BadReduction` or `Uncertified`, from the place itself, when that fails.
+    place with denominators at p, or without the coordinate that k > 1 needs, is written in another way or
+    replaced by the other zeros of a section through it, see `sieve.curves.moving`.  Raises `BadReduction` or
+    `Uncertified`, from the place itself, when that fails.
     """
     try:
         return _integral_scheme(integrals, centres, group, place)
@@ -62,6 +63,12 @@ def scheme_logarithm(
             for _, moved in residual_places(curve, place, integrals.prime, MOVES):
                 try:
                     return -_integral_scheme(integrals, centres, group, moved)
+                except (BadReduction, Uncertified):
+                    continue
+        if isinstance(place, ClosedPlace):
+            for same in rewritten_places(place, integrals.prime, MOVES):
+                try:
+                    return _integral_scheme(integrals, centres, group, same)
                 except (BadReduction, Uncertified):
                     continue
         raise error
