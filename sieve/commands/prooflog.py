@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from sieve import __version__
+from sieve.commands.premises import bound_is_proved
 from sieve.engine.investigation import Investigation
 from sieve.engine.verdicts import CandidateList
 from sieve.proof.statement import ProofInput, ProofPremise, closed_places
@@ -38,14 +39,15 @@ def premises_in_log(run: Run) -> list[ProofPremise]:
     for ell in stated_ells(run):
         text = f"{ell} does not divide the index of the given group in J(Q)"
         out.append(ProofPremise(f"index {ell}", text, problem.index_source, (("ell", ell),)))
-    for file in run.files:
+    kind = "integral" if problem.integral else "rational"
+    for file, listing in zip(run.files, run.lists, strict=True):
         p = file.prime
-        if file.complete:
-            text = f"every rational point of X is near one of the {len(file.candidates)} candidates at {p}"
+        if listing.rests_on_claim(run.decisions):
+            text = f"every {kind} point of X is near one of the {len(file.candidates)} candidates at {p}"
             out.append(ProofPremise(f"complete {p}", text, file.source, (("prime", p),)))
-        for c in file.candidates:
-            if c.at_most is not None:
-                text = f"at most {c.at_most} rational points are near {c.id}"
+        for c in listing.candidates:
+            if c.at_most is not None and not bound_is_proved(run, listing, c):
+                text = f"at most {c.at_most} {kind} points are near {c.id}"
                 keys: tuple[tuple[str, int | str], ...]
                 keys = (("prime", p), ("candidate", c.id), ("at_most", c.at_most))
                 out.append(ProofPremise(f"bound {p} {c.id}", text, file.source, keys))

@@ -290,7 +290,7 @@ def reason_of(run: Run, listing: CandidateList, kind: str) -> str:
         affine = "affine " if kind == "integral" else ""
         text = f"Every {affine}residue disc at {p} without one of them holds no {kind} point"
         if any(d.verdict == "rational" for d in run.decisions):
-            text += ", each of the others at most one"
+            text += f", and the others hold no other {kind} point"
         return f"{text}."
     if not listing.rests_on_claim(run.decisions):
         return (

@@ -60,9 +60,10 @@ class CandidateList:
         found = None if self.proof is None else self.proof.bound(candidate.id)
         if found is None:
             return None
-        central = found.central and len(points) == 1
-        if central and self.place.integrals.parameter_of_point(points[0])[0] == 0:
-            return 1
+        if found.central and candidate.disc is not None and len(points) == 1:
+            x, _, z = points[0]
+            if (z if self.place.integrals.discs[candidate.disc].chart == "x" else x) == 0:
+                return 1
         return found.at_most
 
     def rests_on_claim(self, decisions: Sequence[Decision]) -> bool:
@@ -71,7 +72,7 @@ class CandidateList:
             return self.claimed
         found = {d.id: d for d in decisions if d.prime == self.place.prime and d.sole}
         return self.claimed and any(
-            c.at_most != 1 and self.proved_bound(c, found[c.id].points) != 1
+            len(found[c.id].points) not in (c.at_most, self.proved_bound(c, found[c.id].points))
             for c in self.candidates if c.id in found
         )
 
@@ -81,7 +82,7 @@ class Decision:
     """The verdict on one candidate: "eliminated", "rational" or "open".
 
     `primes` responsible (residue characteristics, in order); `points`: the rational points it stands for;
-    `given`: all of them are known points of the case; `sole`: no second rational point can hide there;
+    `given`: all of them are known points of the case; `sole`: no other rational point can hide there;
     `fate`: what the sieve found.
     """
 
@@ -255,9 +256,8 @@ def _rational(
     if listing.proved_complete and not listing.claimed and not notes:
         # the multiplicity of a point is part of the claim
         notes.append("nothing bounds the number of rational points that agree with it")
-    bounded = candidate.kind != "coefficients" and 1 in (
-        candidate.at_most, listing.proved_bound(candidate, points))
-    sole = not notes or (bounded and len(points) == 1)
+    bounds = (candidate.at_most, listing.proved_bound(candidate, points))
+    sole = not notes or (candidate.kind != "coefficients" and len(points) in bounds)
     return Decision(
         listing.place.prime,
         candidate.id,

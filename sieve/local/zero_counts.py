@@ -23,13 +23,13 @@ that is a rational point.  When it has no further zero in the ball, no other rat
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
-from flint import fmpz_poly
+from flint import fmpz_mat, fmpz_poly
 
 from sieve.curves.discs import ResidueDisc
 from sieve.curves.divisors import Divisor
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 from sieve.errors import InternalError, PrecisionLost
 from sieve.exact.padic_linear import PadicVector
 from sieve.exact.padic_number import valuation
@@ -103,6 +103,11 @@ class Integrals:
         self.integrals, self.prime, self.degree = integrals, integrals.prime, base.degree
         curve, logs = integrals.curve, [integrals.log_divisor(d) for d in generators]
         found = annihilators(logs, self.prime, curve.genus, integrals.digits)
+        #: the columns in which the annihilators depend on the logarithms
+        self.pivots = tuple(sorted(set(range(curve.genus)) - {a.free for a in found}))
+        # what the text above allows for vectors known as well as these; a proof log rests on no more
+        lost = _valuation_of_minor(logs, self.pivots, self.prime)
+        found = [replace(a, precision=a.precision - lost) for a in found]
         self.forms = tuple(exact_annihilators(curve, logs, found))
         self.base_log = integrals.log_divisor(base)
 
@@ -139,8 +144,17 @@ class Integrals:
         """The order of vanishing at the centre that an exact monomial form has there at least."""
         if not form.exact or disc.ramified or disc.residue[0]:
             return 0
-        # x^j on affine discs, (1/x)^(g-1-j) at infinity
-        return self.integrals.genus - 1 - form.free if disc.at_infinity else form.free
+        i, k = disc.pairs[form.free]
+        return disc.degree - disc.weight - 2 - i - disc.weight * k if disc.chart == "x" else i
+
+
+def _valuation_of_minor(logs: Sequence[PadicVector], columns: Sequence[int], prime: int) -> int:
+    """The valuation of a minor that is not 0, of the logarithms scaled to be integral and primitive."""
+    rows = []
+    for log in logs:
+        least = min(valuation(c, prime) for c in log.numerators if c)
+        rows.append([log.numerators[j] // prime**least for j in columns])
+    return valuation(int(fmpz_mat(rows).det()), prime) if rows else 0
 
 
 def _reduced(series: fmpz_poly, prime: int, precision: int) -> list[int] | None:
@@ -216,7 +230,7 @@ def count_zeros(
 
 
 def zero_proof(
-    curve: HyperellipticCurve,
+    curve: Curve,
     base: Divisor,
     generators: Sequence[Divisor],
     prime: int,
@@ -282,9 +296,7 @@ def prove(found: Integrals, candidates: Sequence[LocatedCandidate], integral: bo
                 for form, n in zip(found.forms, zeros, strict=True)
             )
             bounds[c.id] = BallBound(c.id, min(known, default=None), central)
-    free = {a.free for a in found.forms}
-    pivots = tuple(j for j in range(found.integrals.genus) if j not in free)
     ordered = tuple(bounds[c.id] for c in candidates if c.id in bounds)
     return ZeroProof(
-        p, found.integrals.digits, found.forms, pivots, tuple(counts), ordered, tuple(missing)
+        p, found.integrals.digits, found.forms, found.pivots, tuple(counts), ordered, tuple(missing)
     )

@@ -1191,10 +1191,14 @@ class Padic:
         for k, s in enumerate(sums, start=1):
             e = valuation(k, p)
             weights.append(s * p ** (lost - e) * pow(k // p**e, -1, q))
+        numerators = [sum(a * b for a, b in zip(form, weights)) for form in self.differentials(i)]
+        return Ball(p, numerators, lost, self.digits - lost)
+
+    def differentials(self, i: int) -> list[Row]:
+        """The regular differentials in the disc of point i."""
         if i not in self.forms:
             self.forms[i] = self.disc(i).differentials()
-        numerators = [sum(a * b for a, b in zip(form, weights)) for form in self.forms[i]]
-        return Ball(p, numerators, lost, self.digits - lost)
+        return self.forms[i]
 
     def vanishing(self, section: Section, apart: set[int]) -> tuple[dict[int, int], dict[int, Ball]]:
         """The order of vanishing on every disc that is not set apart, and the integrals S_c."""
@@ -1260,9 +1264,13 @@ class Padic:
         """Log of a point given modulo p^digits in normal form."""
         x, y, z = (c % self.prime for c in point)
         i = self.reduction.number[x, y, z]
-        disc = self.disc(i)
-        own = (point[0], point[1]) if z else (point[2], point[1]) if x else (point[0], point[2])
-        return self.log_at(i, own[disc.vertical] - disc.centre[disc.vertical], min(digits, self.digits))
+        return self.log_at(i, self.parameter(self.disc(i), point), min(digits, self.digits))
+
+    def parameter(self, disc: Disc, point: Point) -> int:
+        """The parameter of a point in normal form."""
+        x, y, z = point
+        own = (z, y) if disc.chart == 1 else (x, z) if disc.chart == 2 else (x, y)
+        return own[disc.vertical] - disc.centre[disc.vertical]
 
     def log(self, divisor: Divisor) -> Ball:
         """Log of a divisor over Q."""
@@ -1274,6 +1282,147 @@ class Padic:
             elif kind == "closed":
                 terms.append((k, self.places[what]))
         return self.combine(terms)
+
+
+class Zeros:
+    """A checked record `zeros`: where the rational points can lie at p, by zeros of annihilating integrals.
+
+    If e . Log is 0 on J(Q), the function e . (d Log(point t) - Log(B)) on a disc is 0 at rational points.
+    With t = p s it is a power series, integral but for the constant, and its zeros in a ball are counted by
+    the degree of its reduction there, after division by the largest power of p (Strassman 1928).
+
+    Which e.  The logarithms of the free generators are independent (a minor is not 0), so that, given the
+    rank, the generators have finite index, and e is as wanted if e . Log(D_i) = 0 for all i.  An integral e
+    with the right entries off the columns of the minor that satisfies this modulo p^M agrees with such an e
+    modulo p^(M - s), s the valuation of the minor (Cramer), the logarithms integral and primitive.
+
+    Exactly known: unit vectors, when there are no generators; and when all powers of x in the equation are
+    even, so that (x, y) -> (-x, y) maps x^i y^k dx / F_y to (-1)^(i+1) times itself and J(Q) (x) Q is the sum
+    of two eigenspaces, for one generator unit vectors of a sign that its logarithm is not of: then the
+    eigenspace of that sign is 0.
+    """
+
+    def __init__(self, proof: Proof, record: dict[str, Any]) -> None:
+        p, pivots, annihilators = fields(record, "prime", "pivots", "annihilators")
+        padic, g, r = proof.padics.get(integer(p)), proof.curve.genus, proof.rank
+        if padic is None:
+            raise Rejected("no-padic", f"no logarithms at {p}")
+        need(p not in proof.zeros, "duplicate", f"a second record for {p}")
+        self.proof, self.padic, self.prime = proof, padic, padic.prime
+        chosen = integers(pivots, 0, g - 1, r)
+        need(r < g and chosen == sorted(set(chosen)), "pivots", "no columns for a minor, or none are left")
+        logs, known = [], padic.digits
+        for log in (padic.log(d) for d in proof.generators[:r]):
+            need(log.precision + log.shift > 0 and any(log.numerators), "dependent", "a logarithm may be 0")
+            low = min(valuation(c, p) for c in log.numerators if c)
+            known = min(known, log.precision + log.shift - low)
+            logs.append([c // p**low for c in log.numerators])
+        minor = determinant([[row[j] for j in chosen] for row in logs]) % p**known
+        need(minor != 0, "dependent", "the logarithms of the generators may be dependent")
+        free = [j for j in range(g) if j not in chosen]
+        even = not any(c for row in proof.curve.rows for c in row[1::2])
+        signs = [i % 2 for i, _, _ in proof.curve.exponents]
+        self.forms: list[Row] = []
+        self.exact: list[int | None] = []
+        for j, entry in zip(free, items(annihilators, len(free))):
+            e = integers(entry, 0, p**padic.digits, g)
+            need([e[i] for i in free] == [int(i == j) for i in free], "annihilator", "not in the normal form")
+            other = r == 1 and even and any(
+                c % p**known for c, sign in zip(logs[0], signs) if sign != signs[j])
+            self.forms.append(e)
+            self.exact.append(j if sum(e) == 1 and (r == 0 or other) else None)
+        values = [sum(a * b for a, b in zip(e, row)) % p**known for e in self.forms for row in logs]
+        self.known = min([known, *(valuation(c, p) for c in values if c)]) - valuation(minor, p)
+        need(self.known > 0, "annihilator", "a differential does not annihilate the generators")
+        self.origin = padic.log(proof.base)
+        here = [c for c in proof.candidates.values() if c.prime == p and c.form != "coefficients"]
+        self.deepest = max([c.digits - 1 for c in here], default=0)
+        self.bounds: dict[str, int] = {}
+        self.central: set[str] = set()
+        for i, point in enumerate(padic.reduction.points):
+            if point[2] or not proof.integral:
+                near = [c for c in here if c.point and tuple(a % p for a in c.point) == point]
+                self.disc(i, near)
+
+    def disc(self, i: int, candidates: list[Candidate]) -> None:
+        """No rational point in the disc of point i is away from the candidates; how many are near each."""
+        p, disc, balls = self.prime, self.padic.disc(i), []
+        functions, known = self.functions(i)
+        for c in candidates:
+            need(c.digits <= self.padic.digits, "terms", "a candidate has more digits than the logarithms")
+            t = self.padic.parameter(disc, c.point or (0, 0, 0))
+            balls.append((t % p**c.digits // p, c.digits - 1))
+        todo = [(functions, 0, 0)]
+        while todo:
+            here, value, depth = todo.pop()
+            if any(n <= depth and (value - v) % p**n == 0 for v, n in balls):
+                continue
+            leading = self.leading(here, known)
+            if any(len(row) == 1 for row in leading):
+                continue
+            inside = any((value - v) % p**depth == 0 for v, _ in balls)
+            need(depth < self.deepest and (inside or bool(leading)), "zeros-open",
+                 f"rational points away from the candidates are possible near point {i}")
+            self.proof.work.spend(p * sum(map(len, leading)) + p)
+            for s in range(p):
+                if not any(value_at(row, s, p) for row in leading):
+                    inner = [self.moved(f, s, p, known) for f in here]
+                    todo.append((inner, value + s * p**depth, depth + 1))
+        for c, (value, n) in zip(candidates, balls):
+            counts = []
+            for f, j in zip(functions, self.exact):
+                for row in self.leading([self.moved(f, value, p**n, known)], known):
+                    counts.append(len(row) - 1)
+                    # an exact form, a multiple of a^m, vanishes so often where a = t = 0
+                    if j is not None and not disc.vertical and disc.centre[0] == value == 0:
+                        x, _, z = self.proof.curve.exponents[j]
+                        if counts[-1] == (z if disc.chart == 1 else x) + 1:
+                            self.central.add(c.id)
+            if counts:
+                self.bounds[c.id] = min(counts)
+
+    def functions(self, i: int) -> tuple[list[Row], int]:
+        """The functions in s on a disc, times a power of p, and the precision A of all their coefficients.
+
+        Those beyond the end are 0 modulo p^A: p^k / k is, as k - log_p(k) >= A does not decrease.
+        """
+        p, degree, padic = self.prime, self.proof.degree, self.padic
+        constant = padic.combine([(degree, padic.centre_log(i)), (-1, self.origin)])
+        length, shift, e = padic.series.length, constant.shift, 0
+        while p ** (e + 1) <= length + 1:
+            e += 1
+        known = min(constant.precision, padic.digits, length + 1 - e)
+        if None in self.exact:
+            known = min(known, self.known - shift)
+        need(known > 0, "digits", "too few digits to count zeros")
+        forms, out, modulus = padic.differentials(i), [], p ** (known + shift)
+        self.proof.work.spend(2 * length * self.proof.curve.genus * len(self.forms))
+        for vector in self.forms:
+            row = [sum(a * b for a, b in zip(vector, constant.numerators))]
+            for k in range(1, length + 1):
+                v = valuation(k, p)
+                value = sum(a * form[k - 1] for a, form in zip(vector, forms)) * degree
+                row.append(value * pow(p, k - v + shift, modulus) * pow(k // p**v, -1, modulus))
+            out.append(trim(row, modulus))
+        return out, known + shift
+
+    def leading(self, functions: list[Row], known: int) -> list[Row]:
+        """The reductions of those that are not 0 to the known precision, after division by powers of p."""
+        out, p = [], self.prime
+        for f in functions:
+            low = min((valuation(c, p) for c in f if c), default=known)
+            if low < known:
+                out.append(trim([c // p**low for c in f], p))
+        return out
+
+    def moved(self, f: Row, value: int, factor: int, known: int) -> Row:
+        """A function at value + factor s."""
+        total: Row = []
+        modulus = self.prime**known
+        self.proof.work.spend(len(f) ** 2 * (1 + modulus.bit_length() // 600))
+        for c in reversed(f):
+            total = trim(plus([c], times(total, [value, factor])), modulus)
+        return total
 
 
 # ---- the sieve ---------------------------------------------------------------------------------------
@@ -1377,7 +1526,7 @@ class Candidate:
         self.digits, self.multiplicity = 1, 1
         self.coefficients: list[tuple[int, int]] = []
         self.torsion: Row | None = None
-        self.verdict, self.sole = "", False
+        self.verdict, self.sole, self.proved = "", False, False
         self.points: list[Point] = []
 
 
@@ -1400,6 +1549,7 @@ class Proof:
         self.names: list[tuple[int, str]] = []
         self.locals: dict[int, Local] = {}
         self.padics: dict[int, Padic] = {}
+        self.zeros: dict[int, Zeros] = {}
         self.two_torsion: int | None = None
         self.bounds: dict[int, int] = {}
         self.saturated: list[int] = []
@@ -1415,7 +1565,8 @@ class Proof:
             "header": ("header", self.header), "group": ("group", self.group),
             "premise": ("premise", self.premise), "candidate": ("candidate", self.candidate),
             "local": ("evidence", self.local), "branch": ("evidence", self.branch),
-            "padic": ("evidence", self.padic), "torsion": ("evidence", self.torsion_bound),
+            "padic": ("evidence", self.padic), "zeros": ("evidence", self.zero_counts),
+            "torsion": ("evidence", self.torsion_bound),
             "saturated": ("evidence", self.saturate), "fate": ("fate", self.fate),
             "classes": ("classes", self.surviving), "end": ("end", self.end),
         }
@@ -1603,6 +1754,29 @@ class Proof:
         new = Padic(self, record)
         self.padics[new.prime] = new
 
+    def zero_counts(self, record: dict[str, Any]) -> None:
+        """A list is complete at p, given the rank."""
+        new = Zeros(self, record)
+        self.zeros[new.prime] = new
+
+    def covered(self, p: int) -> bool:
+        """Every residue disc at p, or every one with integral points, is a candidate."""
+        own = {c.point for c in self.candidates.values() if c.prime == p and c.form == "disc"}
+        asked = (x for x in Reduction(self.curve, p).points if x[2] or not self.integral)
+        return bool(own) and own.issuperset(asked)
+
+    def proved_bounds(self, candidate: Candidate, points: list[Point]) -> list[int]:
+        """Bounds on the number of points near a candidate that these agree with, by premise or proof."""
+        p, name, zeros = candidate.prime, candidate.id, self.zeros.get(candidate.prime)
+        premise = self.premises.get(f"bound {p} {name}")
+        out = [premise["at_most"]] if premise else []
+        if zeros and candidate.form != "coefficients" and name in zeros.bounds:
+            out.append(zeros.bounds[name])
+            x, _, z = points[0]
+            if name in zeros.central and len(points) == 1 and (z if z % p == 0 and x % p else x) == 0:
+                out.append(1)
+        return out
+
     def branch(self, record: dict[str, Any]) -> None:
         """dim J(Q)[2] from irreducible factors of 4 f + h^2 (Mumford 1984, IIIa)."""
         factors, primes = fields(record, "factors", "primes")
@@ -1785,7 +1959,8 @@ class Proof:
         if match is None:
             raise Malformed("use", "no condition of this name")
         q = int(match.group(1))
-        need(f"complete {q}" in self.premises, "no-complete", f"no premise that the list at {q} is complete")
+        need(f"complete {q}" in self.premises or q in self.zeros or self.covered(q), "no-complete",
+             f"nothing shows that the list at {q} is complete")
         return self.candidate_condition(q, [c for c in self.candidates.values() if c.prime == q], primes)
 
     def fate(self, record: dict[str, Any]) -> None:
@@ -1807,9 +1982,9 @@ class Proof:
             candidate.points, candidate.sole = [self.answer(x) for x in items(points)], boolean(sole)
             need(0 < len(set(candidate.points)) == len(points), "points", "no point, or one twice")
             if candidate.sole:
-                bound = self.premises.get(f"bound {p} {name}", {}).get("at_most") == 1
-                simple = candidate.form == "point" and candidate.multiplicity == 1
-                need(len(points) == 1 and (simple or bound), "not-sole", "the disc may hide a second point")
+                candidate.proved = len(points) in self.proved_bounds(candidate, candidate.points)
+                simple = candidate.form == "point" and candidate.multiplicity == len(points) == 1
+                need(simple or candidate.proved, "not-sole", "the disc may hide another point")
             for point in candidate.points:
                 self.agrees(candidate, point)
         elif verdict == "open":
@@ -1869,11 +2044,14 @@ class Proof:
              "the eliminated candidates are others")
         self.points = [self.answer(x) for x in items(points)]
         need(len(set(self.points)) == len(points), "points", "a point occurs twice")
-        lists = [[c for c in self.fates if f"complete {p}" in self.premises and c.prime == p]
-                 for p in sorted({r["prime"] for k, r in self.premises.items() if k.startswith("complete ")})]
-        decided = [listing for listing in lists
-                   if all(c.verdict == "eliminated" or (c.verdict == "rational" and c.sole) for c in listing)]
-        known = [{x for c in listing for x in c.points} for listing in decided]
+        claimed = {r["prime"] for k, r in self.premises.items() if k.startswith("complete ")}
+        known = []
+        for p in sorted(claimed | {c.prime for c in self.fates} if conclusion != "none" else ()):
+            listing = [c for c in self.fates if c.prime == p]
+            decided = all(c.verdict == "eliminated" or (c.verdict == "rational" and c.sole and (
+                c.proved or p in claimed)) for c in listing)
+            if decided and (p in claimed or p in self.zeros or self.covered(p)):
+                known.append({x for c in listing for x in c.points})
         no_points = any(local.points == 0 for local in self.locals.values())
         if conclusion == "points":
             need(set(self.points) in known and bool(points), "conclusion", "the points are not decided")
@@ -1946,8 +2124,11 @@ def statement(proof: Proof) -> str:
     for c in proof.fates:
         if c.verdict == "rational":
             where = ", ".join(map(point_words, c.points))
-            alone = f", the only {kind} point there" if c.sole else ""
+            alone = f", the only {kind} point{'s' * (len(c.points) > 1)} there" if c.sole else ""
             out.append(f"Candidate {c.id} (p = {c.prime}) agrees with {where}{alone}.")
+    for p in sorted(proof.zeros):
+        how = "zeros of annihilating integrals are counted"
+        out.append(f"Every {kind} point agrees with a candidate at {p}: {how}.")
     if proof.conclusion == "points":
         points = ", ".join(map(point_words, proof.points))
         out.append(f"{points_of} has exactly {len(proof.points)} points: {points}.")
@@ -1970,7 +2151,7 @@ def report(proof: Proof) -> dict[str, Any]:
         "eliminated": [{"prime": c.prime, "id": c.id} for c in proof.fates if c.verdict == "eliminated"],
         "conclusion": proof.conclusion, "records": proof.records, "case": proof.case,
         "program": proof.program, "local": sorted(proof.locals), "padic": sorted(proof.padics),
-        "saturated": sorted(proof.saturated),
+        "zeros": sorted(proof.zeros), "saturated": sorted(proof.saturated),
     }
 
 

@@ -35,6 +35,7 @@ _KEYS: dict[str, tuple[str, ...]] = {
     "local": ("prime", "invariants", "origin", "unit", "base", "define", "close", "places", "counts"),
     "branch": ("factors", "primes"),
     "padic": ("prime", "digits", "terms", "sections", "discs", "places", "reduction"),
+    "zeros": ("prime", "pivots", "annihilators"),
     "torsion": ("ell", "dimension", "by"),
     "saturated": ("ell", "primes"),
     "fate": ("prime", "id", "verdict"),

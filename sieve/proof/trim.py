@@ -33,7 +33,9 @@ def trim(records: Sequence[Record], image_ells: Collection[int] | None = None) -
     needs = _Needs()
     fates = [r for r in records if r["kind"] == "fate"]
     end = next(r for r in records if r["kind"] == "end")
-    listed = {r["prime"] for r in records if r["kind"] == "premise" and r["id"].startswith("complete ")}
+    counted = {r["prime"] for r in records if r["kind"] == "zeros"}
+    claimed = {r["prime"] for r in records if r["kind"] == "premise" and r["id"].startswith("complete ")}
+    listed = claimed | counted
     wants_classes = not fates and not (end["conclusion"] == "empty" and listed)
     padic = {r["prime"]: r for r in records if r["kind"] == "padic"}
     local = {r["prime"] for r in records if r["kind"] == "local"}
@@ -45,6 +47,8 @@ def trim(records: Sequence[Record], image_ells: Collection[int] | None = None) -
             if not fate["uses"]:
                 needs.ells |= set(image_ells or ())
                 needs.every_ell |= image_ells is None
+    for p in counted:
+        _need_place(p, padic, local, forms, needs)
     for record in records:
         if record["kind"] == "classes" and wants_classes:
             _need_uses(record["uses"], padic, local, forms, needs)

@@ -17,6 +17,7 @@ from sieve.curves.search import by_height
 from sieve.engine.verdicts import CandidateList, Decision
 from sieve.errors import InternalError
 from sieve.local.chabauty import LocatedCandidate, useful_digits
+from sieve.local.zero_counts import ZeroProof
 from sieve.proof.saturation_choice import Chosen, choose_saturation
 from sieve.proof.statement import ProofInput
 from sieve.proof.steps import Elimination, Steps, class_steps, eliminations
@@ -88,6 +89,7 @@ def _layout(source: ProofInput) -> tuple[list[Record], set[int]]:
         for x in source.lists
         if _located(x)
     ]
+    records += [_zeros(x.proof) for x in source.lists if x.proof is not None and x.proof.complete]
     for choice in chosen:
         records += _saturated(choice)
     records += fates
@@ -138,6 +140,11 @@ def _needs_group(listing: CandidateList) -> bool:
     return listing.place.reduction and (
         _located(listing) or any(c.disc is not None for c in listing.candidates)
     )
+
+
+def _zeros(proof: ZeroProof) -> Record:
+    forms = [list(form.coefficients) for form in proof.annihilators]
+    return {"kind": "zeros", "prime": proof.prime, "pivots": list(proof.pivots), "annihilators": forms}
 
 
 def _reduction(source: ProofInput, listing: CandidateList) -> bool:
@@ -290,7 +297,12 @@ def _with_evidence(source: ProofInput, record: Record) -> Record:
         evidence = PadicEvidence(source.curve, place.group, source.places())
         discs = {c.disc for c in listing.candidates if c.kind != "coefficients" and c.disc is not None}
         discs |= evidence.discs_of([source.base, *source.generators])
-        return evidence.record(discs, place.integrals.digits + 1, record["reduction"])
+        digits = place.integrals.digits + 1
+        if listing.proof is not None and listing.proof.complete:
+            # zeros are counted in every disc
+            discs |= set(range(place.group.curve.count))
+            digits = max(digits, listing.proof.digits + 1)
+        return evidence.record(discs, digits, record["reduction"])
     return record
 
 
