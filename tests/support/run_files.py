@@ -9,6 +9,7 @@ from pathlib import Path
 
 from sieve.commands import run as run_command
 from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 from sieve.local.logarithms import PadicIntegrals
 from tests.support.reference_cases import ReferenceCase, reference_case
 
@@ -84,13 +85,13 @@ def chabauty_prime(case: ReferenceCase) -> int:
     return CHOICE.get(case.id) or next(p for p in (5, 7, 11, 13) if p not in case.bad_primes)
 
 
-def random_points(curve: HyperellipticCurve, p: int, digits: int, count: int, seed: int) -> list[str]:
+def random_points(curve: Curve, p: int, digits: int, count: int, seed: int) -> list[str]:
     """Random p-adic points of the curve as integers modulo p^digits, in the notation of candidate files."""
     rng = random.Random(seed)
     integrals = PadicIntegrals(curve, p, digits)
     out = []
     for _ in range(count):
-        disc = rng.randrange(len(integrals.group.curve.points))
+        disc = rng.randrange(integrals.group.curve.count)
         t = p * rng.randrange(p ** (digits - 1))
         x, y, z = integrals.point_at(disc, t, digits)
         out.append(f"({x} + O({p}^{digits}) : {y} + O({p}^{digits}) : {z} + O({p}^{digits}))")
