@@ -10,12 +10,14 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from functools import cached_property
+from math import factorial
 
 import flint
 import numpy as np
 from numpy.typing import NDArray
 
 from sieve.curves.divisors import FibrePlace, MumfordPlace, Place, RationalPlace
+from sieve.curves.extension_counts import quadratic_count, roots_in_extension
 from sieve.curves.local_divisors import LocalDivisor
 from sieve.curves.residues import inverse_table
 from sieve.errors import BadReduction, InternalError
@@ -24,6 +26,9 @@ HigherPlace = tuple[tuple[int, ...], tuple[int, ...]]
 """A place of degree >= 2 over F_v: (u, w), u monic irreducible, y = w(x); low degree first."""
 
 IntArray = NDArray[np.int64]
+
+PLACE_LIMIT = 3000
+"""About as many sections at most are tried through a divisor."""
 
 
 def smooth_modulo(f: Sequence[int], h: Sequence[int], genus: int, v: int) -> bool:
@@ -61,6 +66,8 @@ class ReducedHyperelliptic:
     """
 
     unit_degree = 2
+    involution = True
+    extension_limit = 200_000
 
     def __init__(self, f: Sequence[int], h: Sequence[int], genus: int, v: int) -> None:
         self.prime = v
@@ -173,6 +180,26 @@ class ReducedHyperelliptic:
     @cached_property
     def _inverse(self) -> IntArray:
         return inverse_table(self.prime)
+
+    @property
+    def drawn_count(self) -> int:
+        """Points with smaller numbers are drawn for sections: the affine ones."""
+        return self.affine_count
+
+    @property
+    def fast_from(self) -> int:
+        """From this v on, sections through distinct points give the group."""
+        return 30 if self.genus <= 3 else 60
+
+    @property
+    def base_size(self) -> int:
+        """How many orbits are the base of relations."""
+        return max(self.genus + 4, int(1.1 * self.orbit_count**0.5) + 2 + 4 * (self.genus - 2))
+
+    @property
+    def batch_size(self) -> int:
+        """How many rows of points are tried at a time."""
+        return 220 + 6 * self.orbit_count if self.genus == 2 else 1500 + 20 * self.orbit_count
 
     @property
     def points_per_section(self) -> int:
@@ -317,8 +344,9 @@ class ReducedHyperelliptic:
     def _hp(self) -> flint.nmod_poly:
         return self._poly(self.h)
 
-    def section_divisor(self, c: flint.nmod_poly) -> LocalDivisor:
+    def section_divisor(self, section: flint.nmod_poly) -> LocalDivisor:
         """All zeros of y - c(x), with multiplicities; `units` is the m with (zeros) ~ m U."""
+        c = section
         m = max(c.degree(), self.genus + 1)
         norm = c * c + self._hp * c - self._fp
         points: list[tuple[int, int]] = []
@@ -392,6 +420,14 @@ class ReducedHyperelliptic:
             out.append(tuple(coefficients))
         return sorted(out)
 
+    def extension_count(self, degree: int) -> int:
+        """#X(F_{v^degree}) by enumeration; cost about v^degree operations (v = 2: 4^degree)."""
+        if degree == 1:
+            return self.count
+        v, g = self.prime, self.genus
+        infinite = roots_in_extension([-self.f[2 * g + 2], self.h[g + 1], 1], v, degree)
+        return quadratic_count(self.f, self.h, v, degree) + infinite
+
     # ---- divisors over Q ---------------------------------------------------------------------------
 
     def reduce(self, place: Place) -> LocalDivisor:
@@ -443,6 +479,84 @@ class ReducedHyperelliptic:
         c = w + u * self.interpolate(values)
         return c, self.section_divisor(c)
 
+    def section_through(self, place: Place) -> tuple[flint.nmod_poly, tuple[int, ...]] | None:
+        """A section that vanishes on u(x) = 0, y = w(x), and its other zeros, which are rational.
+
+        These are the roots of the norm divided by u (and the point at infinity).  None when no section is
+        found, or u or w is not integral at v.
+        """
+        assert isinstance(place, MumfordPlace)
+        v, g = self.prime, self.genus
+        if any(a.denominator % v == 0 for a in place.u + place.w):
+            return None
+        # `free` coefficients are left for points to go through; the other zeros must happen to be rational
+        free = g + 2 - place.degree
+        chance = factorial(g if free > 0 else place.degree - 1)
+        if chance > PLACE_LIMIT // 4:
+            return None
+        u, w = (
+            self._poly([a.numerator * pow(a.denominator, -1, v) for a in part]) for part in (place.u, place.w)
+        )
+        rng = np.random.default_rng([v, *(int(a) for a in u.coeffs()), 5, *(int(a) for a in w.coeffs())])
+        outside = [i for i in range(self.affine_count) if int(u(int(self.x[i])))]
+        for attempt in range(200 + 4 * chance):
+            size = free + (attempt // 50) % 4 if free > 0 else min(attempt, 1 + attempt % 2)
+            c = w + u * self._multiplier(u, w, outside, size, rng)
+            norm = c * c + self._hp * c - self._fp
+            rest, remainder = divmod(norm, u)
+            if remainder.degree() >= 0:
+                raise InternalError(f"v = {v}: u does not divide the norm")
+            if norm.degree() < 0 or c.degree() < 0:
+                continue
+            m = max(c.degree(), g + 1)
+            factors = rest.factor()[1]
+            if any(q.degree() > 1 for q, _ in factors):
+                continue
+            zeros: list[int] = []
+            for q, multiplicity in factors:
+                x = -int(q[0]) * pow(int(q[1]), -1, v) % v
+                zeros += [self.index_of(x, int(c(x)), 1)] * int(multiplicity)
+            missing = 2 * m - norm.degree()
+            if missing:
+                zeros += [self.index_of(1, int(c[g + 1]) if m == g + 1 else 0, 0)] * missing
+            return c, tuple(sorted(zeros))
+        return None
+
+    def _multiplier(
+        self,
+        u: flint.nmod_poly,
+        w: flint.nmod_poly,
+        outside: list[int],
+        size: int,
+        rng: np.random.Generator,
+    ) -> flint.nmod_poly:
+        """A random t with `size` coefficients such that w + u t goes through up to that many points."""
+        v = self.prime
+        values: dict[int, int] = {}
+        picks: list[int] = rng.integers(0, len(outside), 2 * size).tolist() if outside else []
+        for k in picks:
+            if len(values) == size:
+                break
+            x, y = int(self.x[outside[k]]), int(self.y[outside[k]])
+            values.setdefault(x, (y - int(w(x))) * pow(int(u(x)), -1, v) % v)
+        t = self.interpolate(sorted(values.items()))
+        if len(values) < size:
+            vanishing = self._poly([1])
+            for a in values:
+                vanishing = vanishing * self._poly([-a, 1])
+            t = t + vanishing * self._poly(rng.integers(0, v, size - len(values)).tolist())
+        return t
+
+    def through(self, points: Sequence[int]) -> flint.nmod_poly:
+        """c for the section y = c(x) through the first g + 2 of these points (affine, distinct x)."""
+        first = points[: self.genus + 2]
+        return self.interpolate([(int(self.x[i]), int(self.y[i])) for i in first])
+
+    def encode(self, section: flint.nmod_poly) -> tuple[int, tuple[tuple[int, ...], ...]]:
+        """The multiple of U and the rows of y - c(x), as logs write a section."""
+        c = [int(a) for a in section.coeffs()]
+        return max(len(c) - 1, self.genus + 1), (tuple(-a % self.prime for a in c), (1,))
+
     def interpolate(self, values: Sequence[tuple[int, int]]) -> flint.nmod_poly:
         """The polynomial of least degree with given values at distinct places."""
         total, product = self._poly([0]), self._poly([1])
@@ -452,8 +566,10 @@ class ReducedHyperelliptic:
             product = product * self._poly([-a, 1])
         return total
 
-    def random_section(self, rng: np.random.Generator, extra: int) -> flint.nmod_poly:
-        """A random c: of degree <= g + 1 + extra, through a random number of rational points."""
+    def random_section(
+        self, rng: np.random.Generator, extra: int, places: Sequence[HigherPlace] = ()
+    ) -> flint.nmod_poly:
+        """A random c: of degree <= g + 1 + extra, through a random number of rational points (no places)."""
         v = self.prime
         size = self.genus + 2 + extra
         # many points on it leave few other zeros; all numbers must occur where points are scarce

@@ -18,4 +18,9 @@ class LocalDivisor:
     places: tuple[tuple[Any, int], ...] = ()
 
 
-__all__ = ["LocalDivisor"]
+def place_degree(place: Any) -> int:
+    """The degree of a place of higher degree over F_v."""
+    return len(place[0]) - 1
+
+
+__all__ = ["LocalDivisor", "place_degree"]

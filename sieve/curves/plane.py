@@ -12,10 +12,10 @@ import flint
 
 from sieve.curves.algebras import characteristic_polynomial, fractions_of, rational_poly
 from sieve.curves.divisors import ClosedPlace, Divisor, Place, Point, RationalPlace
+from sieve.curves.plane_forms import Exponents, monomials
 from sieve.curves.plane_mod import ReducedPlane
 from sieve.errors import BadReduction
 
-Exponents = tuple[int, int, int]
 Rows = tuple[tuple[int, ...], ...]
 
 LARGE_PRIMES = (2147483647, 2147483629, 2147483587)
@@ -39,18 +39,9 @@ class SingularPlaneCurve(ValueError):
         super().__init__(witness)
 
 
-def monomials(degree: int) -> tuple[Exponents, ...]:
-    """The exponents (i, j, k) of all monomials X^i Y^j Z^k of a degree, ordered by j, then i.
-
-    >>> monomials(1)
-    ((0, 0, 1), (1, 0, 0), (0, 1, 0))
-    """
-    return tuple((i, j, degree - i - j) for j in range(degree + 1) for i in range(degree + 1 - j))
-
-
 @lru_cache(maxsize=16)
 def _shifts(form_degree: int, degree: int) -> tuple[dict[Exponents, int], tuple[Exponents, ...]]:
-    """Column numbers of the monomials of a degree, and the multipliers that lead to it from another degree."""
+    """Column numbers of the monomials of a degree, and the multipliers that lead from another one to it."""
     return {e: k for k, e in enumerate(monomials(degree))}, monomials(degree - form_degree)
 
 
@@ -228,15 +219,15 @@ class PlaneCurve:
         m = m / m.coeffs()[-1]
         coordinates = [rational_poly(c) % m for c in (x, y, z)]
         common = m
-        for c in coordinates:
-            common = common.gcd(c)
+        for coordinate in coordinates:
+            common = common.gcd(coordinate)
         if common.degree() > 0:
             raise ValueError("the coordinates are all zero at a root of the polynomial")
         total = rational_poly([])
         for exponents, c in self.terms.items():
             term = rational_poly([c])
-            for base, exponent in zip(coordinates, exponents, strict=True):
-                term = term * pow(base, exponent) % m
+            for base, power in zip(coordinates, exponents, strict=True):
+                term = term * pow(base, power) % m
             total = total + term
         if (total % m).degree() >= 0:
             raise ValueError("not on the curve")
@@ -256,7 +247,7 @@ class PlaneCurve:
 
     @cached_property
     def _minors(self) -> int:
-        """A common divisor of maximal minors of combinations of the Macaulay rows: all bad primes divide it."""
+        """A common divisor of maximal minors of the Macaulay rows, combined: all bad primes divide it."""
         rows = self._macaulay
         width, total, state = len(rows[0]), 0, 1
         for _ in range(6):
@@ -357,4 +348,4 @@ def _injective(coordinates: Sequence[flint.fmpq_poly], m: flint.fmpq_poly) -> bo
     return False
 
 
-__all__ = ["PlaneCurve", "SingularPlaneCurve", "derivative", "macaulay_rows", "monomials"]
+__all__ = ["PlaneCurve", "SingularPlaneCurve", "derivative", "macaulay_rows"]

@@ -1,22 +1,24 @@
 """A smooth plane curve of degree m over a prime field: points, lines through two of them, places.
 
 A line through P and Q is s P + t Q; the form of degree m that F becomes on it is divisible by s t, and the
-other m - 2 zeros are the roots of the quotient.  Its coefficients are values of polars of F, tabulated for all
-points.  Forms of higher degree are treated in `plane_forms`.
+other m - 2 zeros are the roots of the quotient.  Its coefficients are values of polars of F, tabulated for
+all points.  Forms of higher degree are treated in `plane_forms`.
 """
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 from functools import cached_property
-from math import comb
+from math import comb, factorial
 
 import flint
 import numpy as np
 from numpy.typing import NDArray
 
 from sieve.curves.divisors import ClosedPlace, FibrePlace, Place, RationalPlace
+from sieve.curves.extension_counts import plane_count, roots_in_extension
 from sieve.curves.local_divisors import LocalDivisor
+from sieve.curves.plane_forms import Form, PlaneForms
 from sieve.curves.residue_algebra import ResidueAlgebra
 from sieve.curves.residues import inverse_table, power_table, zeros_modulo
 from sieve.errors import BadReduction, InternalError
@@ -28,6 +30,12 @@ HigherPlace = tuple[tuple[int, ...], tuple[int, ...], tuple[int, ...], tuple[int
 BLOCK = 4_000_000
 """Entries of the largest temporary array."""
 
+LISTED_UP_TO = 13
+"""Up to this v, places of degree 2 are recognised in divisors in any case."""
+
+PLACE_LIMIT = 3000
+"""About as many forms at most are tried through a divisor."""
+
 
 class ReducedPlane:
     """A smooth curve F = 0 of degree m in the plane over F_v with all its F_v-points (v < 2^20).
@@ -38,6 +46,8 @@ class ReducedPlane:
     """
 
     section_units = 1
+    involution = False
+    extension_limit = 2500
 
     def __init__(self, rows: Sequence[Sequence[int]], degree: int, v: int) -> None:
         self.prime = v
@@ -46,6 +56,7 @@ class ReducedPlane:
         self.terms: list[tuple[int, int, int, int]] = [
             (i, j, degree - i - j, c % v) for j, row in enumerate(rows) for i, c in enumerate(row) if c % v
         ]
+        self._listed: set[int] = set()
         self._enumerate()
         self.orbit_count = self.count
         self.orbit: IntArray = np.arange(self.count, dtype=np.int64)
@@ -97,6 +108,35 @@ class ReducedPlane:
         """Points with smaller numbers are drawn for sections: all of them."""
         return self.count
 
+    @property
+    def fast_from(self) -> int:
+        """From this v on, lines through different points give the group: enough of them split."""
+        return {4: 40, 5: 160}.get(self.degree, 900)
+
+    @property
+    def base_size(self) -> int:
+        """How many points are the base of relations."""
+        return int(2.2 * self.count**0.5) + 2
+
+    @property
+    def batch_size(self) -> int:
+        """How many pairs of points are tried at a time."""
+        return 1500 + 20 * self.count
+
+    def extension_count(self, degree: int) -> int:
+        """#X(F_{v^degree}) by enumeration; cost about v^{2 degree} operations."""
+        if degree == 1:
+            return self.count
+        rows: list[list[int]] = [[0] * (self.degree + 1 - j) for j in range(self.degree + 1)]
+        infinite = [0] * (self.degree + 1)
+        for i, j, k, c in self.terms:
+            rows[j][i] = c
+            if k == 0:
+                infinite[j] = c
+        last = int(infinite[self.degree] == 0)
+        affine = plane_count(rows, self.prime, degree)
+        return affine + roots_in_extension(infinite, self.prime, degree) + last
+
     def numbers(self, points: IntArray) -> IntArray:
         """The numbers of points of the curve given modulo v in any scale; int64, shape (.., 3) to (..)."""
         v = self.prime
@@ -135,7 +175,7 @@ class ReducedPlane:
 
     @cached_property
     def _polars(self) -> list[tuple[IntArray, IntArray]]:
-        """For k = 1 .. m/2: the coefficients of t^k in F(P + t Q) as a form in Q, and its monomials, at all points."""
+        """For k = 1 .. m/2, at all points: the coefficient of t^k in F(P + t Q) as a form in Q; monomials."""
         v, m = self.prime, self.degree
         powers = [power_table(self.coordinates[:, c], m, v) for c in range(3)]
         out = []
@@ -168,8 +208,8 @@ class ReducedPlane:
         """The m - 2 remaining zeros of the line through two different points.
 
         Arguments: `choice`, int64, shape (T, 2), point numbers accepted by `usable`; v odd, v < 2^20.
-        Returns int64, shape (T, m - 2): point numbers (repeated when the contact is higher), or -1 all along a
-        row whose remaining zeros are not all rational (m >= 5: not all rational and distinct).
+        Returns int64, shape (T, m - 2): point numbers (repeated when the contact is higher), or -1 all along
+        a row whose remaining zeros are not all rational (m >= 5: not all rational and distinct).
         """
         v, m = self.prime, self.degree
         form = self._line_forms(choice)
@@ -227,11 +267,129 @@ class ReducedPlane:
                     split[low + rows] = True
         return s, t, split
 
+    def through(self, points: Sequence[int]) -> Form:
+        """The line through the first two of these points, which are different."""
+        (a, b, c), (d, e, f) = self.points[points[0]], self.points[points[1]]
+        x, y, z = (b * f - c * e, c * d - a * f, a * e - b * d)
+        return Form(1, (z % self.prime, x % self.prime, y % self.prime))
+
+    # ---- forms of any degree -------------------------------------------------------------------------
+
+    @cached_property
+    def forms(self) -> PlaneForms:
+        """The forms on this curve."""
+        return PlaneForms(self)
+
+    def encode(self, section: Form) -> tuple[int, tuple[tuple[int, ...], ...]]:
+        """The multiple n of U and the rows of H(x, y, 1), as logs write a section."""
+        return section.degree, self.forms.rows(section)
+
+    def random_section(
+        self, rng: np.random.Generator, extra: int, places: Sequence[HigherPlace] = ()
+    ) -> Form:
+        """A random form of degree 1, 2 or 3 or more (`extra` > 0) through random points and places."""
+        top = 3 + (extra + 1) // 3
+        while True:
+            degree = int(rng.integers(1 if extra == 0 else 2, top + 1))
+            size = len(self.forms.monomials(degree)) - 1
+            through = size if rng.random() < 0.7 else int(rng.integers(0, size + 1))
+            wanted: dict[int, int] = {}
+            conditions: list[list[int]] = []
+            while len(conditions) + sum(wanted.values()) < through:
+                if places and (not self.count or rng.random() < 0.3):
+                    place = places[int(rng.integers(len(places)))]
+                    conditions += self.forms.through_place(degree, place)
+                elif self.count:
+                    number = int(rng.integers(self.count))
+                    wanted[number] = wanted.get(number, 0) + 1
+                else:
+                    break
+            for number, multiplicity in wanted.items():
+                conditions += self.forms.through_point(degree, number, multiplicity)
+            form = self.forms.solve(degree, conditions, rng)
+            if form is not None:
+                return form
+
+    def section_divisor(self, section: Form) -> LocalDivisor | None:
+        """All zeros of a form, where those of higher degree are recognised; `units` is its degree."""
+        degrees = sorted(self._listed | ({2} if self.prime <= LISTED_UP_TO else set()))
+        found = self.forms.divisor(section, degrees)
+        if found is None:
+            return None
+        points, places = found
+        return LocalDivisor(section.degree, tuple(sorted(points)), tuple(sorted(places)))
+
+    def places_of_degree(self, degree: int) -> list[HigherPlace]:
+        """All places of degree 2 or 3; about v^degree operations: for small v only."""
+        self._listed.add(degree)
+        return self.forms.places_of_degree(degree)
+
+    def substitute(
+        self, place: HigherPlace, rng: np.random.Generator
+    ) -> tuple[Form, LocalDivisor | None] | None:
+        """A form through a place of degree >= 2 and random points; its divisor if the rest is rational."""
+        u, *coordinates = (flint.nmod_poly(list(part), self.prime) for part in place)
+        found = self._form_through(ResidueAlgebra(u), coordinates, int(rng.integers(3)), rng)
+        if found is None:
+            return None
+        form, zeros = found
+        if sum(order for _, order in zeros) + int(u.degree()) != form.degree * self.degree:
+            return form, None
+        return form, LocalDivisor(form.degree, tuple(zeros), ((place, 1),))
+
+    def section_through(self, place: Place) -> tuple[Form, tuple[int, ...]] | None:
+        """A form that vanishes on a closed place over Q, and its other zeros, which are rational.
+
+        Returns the form and point numbers with repetition, sorted; None when none is found or the place does
+        not stay a closed subscheme.
+        """
+        assert isinstance(place, ClosedPlace)
+        try:
+            algebra, coordinates = self.closed_subscheme(place)
+        except BadReduction:
+            return None
+        own: dict[int, int] = {}
+        for factor, multiplicity in algebra.u.factor()[1]:
+            if factor.degree() == 1:
+                x, y, z = (int((c % factor)[0]) for c in coordinates)
+                own[self.index_of(x, y, z)] = int(multiplicity)
+        seed = [c for part in (algebra.u, *coordinates) for c in (*map(int, part.coeffs()), 5)]
+        rng = np.random.default_rng([self.prime, *seed])
+        for attempt in range(200 + min(PLACE_LIMIT, 4 * factorial(min(self.genus, 7)))):
+            found = self._form_through(algebra, coordinates, attempt, rng)
+            if found is None:
+                continue
+            form, zeros = found
+            rest = [i for i, order in zeros for _ in range(order - own.get(i, 0))]
+            if len(rest) + algebra.degree == form.degree * self.degree:
+                return form, tuple(sorted(rest))
+        return None
+
+    def _form_through(
+        self,
+        algebra: ResidueAlgebra,
+        coordinates: Sequence[flint.nmod_poly],
+        attempt: int,
+        rng: np.random.Generator,
+    ) -> tuple[Form, list[tuple[int, int]]] | None:
+        """A form of low degree that vanishes on a subscheme and at random points, and its rational zeros."""
+        degree = 1
+        while len(self.forms.monomials(degree)) <= algebra.degree:
+            degree += 1
+        free = len(self.forms.monomials(degree)) - 1 - algebra.degree
+        if attempt % 2 or (attempt and not free):
+            degree += 1
+            free = len(self.forms.monomials(degree)) - 1 - algebra.degree
+        conditions = self.forms.through_subscheme(degree, algebra, coordinates)
+        for number in rng.permutation(self.count)[:free].tolist():
+            conditions += self.forms.through_point(degree, number, 1)
+        form = self.forms.solve(degree, conditions, rng)
+        return None if form is None else (form, self.forms.rational_zeros(form))
+
     # ---- divisors over Q ---------------------------------------------------------------------------
 
     def reduce(self, place: Place) -> LocalDivisor:
-        """The reduction of a place over Q; raises `BadReduction` where it does not stay a closed subscheme."""
-        v = self.prime
+        """The reduction of a place over Q; raises `BadReduction` where it is no closed subscheme any more."""
         if isinstance(place, RationalPlace):
             return LocalDivisor(0, ((self.index_of(*place.point), 1),))
         if isinstance(place, FibrePlace):
@@ -264,7 +422,7 @@ class ReducedPlane:
         return algebra, coordinates
 
     def higher_place(self, u: flint.nmod_poly, coordinates: Sequence[flint.nmod_poly]) -> HigherPlace:
-        """The key of the place of a point over F_v[t]/u, u irreducible; raises `BadReduction` if it has none."""
+        """The place of a point over F_v[t]/u, u irreducible; raises `BadReduction` where it has no name."""
         algebra = ResidueAlgebra(u)
         found = algebra.embedding(coordinates)
         if found is None:

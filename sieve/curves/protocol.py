@@ -17,6 +17,9 @@ from numpy.typing import NDArray
 from sieve.curves.divisors import Divisor, Place, Point
 
 IntArray = NDArray[np.int64]
+Rows = tuple[tuple[int, ...], ...]
+HigherPlace = Any
+"""A place of degree >= 2 over F_v: a sortable tuple whose first entry is a polynomial of its degree."""
 
 
 class LocalDivisorLike(Protocol):
@@ -41,10 +44,16 @@ class ReducedCurve(Protocol):
     The class of point i is sign[i] * (class of the first point of orbit[i]) + fibre[i] * U, where U is a
     fixed class such that a section has class `section_units` * U.  Without an involution every point is its
     own orbit, sign 1, fibre 0, and U is the section class.  `ramified` lists orbits with 2 P ~ U.
+
+    `unit_degree`: the degree of U; `involution`: conjugate places add up to multiples of U;
+    `extension_limit`: the largest field over which points are counted.
     """
 
     prime: int
     genus: int
+    unit_degree: int
+    involution: bool
+    extension_limit: int
     count: int
     affine_count: int
     orbit_count: int
@@ -54,6 +63,24 @@ class ReducedCurve(Protocol):
     fibre: IntArray
     ramified: IntArray
 
+    # ---- sections through distinct points, in bulk -------------------------------------------------
+
+    @property
+    def drawn_count(self) -> int:
+        """Points with smaller numbers are drawn for sections."""
+
+    @property
+    def fast_from(self) -> int:
+        """From this v on, sections through distinct points give the group."""
+
+    @property
+    def base_size(self) -> int:
+        """How many orbits are the base of relations."""
+
+    @property
+    def batch_size(self) -> int:
+        """How many rows of points are tried at a time."""
+
     def usable(self, choice: IntArray) -> NDArray[np.bool_]:
         """Rows of point numbers, shape (T, k), that fix a section; k = `points_per_section`."""
 
@@ -62,7 +89,32 @@ class ReducedCurve(Protocol):
         """How many points fix a section."""
 
     def residuals(self, choice: IntArray) -> IntArray:
-        """The other zeros of sections through usable rows, shape (T, g); -1 where not all are rational."""
+        """The other zeros of sections through usable rows, one row each; -1 where not all are rational."""
+
+    # ---- single sections ---------------------------------------------------------------------------
+
+    def through(self, points: Sequence[int]) -> Any:
+        """The section through a usable row (the first `points_per_section` numbers)."""
+
+    def encode(self, section: Any) -> tuple[int, Rows]:
+        """The multiple n of U that the section has, and the rows of its form, as logs write them."""
+
+    def random_section(self, rng: np.random.Generator, extra: int, places: Sequence[Any] = ()) -> Any:
+        """A random section, of a higher multiple for `extra` > 0, often through points and given places."""
+
+    def section_divisor(self, section: Any) -> LocalDivisorLike | None:
+        """All zeros with multiplicities, `units` the class; None where they are not worked out."""
+
+    def section_through(self, place: Place) -> tuple[Any, tuple[int, ...]] | None:
+        """A section that vanishes on a closed place over Q and its other zeros, all rational; or None."""
+
+    def extension_count(self, degree: int) -> int:
+        """#X(F_{v^degree}) by enumeration, for small fields."""
+
+    # ---- places ------------------------------------------------------------------------------------
+
+    def places_of_degree(self, degree: int) -> list[Any]:
+        """All places of degree 2 or 3 (one of every pair of conjugates), multiples of U left out."""
 
     def reduce(self, place: Place) -> LocalDivisorLike:
         """The reduction of a place over Q; raises `BadReduction`."""
@@ -70,8 +122,14 @@ class ReducedCurve(Protocol):
     def higher_partner(self, place: Any) -> Any:
         """The conjugate of a place of degree >= 2 (itself for a model without an involution)."""
 
-    def substitute(self, place: Any, rng: np.random.Generator) -> tuple[Any, Any] | None:
-        """A section through a place of degree >= 2 and the divisor of its zeros, or None."""
+    def substitute(
+        self, place: Any, rng: np.random.Generator
+    ) -> tuple[Any, LocalDivisorLike | None] | None:
+        """A section through a place of degree >= 2 and the divisor of its zeros, where known; or None."""
+
+    @property
+    def points(self) -> list[tuple[int, int, int]]:
+        """All points in normalised coordinates, in the order of their numbers."""
 
     def index_of(self, x: int, y: int, z: int) -> int:
         """The number of a point given by coordinates modulo v."""

@@ -42,10 +42,10 @@ class ResidueAlgebra:
     def embedding(
         self, coordinates: Sequence[flint.nmod_poly], weight: int = 1
     ) -> tuple[flint.nmod_poly, list[flint.nmod_poly]] | None:
-        """Scaled coordinates of a point that is a closed immersion, and a generator made of them; else None.
+        """A generator made of a point's coordinates, and these, scaled; None if it is no closed immersion.
 
-        Arguments: X, Y, Z with weights 1, w, 1.  The first unit among Z, X and (w = 1) Y becomes 1.  The other
-        two, a and b, generate the algebra when one of a, b, a + b, .., does.
+        Arguments: X, Y, Z with weights 1, w, 1.  The first unit among Z, X and (w = 1) Y becomes 1.  The
+        other two, a and b, generate the algebra when one of a, b, a + b, .., does.
         """
         x, y, z = (c % self.u for c in coordinates)
         for lead in (2, 0, 1) if weight == 1 else (2, 0):

@@ -18,23 +18,17 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
-from sieve.curves.hyperelliptic_mod import HigherPlace, LocalDivisor, ReducedHyperelliptic
-from sieve.curves.protocol import ReducedCurve
+from sieve.curves.local_divisors import place_degree
+from sieve.curves.protocol import HigherPlace, LocalDivisorLike, ReducedCurve
 from sieve.errors import InternalError, Uncertified
 from sieve.exact.abelian import FiniteQuotient, quotient_by
 from sieve.local.exact_sections import close_lattice
-from sieve.local.order_bounds import exact_order, extension_count, order_lower_bound
+from sieve.local.order_bounds import exact_order, order_lower_bound
 
 IntArray = NDArray[np.int64]
 
-FAST_FROM = {2: 30, 3: 30}
-"""From this v on, sections through distinct points are used alone (by genus; 4 and up: 60)."""
-
 SECTION_LIMIT = 60_000
 """Sections tried at a small prime before it is given up."""
-
-EXTENSION_LIMIT = 200_000
-"""Largest v^e for which #X(F_{v^e}) is counted."""
 
 
 @dataclass
@@ -47,7 +41,7 @@ class PicardGroup:
     whether rational points alone are known to generate.
     """
 
-    curve: ReducedHyperelliptic
+    curve: ReducedCurve
     invariants: tuple[int, ...]
     order: int
     point_logs: IntArray
@@ -67,7 +61,7 @@ class PicardGroup:
         for i, d in enumerate(self.invariants):
             total[i] = (total[i] + multiplicity * int(log[i])) % d
 
-    def log(self, divisor: LocalDivisor) -> tuple[int, ...]:
+    def log(self, divisor: LocalDivisorLike) -> tuple[int, ...]:
         """The class of D - deg(D) P0 for an effective divisor over F_v.
 
         Places of higher degree are replaced through sections; raises `Uncertified` if none is found.
@@ -88,7 +82,7 @@ class PicardGroup:
         other = self.higher_logs.get(partner)
         total = [0] * len(self.invariants)
         if other is not None:
-            self.add(total, len(place[0]) - 1, self.unit_log)
+            self.add(total, place_degree(place), self.unit_log)
             self.add(total, -1, other)
         else:
             divisor = self._rational_relation(place, depth)
@@ -101,18 +95,19 @@ class PicardGroup:
         self.higher_logs[place] = tuple(total)
         return tuple(total)
 
-    def _rational_relation(self, place: HigherPlace, depth: int) -> LocalDivisor:
-        rng = np.random.default_rng([self.prime, *place[0], 7, *place[1]])
+    def _rational_relation(self, place: HigherPlace, depth: int) -> LocalDivisorLike:
+        seed = [c for k, part in enumerate(place) for c in ((7, *part) if k else part)]
+        rng = np.random.default_rng([self.prime, *seed])
         for _ in range(4000):
             found = self.curve.substitute(place, rng)
             if found is None:
                 break
             _, divisor = found
-            if dict(divisor.places).get(place) != 1:
+            if divisor is None or dict(divisor.places).get(place) != 1:
                 continue
             rest = [p for p, _ in divisor.places if p != place]
-            lower = all(p in self.higher_logs or len(p[0]) < len(place[0]) for p in rest)
-            if not rest or (depth < 20 and len(place[0]) - 1 > self.curve.genus + 1 and lower):
+            lower = all(p in self.higher_logs or place_degree(p) < place_degree(place) for p in rest)
+            if not rest or (depth < 20 and place_degree(place) > self.curve.genus + 1 and lower):
                 return divisor
             if all(p in self.higher_logs or self.curve.higher_partner(p) in self.higher_logs for p in rest):
                 return divisor
@@ -121,7 +116,7 @@ class PicardGroup:
         )
 
 
-def picard_group(curve: ReducedHyperelliptic) -> PicardGroup:
+def picard_group(curve: ReducedCurve) -> PicardGroup:
     """The certified group J(F_v) and the logarithms of all its rational points.
 
     Raises `Uncertified` (with the reason) when completeness cannot be proved, in particular when there is no
@@ -131,7 +126,7 @@ def picard_group(curve: ReducedHyperelliptic) -> PicardGroup:
         raise Uncertified(curve.prime, "no points modulo v")
     v, g = curve.prime, curve.genus
     generated = curve.count**2 > (2 * g - 2) ** 2 * v
-    if generated and v >= FAST_FROM.get(g, 60):
+    if generated and v >= curve.fast_from:
         group = _from_point_sections(curve)
         if group is not None:
             return group
@@ -181,15 +176,16 @@ class _Definitions:
         return True
 
 
-def _from_point_sections(curve: ReducedHyperelliptic) -> PicardGroup | None:
+def _from_point_sections(curve: ReducedCurve) -> PicardGroup | None:
     v, g = curve.prime, curve.genus
     rng = np.random.default_rng([v, g])
     permutation = rng.permutation(curve.orbit_count)
     # ramified points and those that `usable` never draws would hardly meet any relation
-    unfit = set(curve.ramified.tolist()) | set(curve.orbit[curve.affine_count :].tolist())
-    size = min(curve.orbit_count, _base_size(curve.orbit_count, g))
+    unfit = set(curve.ramified.tolist()) | set(curve.orbit[curve.drawn_count :].tolist())
+    size = min(curve.orbit_count, curve.base_size)
+    through = curve.points_per_section
     base = np.array([o for o in permutation.tolist() if o not in unfit][:size], dtype=np.int64)
-    if len(base) < g + 2:
+    if len(base) < through:
         return None
     state = _Definitions(curve, base)
     lower = order_lower_bound(v, g, curve.count)
@@ -199,16 +195,15 @@ def _from_point_sections(curve: ReducedHyperelliptic) -> PicardGroup | None:
     for attempt in range(40):
         # closing relations need short combinations throughout; unknown points need many known ones
         wanted = state.short if state.known.all() or attempt % 2 == 0 else state.known
-        pool = np.flatnonzero(wanted[curve.orbit][: curve.affine_count])
-        count = _batch_size(curve, state, attempt)
-        choice = pool[rng.integers(0, len(pool), (count, g + 2))]
+        pool = np.flatnonzero(wanted[curve.orbit][: curve.drawn_count])
+        choice = pool[rng.integers(0, len(pool), (curve.batch_size, through))]
         choice = choice[curve.usable(choice)]
         rest = curve.residuals(choice)
         split = rest[:, 0] >= 0
         divisors = np.concatenate([choice[split], rest[split]], axis=1)
         sections += len(divisors)
         rounds = len(state.rounds)
-        closing.extend(_use(curve, state, divisors, g + 2))
+        closing.extend(_use(curve, state, divisors, through))
         if group is None:
             group = _close(curve, state, closing, lower)
         if group is None and state.known.all() and attempt >= 4:
@@ -224,15 +219,6 @@ def _from_point_sections(curve: ReducedHyperelliptic) -> PicardGroup | None:
     if group is None or not state.known.all():
         return None
     return _finish(curve, state, group, sections)
-
-
-def _base_size(orbits: int, genus: int) -> int:
-    return max(genus + 4, int(1.1 * orbits**0.5) + 2 + 4 * (genus - 2))
-
-
-def _batch_size(curve: ReducedCurve, state: _Definitions, attempt: int) -> int:
-    base = 220 if curve.genus == 2 else 1500
-    return int(base + (6 if curve.genus == 2 else 20) * curve.orbit_count)
 
 
 def _use(curve: ReducedCurve, state: _Definitions, divisors: IntArray, chosen: int) -> list[IntArray]:
@@ -301,9 +287,7 @@ def _close(
     return None
 
 
-def _finish(
-    curve: ReducedHyperelliptic, state: _Definitions, group: FiniteQuotient, sections: int
-) -> PicardGroup:
+def _finish(curve: ReducedCurve, state: _Definitions, group: FiniteQuotient, sections: int) -> PicardGroup:
     invariants = group.invariants
     moduli = np.array(invariants, dtype=np.int64)
     logs = np.zeros((curve.orbit_count, len(invariants)), dtype=np.int64)
@@ -332,7 +316,7 @@ def _finish(
 # ---- small v: exact divisors of sections, contact orders and places of higher degree ----------------
 
 
-def _from_exact_sections(curve: ReducedHyperelliptic, generated: bool) -> PicardGroup:
+def _from_exact_sections(curve: ReducedCurve, generated: bool) -> PicardGroup:
     v, g = curve.prime, curve.genus
     counts = [curve.count]
     higher_degree = 1
@@ -341,7 +325,7 @@ def _from_exact_sections(curve: ReducedHyperelliptic, generated: bool) -> Picard
         for degree in (2, 3):
             if v**degree > 2500:
                 break
-            count = extension_count(curve, degree)
+            count = curve.extension_count(degree)
             if count * count > (2 * g - 2) ** 2 * v**degree:
                 higher_degree = degree
                 reason = f"places of degree dividing {degree} generate (N_{degree} > (2g-2) v^({degree}/2))"
@@ -352,11 +336,11 @@ def _from_exact_sections(curve: ReducedHyperelliptic, generated: bool) -> Picard
             raise Uncertified(v, f"too few points ({curve.count}) to know that they generate J(F_v)")
     lower, exact = order_lower_bound(v, g, curve.count), False
     if order_upper_exceeds(v, g, curve.count, 2 * lower):
-        if v**g > EXTENSION_LIMIT:
+        if v**g > curve.extension_limit:
             raise Uncertified(
                 v, "the Weil bound is not sharp enough and the extension fields are too large to count"
             )
-        counts += [extension_count(curve, e) for e in range(2, g + 1)]
+        counts += [curve.extension_count(e) for e in range(2, g + 1)]
         lower, exact = exact_order(curve, counts), True
     places = curve.places_of_degree(higher_degree) if higher_degree > 1 else []
     closed = close_lattice(curve, places, lower, exact, SECTION_LIMIT)

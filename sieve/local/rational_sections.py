@@ -1,4 +1,4 @@
-"""J(F_v) presented by rational points alone: sections y = c(x) all of whose zeros are F_v-points.
+"""J(F_v) presented by rational points alone: sections all of whose zeros are F_v-points.
 
 A few points are the base.  Sections with one unknown zero define that point as a combination of the base;
 sections without unknown zeros are relations.  Together with 2 P ~ U for every point that is its own conjugate
@@ -10,32 +10,31 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from math import factorial
+from typing import Any
 
-import flint
 import numpy as np
 from numpy.typing import NDArray
 
-from sieve.curves.divisors import MumfordPlace
-from sieve.curves.hyperelliptic_mod import ReducedHyperelliptic
+from sieve.curves.divisors import Place
+from sieve.curves.protocol import ReducedCurve, Rows
 from sieve.errors import InternalError
 from sieve.exact.abelian import quotient_by
-from sieve.local.picard import FAST_FROM, PicardGroup
+from sieve.local.picard import PicardGroup
 
 IntArray = NDArray[np.int64]
 
 SMALL_LIMIT = 4000
 """Sections tried at a small prime."""
 
-PLACE_LIMIT = 3000
-"""About as many sections at most are tried through a divisor."""
-
-
 @dataclass(frozen=True)
 class Section:
-    """The section y = c(x), c low degree first, and its zeros: point numbers, sorted, with repetition."""
+    """A weighted form H of degree `multiple`, and zeros: point numbers, sorted, with repetition.
 
-    c: tuple[int, ...]
+    rows[k] holds the coefficients of y^k in H(x, y, 1), low degree first; the class is `multiple` times U.
+    """
+
+    multiple: int
+    rows: Rows
     zeros: tuple[int, ...]
 
 
@@ -63,89 +62,29 @@ def present(group: PicardGroup) -> Presentation | None:
     if not group.rational_generation:
         return None
     found = None
-    if curve.prime >= FAST_FROM.get(curve.genus, 60):
+    if curve.prime >= curve.fast_from:
         found = _few_base_points(group)
     return found or _all_points_as_base(group)
 
 
-def zeros_of(curve: ReducedHyperelliptic, c: flint.nmod_poly) -> tuple[int, ...] | None:
-    """The zeros of y - c(x) as point numbers with repetition, or None if they are not all rational."""
-    divisor = curve.section_divisor(c)
-    if divisor.places:
+def zeros_of(curve: ReducedCurve, section: Any) -> tuple[int, ...] | None:
+    """The zeros of a section as point numbers with repetition, or None if they are not all rational."""
+    divisor = curve.section_divisor(section)
+    if divisor is None or divisor.places:
         return None
     return tuple(i for i, multiplicity in divisor.points for _ in range(multiplicity))
 
 
-def section_through(curve: ReducedHyperelliptic, place: MumfordPlace) -> Section | None:
-    """A section that vanishes on a divisor over Q and whose other zeros, those listed, are rational.
+def section_through(curve: ReducedCurve, place: Place) -> Section | None:
+    """A section that vanishes on a closed place over Q; its zeros outside it, those listed, are rational.
 
-    The zeros outside the divisor are the roots of the norm divided by u (and the point at infinity).  None
-    when no section is found, or u or w is not integral at v.
+    Returns None when no section is found, or the place does not reduce to a closed subscheme.
     """
-    v, g = curve.prime, curve.genus
-    if any(a.denominator % v == 0 for a in place.u + place.w):
+    found = curve.section_through(place)
+    if found is None:
         return None
-    # `free` coefficients are left for points to go through; the other zeros must happen to be rational
-    free = g + 2 - place.degree
-    chance = factorial(g if free > 0 else place.degree - 1)
-    if chance > PLACE_LIMIT // 4:
-        return None
-    u, w = (_poly([a.numerator * pow(a.denominator, -1, v) for a in part], v) for part in (place.u, place.w))
-    f, h = _poly(curve.f, v), _poly(curve.h, v)
-    rng = np.random.default_rng([v, *(int(a) for a in u.coeffs()), 5, *(int(a) for a in w.coeffs())])
-    outside = [i for i in range(curve.affine_count) if int(u(int(curve.x[i])))]
-    for attempt in range(200 + 4 * chance):
-        size = free + (attempt // 50) % 4 if free > 0 else min(attempt, 1 + attempt % 2)
-        c = w + u * _multiplier(curve, u, w, outside, size, rng)
-        norm = c * c + h * c - f
-        rest, remainder = divmod(norm, u)
-        if remainder.degree() >= 0:
-            raise InternalError(f"v = {v}: u does not divide the norm")
-        if norm.degree() < 0 or c.degree() < 0:
-            continue
-        m = max(c.degree(), g + 1)
-        factors = rest.factor()[1]
-        if any(q.degree() > 1 for q, _ in factors):
-            continue
-        zeros: list[int] = []
-        for q, multiplicity in factors:
-            x = -int(q[0]) * pow(int(q[1]), -1, v) % v
-            zeros += [curve.index_of(x, int(c(x)), 1)] * int(multiplicity)
-        missing = 2 * m - norm.degree()
-        if missing:
-            zeros += [curve.index_of(1, int(c[g + 1]) if m == g + 1 else 0, 0)] * missing
-        return Section(tuple(int(a) for a in c.coeffs()), tuple(sorted(zeros)))
-    return None
-
-
-def _poly(values: Sequence[int], v: int) -> flint.nmod_poly:
-    return flint.nmod_poly([int(a) % v for a in values], v)
-
-
-def _multiplier(
-    curve: ReducedHyperelliptic,
-    u: flint.nmod_poly,
-    w: flint.nmod_poly,
-    outside: list[int],
-    size: int,
-    rng: np.random.Generator,
-) -> flint.nmod_poly:
-    """A random t with `size` coefficients such that w + u t goes through up to that many rational points."""
-    v = curve.prime
-    values: dict[int, int] = {}
-    picks: list[int] = rng.integers(0, len(outside), 2 * size).tolist() if outside else []
-    for k in picks:
-        if len(values) == size:
-            break
-        x, y = int(curve.x[outside[k]]), int(curve.y[outside[k]])
-        values.setdefault(x, (y - int(w(x))) * pow(int(u(x)), -1, v) % v)
-    t = curve.interpolate(sorted(values.items()))
-    if len(values) < size:
-        vanishing = _poly([1], v)
-        for a in values:
-            vanishing = vanishing * _poly([-a, 1], v)
-        t = t + vanishing * _poly(rng.integers(0, v, size - len(values)).tolist(), v)
-    return t
+    section, zeros = found
+    return Section(*curve.encode(section), zeros)
 
 
 # ---- the lattice ---------------------------------------------------------------------------------------
@@ -166,11 +105,7 @@ def _check(group: PicardGroup, zeros: Sequence[int], units: int) -> None:
         raise InternalError(f"v = {group.prime}: a section contradicts the logarithms")
 
 
-def _units(curve: ReducedHyperelliptic, c: Sequence[int]) -> int:
-    return max(len(c) - 1, curve.genus + 1)
-
-
-def _leaders(curve: ReducedHyperelliptic) -> list[int]:
+def _leaders(curve: ReducedCurve) -> list[int]:
     """The first point of every orbit."""
     leaders = [-1] * curve.orbit_count
     for i in range(curve.count):
@@ -182,7 +117,7 @@ def _leaders(curve: ReducedHyperelliptic) -> list[int]:
 class _Columns:
     """Combinations of (U, base points) for the orbits; the orbit of P0 is 0."""
 
-    def __init__(self, curve: ReducedHyperelliptic, origin_orbit: int, base: Sequence[int]) -> None:
+    def __init__(self, curve: ReducedCurve, origin_orbit: int, base: Sequence[int]) -> None:
         self.curve = curve
         self.width = 1 + len(base)
         self.rows: dict[int, IntArray] = {origin_orbit: np.zeros(self.width, dtype=np.int64)}
@@ -236,18 +171,16 @@ def _choose(
 def _few_base_points(group: PicardGroup) -> Presentation | None:
     """Large v: sections through distinct points, vectorised."""
     curve = group.curve
-    v, g = curve.prime, curve.genus
-    rng = np.random.default_rng([v, g, 17])
+    rng = np.random.default_rng([curve.prime, curve.genus, 17])
     leaders, origin = _leaders(curve), _origin(group)
     ramified = set(curve.ramified.tolist())
     affine = [
         o
         for o in rng.permutation(curve.orbit_count).tolist()
-        if o not in ramified and leaders[o] < curve.affine_count and leaders[o] != origin
+        if o not in ramified and leaders[o] < curve.drawn_count and leaders[o] != origin
     ]
     start = int(curve.orbit[origin])
-    size = max(g + 4, int(1.1 * curve.orbit_count**0.5) + 2 + 4 * (g - 2))
-    base = affine[: min(size, len(affine))]
+    base = affine[: min(curve.base_size, len(affine))]
     for _ in range(6):
         found = _from_base(group, rng, origin, start, base, leaders)
         if isinstance(found, Presentation):
@@ -261,7 +194,6 @@ def _from_base(
 ) -> Presentation | list[int]:
     """A presentation on this base, or the orbits to add to it."""
     curve = group.curve
-    g = curve.genus
     columns = _Columns(curve, start, base)
     known = np.zeros(curve.orbit_count, dtype=bool)
     known[[start, *base]] = True
@@ -271,9 +203,9 @@ def _from_base(
     stalled = 0
     for attempt in range(40):
         wanted = short if attempt % 2 == 0 or known.all() else known
-        pool = np.flatnonzero(wanted[curve.orbit][: curve.affine_count])
-        count = (300 if g == 2 else 1500) + (20 if g == 2 else 40) * curve.orbit_count
-        choice = pool[rng.integers(0, len(pool), (count, g + 2))]
+        pool = np.flatnonzero(wanted[curve.orbit][: curve.drawn_count])
+        count = 80 + 2 * curve.batch_size
+        choice = pool[rng.integers(0, len(pool), (count, curve.points_per_section))]
         choice = choice[curve.usable(choice)]
         rest = curve.residuals(choice)
         divisors = np.concatenate([choice, rest], axis=1)[rest[:, 0] >= 0]
@@ -286,7 +218,7 @@ def _from_base(
                 continue  # defined by an earlier row of this batch
             # within a batch only what was known before it counts, so that chains stay short
             section = _section(curve, divisors[k])
-            columns.define(unknown[0], section.zeros, _units(curve, section.c))
+            columns.define(unknown[0], section.zeros, section.multiple)
             define.append(section)
             known[unknown[0]] = True
         if before == 0 and define:
@@ -295,7 +227,7 @@ def _from_base(
             inside = short[orbits].all(axis=1) & (missing == 0)
             for k in np.flatnonzero(inside)[: 4 * columns.width + 40].tolist():
                 section = _section(curve, divisors[k])
-                row = tuple(int(a) for a in columns.total(section.zeros, _units(curve, section.c)))
+                row = tuple(int(a) for a in columns.total(section.zeros, section.multiple))
                 if any(row):
                     closing.setdefault(row, section)
         stalled = stalled + 1 if len(define) == before and not known.all() else 0
@@ -307,18 +239,17 @@ def _from_base(
             if chosen is not None:
                 close = tuple(closing[rows[k]] for k in chosen)
                 for section in [*define, *close]:
-                    _check(group, section.zeros, _units(curve, section.c))
+                    _check(group, section.zeros, section.multiple)
                 return Presentation(origin, tuple(leaders[o] for o in base), tuple(define), close)
             if attempt > 6:
                 short = known.copy()
     return []
 
 
-def _section(curve: ReducedHyperelliptic, zeros: IntArray) -> Section:
-    """The section with these zeros, the first g + 2 of which are affine with distinct x."""
-    through = zeros[: curve.genus + 2].tolist()
-    c = curve.interpolate([(int(curve.x[i]), int(curve.y[i])) for i in through])
-    return Section(tuple(int(a) for a in c.coeffs()), tuple(sorted(int(i) for i in zeros)))
+def _section(curve: ReducedCurve, zeros: IntArray) -> Section:
+    """The section with these zeros, the first of which fix it."""
+    numbers = [int(i) for i in zeros]
+    return Section(*curve.encode(curve.through(numbers)), tuple(sorted(numbers)))
 
 
 def _all_points_as_base(group: PicardGroup) -> Presentation | None:
@@ -333,11 +264,11 @@ def _all_points_as_base(group: PicardGroup) -> Presentation | None:
     closing: dict[tuple[int, ...], Section] = {}
     looked = -1
     for attempt in range(1, SMALL_LIMIT + 1):
-        c = curve.random_section(rng, extra=0 if attempt < 300 else attempt % 5)
-        zeros = zeros_of(curve, c)
-        if zeros is not None and c.degree() >= 0:
-            section = Section(tuple(int(a) for a in c.coeffs()), zeros)
-            closing.setdefault(tuple(int(a) for a in columns.total(zeros, _units(curve, section.c))), section)
+        found = curve.random_section(rng, 0 if attempt < 300 else attempt % 5)
+        zeros = zeros_of(curve, found)
+        if zeros is not None:
+            section = Section(*curve.encode(found), zeros)
+            closing.setdefault(tuple(int(a) for a in columns.total(zeros, section.multiple)), section)
         if attempt % 100 or len(closing) + len(free) < columns.width or len(closing) == looked:
             continue
         looked = len(closing)
@@ -346,7 +277,7 @@ def _all_points_as_base(group: PicardGroup) -> Presentation | None:
         if chosen is not None:
             close = tuple(closing[rows[k]] for k in chosen)
             for section in close:
-                _check(group, section.zeros, _units(curve, section.c))
+                _check(group, section.zeros, section.multiple)
             return Presentation(origin, tuple(leaders[o] for o in base), (), close)
     return None
 

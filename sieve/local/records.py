@@ -13,11 +13,11 @@ from functools import partial
 import numpy as np
 from numpy.typing import NDArray
 
-from sieve.curves.divisors import Divisor, MumfordPlace
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.divisors import ClosedPlace, Divisor, MumfordPlace
+from sieve.curves.protocol import Curve
 from sieve.errors import BadReduction, SieveError, Uncertified
 from sieve.local.condition import Condition
-from sieve.local.picard import FAST_FROM, PicardGroup, picard_group
+from sieve.local.picard import PicardGroup, picard_group
 from sieve.local.rational_sections import present, section_through
 
 
@@ -71,16 +71,16 @@ def divisor_log(group: PicardGroup, divisor: Divisor) -> tuple[int, ...]:
 def expressible(group: PicardGroup, base: Divisor, divisors: Sequence[Divisor]) -> bool:
     """Whether the group and the classes of the divisors can be shown by sections with rational zeros."""
     places = dict.fromkeys(place for d in (base, *divisors) for _, place in d.terms)
-    if not all(section_through(group.curve, place) for place in places if isinstance(place, MumfordPlace)):
+    closed = [place for place in places if isinstance(place, MumfordPlace | ClosedPlace)]
+    if not all(section_through(group.curve, place) for place in closed):
         return False
-    v, g = group.prime, group.curve.genus
-    if v >= FAST_FROM.get(g, 60) and not group.higher_logs:
+    if group.prime >= group.curve.fast_from and not group.higher_logs:
         return group.rational_generation
     return present(group) is not None
 
 
 def local_record(
-    curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor], v: int, integral: bool = False
+    curve: Curve, base: Divisor, divisors: Sequence[Divisor], v: int, integral: bool = False
 ) -> LocalRecord:
     """The record at the prime v.
 
@@ -115,7 +115,7 @@ def local_record(
 
 
 def _guarded(
-    curve: HyperellipticCurve, base: Divisor, divisors: Sequence[Divisor], integral: bool, v: int
+    curve: Curve, base: Divisor, divisors: Sequence[Divisor], integral: bool, v: int
 ) -> LocalRecord:
     try:
         return local_record(curve, base, divisors, v, integral)
@@ -126,7 +126,7 @@ def _guarded(
 
 
 def local_records(
-    curve: HyperellipticCurve,
+    curve: Curve,
     base: Divisor,
     divisors: Sequence[Divisor],
     primes: Sequence[int],

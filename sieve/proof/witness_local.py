@@ -5,18 +5,18 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import Any
 
-from sieve.curves.divisors import MumfordPlace
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.divisors import Place
+from sieve.curves.protocol import Curve
 from sieve.errors import InternalError
 from sieve.local.order_bounds import order_lower_bound
 from sieve.local.picard import picard_group
 from sieve.local.rational_sections import Section, present, section_through
 
 
-def local_document(curve: HyperellipticCurve, v: int, places: Sequence[MumfordPlace]) -> dict[str, Any]:
+def local_document(curve: Curve, v: int, places: Sequence[Place]) -> dict[str, Any]:
     """The `local` record at a good prime v whose group and places are expressible.
 
-    Arguments: `places`, the Mumford places of the statement in order.  Raises `InternalError` when sections
+    Arguments: `places`, the closed places of the statement in order.  Raises `InternalError` when sections
     that were found before are not found now.
     """
     reduced = curve.modulo(v)
@@ -26,12 +26,12 @@ def local_document(curve: HyperellipticCurve, v: int, places: Sequence[MumfordPl
     found = present(group)
     if found is None:
         raise InternalError(f"v = {v}: no sections with rational zeros present the group")
-    mumford = []
+    shown = []
     for k, place in enumerate(places):
         section = section_through(reduced, place)
         if section is None:
             raise InternalError(f"v = {v}: no section with rational zeros through closed point {k}")
-        mumford.append([k, *_pair(section)])
+        shown.append([k, *_pair(section)])
     sharp = group.order < 2 * order_lower_bound(v, curve.genus, reduced.count)
     base = [[number, [int(c) for c in group.point_logs[number]]] for number in found.base]
     return _document(
@@ -42,13 +42,14 @@ def local_document(curve: HyperellipticCurve, v: int, places: Sequence[MumfordPl
         base,
         [_pair(s) for s in found.define],
         [_pair(s) for s in found.close],
-        mumford,
+        shown,
         0 if sharp else curve.genus,
     )
 
 
-def _pair(section: Section) -> list[list[int]]:
-    return [list(section.c), list(section.zeros)]
+def _pair(section: Section) -> list[list[Any]]:
+    """A section as [n, row0, row1, ..], and zeros."""
+    return [[section.multiple, *(list(row) for row in section.rows)], list(section.zeros)]
 
 
 def _document(
@@ -57,9 +58,9 @@ def _document(
     origin: int | None,
     unit: list[int],
     base: list[list[Any]],
-    define: list[list[list[int]]],
-    close: list[list[list[int]]],
-    mumford: list[list[Any]],
+    define: list[list[list[Any]]],
+    close: list[list[list[Any]]],
+    places: list[list[Any]],
     counts: int,
 ) -> dict[str, Any]:
     return {
@@ -71,6 +72,6 @@ def _document(
         "base": base,
         "define": define,
         "close": close,
-        "mumford": mumford,
+        "places": places,
         "counts": counts,
     }
