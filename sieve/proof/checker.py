@@ -19,7 +19,7 @@ import re
 import struct
 import sys
 import unicodedata
-from collections.abc import Callable, Iterable, Iterator, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from fractions import Fraction
 from math import gcd, isqrt, lcm, prod
 from typing import Any, BinaryIO
@@ -199,20 +199,9 @@ def is_prime(n: int) -> bool:
     bases = (2, 3, 5, 7, 11, 13, 17, 19, 23, 29, 31, 37)
     if n < 41:
         return n in bases
-    odd, twos = n - 1, 0
-    while odd % 2 == 0:
-        odd, twos = odd // 2, twos + 1
-    for base in bases:
-        power = pow(base, odd, n)
-        if power in (1, n - 1):
-            continue
-        for _ in range(twos - 1):
-            power = power * power % n
-            if power == n - 1:
-                break
-        else:
-            return False
-    return True
+    twos = valuation(n - 1, 2)
+    return all(pow(base, n - 1 >> twos, n) == 1
+               or any(pow(base, n - 1 >> k, n) == n - 1 for k in range(1, twos + 1)) for base in bases)
 
 
 def prime(value: Any, bound: int) -> int:
@@ -1107,8 +1096,8 @@ class Padic:
               "more terms or digits than this checker handles")
         self.series = Series(self.prime**self.digits, length, self.curve.work)
         self.reduced = boolean(reduction)
-        local = proof.locals.get(self.prime)
-        need(not self.reduced or (local is not None and local.points > 0), "no-local", f"no group at {p}")
+        if self.reduced:
+            proof.group_at(self.prime)
         self.reduction = Reduction(self.curve, self.prime)
         self.discs: dict[int, Disc] = {}
         self.forms: dict[int, list[Row]] = {}
@@ -1530,10 +1519,15 @@ class Candidate:
         self.points: list[Point] = []
 
 
+STAGES = {"header": 0, "group": 1, "premise": 2, "candidate": 3, "local": 4, "branch": 4, "padic": 4,
+          "zeros": 4, "torsion": 4, "saturated": 4, "fate": 5, "classes": 6, "end": 7}
+"""The order of the kinds of records; those of stages 2 to 5 may be repeated."""
+FURTHER = {"rank": [], "index": ["ell"], "complete": ["prime"], "bound": ["prime", "candidate", "at_most"]}
+"""The further keys of premises, by the first word of the id."""
+
+
 class Proof:
     """Everything that was read and checked, in the order of the log."""
-
-    ORDER = ("header", "group", "premise", "candidate", "evidence", "fate", "classes", "end")
 
     def __init__(self) -> None:
         self.work = Work()
@@ -1561,34 +1555,22 @@ class Proof:
 
     def read(self, record: dict[str, Any]) -> None:
         """Check one record; the kinds come in a fixed order."""
-        handlers: dict[str, tuple[str, Callable[[dict[str, Any]], None]]] = {
-            "header": ("header", self.header), "group": ("group", self.group),
-            "premise": ("premise", self.premise), "candidate": ("candidate", self.candidate),
-            "local": ("evidence", self.local), "branch": ("evidence", self.branch),
-            "padic": ("evidence", self.padic), "zeros": ("evidence", self.zero_counts),
-            "torsion": ("evidence", self.torsion_bound),
-            "saturated": ("evidence", self.saturate), "fate": ("fate", self.fate),
-            "classes": ("classes", self.surviving), "end": ("end", self.end),
-        }
-        if record["kind"] not in handlers:
+        kind = record["kind"]
+        if kind not in STAGES:
             raise Malformed("kind", "an unknown kind of record")
-        name, handler = handlers[record["kind"]]
-        stage = self.ORDER.index(name)
-        repeats = name in ("premise", "candidate", "evidence", "fate")
-        late = stage < self.stage or (stage == self.stage and not repeats)
+        stage = STAGES[kind]
+        late = stage < self.stage or (stage == self.stage and stage not in (2, 3, 4, 5))
         need(not late and min(stage, 2) <= self.stage + 1, "order", "a record out of order")
-        if stage > 2 >= self.stage:
-            need("rank" in self.premises, "no-rank", "no premise on the rank")
-        if stage > 5:
-            need(len(self.fates) == len(self.candidates), "fate-missing", "a candidate has no fate")
+        need(not stage > 2 >= self.stage or "rank" in self.premises, "no-rank", "no premise on the rank")
+        need(stage <= 5 or len(self.fates) == len(self.candidates), "fate-missing", "a candidate has no fate")
         self.stage = stage
-        handler(record)
+        getattr(self, f"read_{kind}")(record)
         self.records += 1
         limit(self.records <= MAX_RECORDS, f"more than {MAX_RECORDS} records")
 
     # -- statement
 
-    def header(self, record: dict[str, Any]) -> None:
+    def read_header(self, record: dict[str, Any]) -> None:
         """The format and the curve."""
         limit(record.get("format") == FORMAT, f"not the format {FORMAT}")
         _, program, case, equation, weight, genus, scale, variables = fields(
@@ -1606,7 +1588,7 @@ class Proof:
         need(good and len(set(self.variables)) == 3, "variables", "no names of three variables")
         self.curve = Curve([integers(row) for row in items(equation)], weight, genus, self.work)
 
-    def group(self, record: dict[str, Any]) -> None:
+    def read_group(self, record: dict[str, Any]) -> None:
         """The base divisor and the generators; whether rational points are asked for, or integral ones."""
         rank, base, free, torsion, integral = fields(record, "rank", "base", "free", "torsion", "integral")
         self.rank = integer(rank, 0)
@@ -1675,40 +1657,32 @@ class Proof:
         need(not self.integral or point[2] == 1, "not-integral", "a point that is not integral")
         return point
 
-    def premise(self, record: dict[str, Any]) -> None:
+    def read_premise(self, record: dict[str, Any]) -> None:
         """A premise; what it says follows from its id, the text is for the reader."""
         name = text(record.get("id"))
         word = name.split(" ")[0]
-        if word == "rank":
-            fields(record, "id", "statement", "source")
-            expected = "rank"
-        elif word == "index":
-            ell = prime(fields(record, "id", "statement", "source", "ell")[3], MAX_ELL)
-            expected = f"index {ell}"
-        elif word == "complete":
-            p = prime(fields(record, "id", "statement", "source", "prime")[3], MAX_PRIME)
-            expected = f"complete {p}"
-        elif word == "bound":
-            extra = fields(record, "id", "statement", "source", "prime", "candidate", "at_most")[3:]
-            expected = f"bound {prime(extra[0], MAX_PRIME)} {text(extra[1])}"
-            integer(extra[2], 0)
-        else:
+        if word not in FURTHER:
             raise Malformed("premise", "an unknown kind of premise")
-        need(name == expected, "premise-id", f"the id is not {expected}")
+        _, statement, source, *values = fields(record, "id", "statement", "source", *FURTHER[word])
+        if values:
+            values[0] = prime(values[0], MAX_ELL if word == "index" else MAX_PRIME)
+        if word == "bound":
+            text(values[1])
+            integer(values.pop(), 0)
+        need(name == " ".join([word, *map(str, values)]), "premise-id", "the id is not that of its values")
         need(name not in self.premises, "duplicate", "a premise occurs twice")
-        text(record["statement"])
-        text(record["source"])
+        text(statement)
+        text(source)
         self.premises[name] = record
 
-    def candidate(self, record: dict[str, Any]) -> None:
+    def read_candidate(self, record: dict[str, Any]) -> None:
         """A candidate of the statement."""
         p, name, form = prime(record.get("prime"), MAX_PRIME), text(record.get("id")), record.get("form")
         new = Candidate(p, name, form if type(form) is str else "")
         need((p, name) not in self.candidates, "duplicate", "a candidate occurs twice")
         need(self.curve.smooth(p), "not-smooth", f"the model is not smooth modulo {p}")
         if form == "point":
-            names = ("point", "digits", "multiplicity")
-            point, digits, k = fields(record, "prime", "id", "form", *names)[3:]
+            point, digits, k = fields(record, "prime", "id", "form", "point", "digits", "multiplicity")[3:]
             new.digits, new.multiplicity = integer(digits, 1), integer(k, 1)
             limit(new.digits * p.bit_length() <= MAX_BITS, "more digits than this checker handles")
             new.point = self.residue(point, p, new.digits)
@@ -1716,8 +1690,7 @@ class Proof:
             point, k = fields(record, "prime", "id", "form", "point", "multiplicity")[3:]
             new.point, new.multiplicity = self.residue(point, p, 1), integer(k, 1)
         elif form == "coefficients":
-            names = ("coefficients", "torsion", "disc")
-            values, torsion, disc = fields(record, "prime", "id", "form", *names)[3:]
+            values, torsion, disc = fields(record, "prime", "id", "form", form, "torsion", "disc")[3:]
             for entry in items(values, self.rank):
                 c, digits = integers(entry, 0, None, 2)
                 limit(digits * p.bit_length() <= MAX_BITS, "more digits than this checker handles")
@@ -1744,17 +1717,17 @@ class Proof:
 
     # -- evidence
 
-    def local(self, record: dict[str, Any]) -> None:
+    def read_local(self, record: dict[str, Any]) -> None:
         """A group J(F_v)."""
         new = Local(self, record)
         self.locals[new.prime] = new
 
-    def padic(self, record: dict[str, Any]) -> None:
+    def read_padic(self, record: dict[str, Any]) -> None:
         """Logarithms at p."""
         new = Padic(self, record)
         self.padics[new.prime] = new
 
-    def zero_counts(self, record: dict[str, Any]) -> None:
+    def read_zeros(self, record: dict[str, Any]) -> None:
         """A list is complete at p, given the rank."""
         new = Zeros(self, record)
         self.zeros[new.prime] = new
@@ -1777,7 +1750,14 @@ class Proof:
                 out.append(1)
         return out
 
-    def branch(self, record: dict[str, Any]) -> None:
+    def group_at(self, v: Any) -> Local:
+        """The group J(F_v) of a record with points."""
+        local = self.locals.get(integer(v))
+        if local is None or local.points == 0:
+            raise Rejected("no-local", f"no group at {v}")
+        return local
+
+    def read_branch(self, record: dict[str, Any]) -> None:
         """dim J(Q)[2] from irreducible factors of 4 f + h^2 (Mumford 1984, IIIa)."""
         factors, primes = fields(record, "factors", "primes")
         need(self.two_torsion is None, "duplicate", "a second record on the branch points")
@@ -1810,7 +1790,7 @@ class Proof:
         need(odd or self.curve.genus % 2 == 0, "branch", "odd genus and no factor of odd degree")
         self.two_torsion = len(degrees) - (2 if odd else 1)
 
-    def torsion_bound(self, record: dict[str, Any]) -> None:
+    def read_torsion(self, record: dict[str, Any]) -> None:
         """dim J(Q)[l] <= d: torsion prime to v injects into J(F_v), for v = l too if odd (Katz 1981)."""
         ell, dimension, by = fields(record, "ell", "dimension", "by")
         ell, dimension = prime(ell, MAX_ELL), integer(dimension, 0)
@@ -1819,14 +1799,12 @@ class Proof:
             need(ell == 2 and self.two_torsion is not None, "no-branch", "no record on the branch points")
             found = self.two_torsion
         else:
-            local = self.locals.get(integer(by))
-            need(local is not None and local.points > 0, "no-local", f"no group at {by}")
+            found = sum(d % ell == 0 for d in self.group_at(by).moduli)
             need(by != 2 or ell != 2, "torsion-two", "2-torsion may vanish modulo 2")
-            found = sum(d % ell == 0 for d in local.moduli) if local else None
         need(found == dimension, "dimension", f"the dimension is {found}, not {dimension}")
         self.bounds[ell] = dimension
 
-    def saturate(self, record: dict[str, Any]) -> None:
+    def read_saturated(self, record: dict[str, Any]) -> None:
         """Z_l (x) L -> Z_l (x) J(Q) is onto: L/lL injects and dim J(Q)/l <= r + dim J(Q)[l] <= dim L/lL."""
         ell, primes = fields(record, "ell", "primes")
         ell = prime(ell, MAX_ELL)
@@ -1839,9 +1817,7 @@ class Proof:
         need(len(set(integers(primes))) == len(primes), "duplicate", "a prime occurs twice")
         self.work.spend(100 * len(primes) * len(rows) ** 2)
         for v in primes:
-            local = self.locals.get(v)
-            if local is None or local.points == 0:
-                raise Rejected("no-local", f"no group at {v}")
+            local = self.group_at(v)
             images = [local.log(d) for d in self.generators]
             for image, order in zip(images[self.rank :], self.torsion):
                 need(not any(order * c % d for c, d in zip(image, local.moduli)), "torsion-order",
@@ -1955,15 +1931,14 @@ class Proof:
 
     def list_condition(self, name: str, primes: Row) -> Condition:
         """A complete list at another Chabauty prime."""
-        match = re.fullmatch("p = ([1-9][0-9]{0,6})", name)
-        if match is None:
+        if not re.fullmatch("p = [1-9][0-9]{0,6}", name):
             raise Malformed("use", "no condition of this name")
-        q = int(match.group(1))
+        q = int(name[4:])
         need(f"complete {q}" in self.premises or q in self.zeros or self.covered(q), "no-complete",
              f"nothing shows that the list at {q} is complete")
         return self.candidate_condition(q, [c for c in self.candidates.values() if c.prime == q], primes)
 
-    def fate(self, record: dict[str, Any]) -> None:
+    def read_fate(self, record: dict[str, Any]) -> None:
         """The verdict on the next candidate."""
         p, name, verdict = integer(record.get("prime")), text(record.get("id")), record.get("verdict")
         waiting = self.names[len(self.fates) : len(self.fates) + 1]
@@ -2018,7 +1993,7 @@ class Proof:
             need(same and not any(any(condition.value(row)) for row in state.basis), "not-determined",
                  "the log does not determine the coefficients of the point to the digits of the candidate")
 
-    def surviving(self, record: dict[str, Any]) -> None:
+    def read_classes(self, record: dict[str, Any]) -> None:
         """The classes of L that satisfy some conditions."""
         uses, count, index, vectors = fields(record, "uses", "count", "index", "vectors")
         state = self.whole()
@@ -2034,7 +2009,7 @@ class Proof:
             seen.add(vector)
         self.count = count
 
-    def end(self, record: dict[str, Any]) -> None:
+    def read_end(self, record: dict[str, Any]) -> None:
         """What the log claims must be what was checked."""
         records, eliminated, conclusion, points = fields(
             record, "records", "eliminated", "conclusion", "points")
@@ -2184,7 +2159,7 @@ def check(stream: BinaryIO) -> Proof:
             record = decode(line)
             kind = record["kind"]
             proof.read(record)
-        if proof.stage != len(Proof.ORDER) - 1:
+        if proof.stage != STAGES["end"]:
             raise Malformed("no-end", "the log has no end")
     except Fault as fault:
         fault.line, fault.record = number, kind if re.fullmatch("[a-z]{1,20}", kind) else ""
@@ -2192,6 +2167,12 @@ def check(stream: BinaryIO) -> Proof:
     except Declined as reason:
         raise Declined(f"line {number}: {reason}") from None
     return proof
+
+
+def complain(place: str, found: str, expected: str) -> int:
+    """One line on standard error; returns the exit code."""
+    sys.stderr.write(f"sieve: error: {place}: {found}, expected {expected}\n")
+    return 2
 
 
 def run(path: str, as_json: bool) -> int:
@@ -2209,15 +2190,12 @@ def run(path: str, as_json: bool) -> int:
             print(f"{verdict}: line {fault.line}, {record}{fault.code}: {fault.reason}")
         return 3
     except Declined as reason:
-        sys.stderr.write(f"sieve: error: {path}: {reason}: declined, expected a log within the limits\n")
-        return 2
+        return complain(path, f"{reason}: declined", "a log within the limits")
     except OSError as error:
-        sys.stderr.write(f"sieve: error: {path}: {error.strerror}, expected a readable proof log\n")
-        return 2
+        return complain(path, str(error.strerror), "a readable proof log")
     except (ArithmeticError, LookupError, MemoryError, TypeError, ValueError) as error:
         # never an acceptance: something that this program should have refused by name
-        sys.stderr.write(f"sieve: error: {path}: {type(error).__name__}, expected a valid log\n")
-        return 2
+        return complain(path, type(error).__name__, "a valid log")
     result = report(proof)
     if as_json:
         print(json.dumps(result))
@@ -2235,8 +2213,7 @@ def main(arguments: list[str]) -> int:
     """The command line."""
     paths = [a for a in arguments if a != "--json"]
     if len(paths) != 1:
-        sys.stderr.write("sieve: error: command line: expected checker.py PROOF [--json]\n")
-        return 2
+        return complain("command line", f"{len(paths)} files", "checker.py PROOF [--json]")
     for output in (sys.stdout, sys.stderr):
         output.reconfigure(encoding="utf-8", errors="backslashreplace")  # type: ignore[union-attr]
     try:
@@ -2245,8 +2222,7 @@ def main(arguments: list[str]) -> int:
     except OSError as error:
         # nobody saw the verdict, so it is none; what is left in the buffer must not be written at exit
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
-        sys.stderr.write(f"sieve: error: standard output: {error.strerror}, expected somebody who reads it\n")
-        return 2
+        return complain("standard output", str(error.strerror), "somebody who reads it")
     return code
 
 
