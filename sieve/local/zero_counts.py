@@ -259,10 +259,9 @@ def zero_proof(
             if working >= limit:
                 raise
         else:
-            few = {c.id: c.at_most or c.multiplicity for c in candidates}
-            if working >= limit or (proof.complete and all(
-                b.at_most is not None and b.at_most <= few[b.id] for b in proof.bounds
-            )):
+            most = {c.id: c.multiplicity for c in candidates}
+            few = all(b.at_most is not None and b.at_most <= most[b.id] for b in proof.bounds)
+            if working >= limit or (proof.complete and few):
                 return proof
         working = min(limit, 2 * working)
 
