@@ -1377,7 +1377,9 @@ class Zeros:
         """
         p, degree, padic = self.prime, self.proof.degree, self.padic
         constant = padic.combine([(degree, padic.centre_log(i)), (-1, self.origin)])
-        length, shift, e = padic.series.length, constant.shift, 0
+        length, shift, numerators, e = padic.series.length, constant.shift, constant.numerators, 0
+        while shift > 0 and not any(c % p for c in numerators):
+            shift, numerators = shift - 1, [c // p for c in numerators]
         while p ** (e + 1) <= length + 1:
             e += 1
         known = min(constant.precision, padic.digits, length + 1 - e)
@@ -1387,7 +1389,7 @@ class Zeros:
         forms, out, modulus = padic.differentials(i), [], p ** (known + shift)
         self.proof.work.spend(2 * length * self.proof.curve.genus * len(self.forms))
         for vector in self.forms:
-            row = [sum(a * b for a, b in zip(vector, constant.numerators))]
+            row = [sum(a * b for a, b in zip(vector, numerators))]
             for k in range(1, length + 1):
                 v = valuation(k, p)
                 value = sum(a * form[k - 1] for a, form in zip(vector, forms)) * degree
