@@ -7,6 +7,7 @@ from collections.abc import Callable, Collection, Sequence
 from dataclasses import dataclass, field, replace
 
 from sieve.commands.common import StoredInvestigation
+from sieve.curves.protocol import Curve
 from sieve.engine.explain import explain
 from sieve.engine.investigation import Investigation
 from sieve.engine.prime_hunt import Hunt, Prospect, ranked
@@ -21,10 +22,23 @@ REACH = 4000
 LONG_REACH = 20_000
 """Primes below this are considered when a time is given."""
 
+PLANE_REACH = 2000
+"""The same for plane quartics, where the groups themselves are computed, without a first look at orders."""
+
 BLOCK = 16
 """So many groups are computed before their conditions are used (the same for any number of processes)."""
 
 Key = tuple[int, str]
+
+
+def reach_of(curve: Curve, bound: int | None, seconds: float | None) -> int:
+    """How far primes are sought for open candidates: 0 where larger groups take too long (genus 3 and more,
+    but for plane quartics)."""
+    if curve.weight == 3:
+        return bound or (REACH if seconds is None else LONG_REACH)
+    if curve.weight == 1 and curve.degree == 4:
+        return bound or (PLANE_REACH if seconds is None else REACH)
+    return 0
 
 
 @dataclass
@@ -59,7 +73,7 @@ def make_hunts(investigation: Investigation, lists: Sequence[CandidateList], dec
 def pursue(lists: Sequence[CandidateList], decisions: dict[Key, Decision], ells: Sequence[int], start: int,
            bound: int, stored: StoredInvestigation, primes: Collection[int] | None = None,
            deadline: float | None = None, say: Callable[[str], None] = lambda text: None) -> Pursuit:
-    """Look for primes from `start` below `bound` that decide open candidates (genus 2).
+    """Look for primes from `start` below `bound` that decide open candidates.
 
     Arguments: the decisions so far by (number of the list, id), not changed; `stored`, through which local
     data come; `primes`, those that the decisions rest on (None: all below `start`).
@@ -74,7 +88,10 @@ def pursue(lists: Sequence[CandidateList], decisions: dict[Key, Decision], ells:
         high = min(high, bound)
         fresh = [v for v in primes_below(high) if v >= low and v not in investigation.records]
         orders = stored.quick_orders(fresh)
-        best = ranked([hunt for _, hunt in hunts], {v: (q.points, q.orders) for v, q in orders.items()})
+        if orders:
+            best = ranked([hunt for _, hunt in hunts], {v: (q.points, q.orders) for v, q in orders.items()})
+        else:
+            best = [Prospect(v, 0.0, 0) for v in fresh]
         say(f"{len(best)} of {len(fresh)} primes from {low} to {high} may help {_open_count(hunts)} "
             "open candidates")
         _use(result, investigation, hunts, best, ells, stored.gather, deadline)

@@ -11,8 +11,9 @@ from pathlib import Path
 from sieve.commands.common import Progress, StoredInvestigation, problem_of
 from sieve.commands.premises import premises_of
 from sieve.commands.prooflog import proof_of, restrict_to_log
-from sieve.commands.pursue import LONG_REACH, REACH, pursue
+from sieve.commands.pursue import pursue, reach_of
 from sieve.curves.divisors import Point
+from sieve.curves.protocol import Curve
 from sieve.curves.search import by_height, search_points
 from sieve.engine.investigation import FIRST_BOUND, Investigation
 from sieve.engine.plan import Step
@@ -55,9 +56,9 @@ SEARCH_HEIGHT = 200
 """Rational points up to this height of x are looked for, to recognise candidates not listed in the case."""
 
 
-def default_stages(genus: int) -> list[int]:
+def default_stages(curve: Curve) -> list[int]:
     """Bounds for the auxiliary primes, tried one after the other until every candidate is decided."""
-    return [FIRST_BOUND, 400, 1000] if genus == 2 else [FIRST_BOUND, 300]
+    return [FIRST_BOUND, 400, 1000] if reach_of(curve, None, None) else [FIRST_BOUND, 300]
 
 
 def case_name(case_path: str) -> str:
@@ -206,10 +207,10 @@ def execute(
             f"{files[i].path} claims to be complete but misses the rational point "
             f"{resolved.curve.format_point(point)}: it is used as an incomplete list"
         )
-    stages = default_stages(resolved.curve.genus)
+    stages = default_stages(resolved.curve)
     if bound is not None:
         # beyond the usual stages only primes that open candidates can use are looked at
-        last = [] if files and bound > stages[-1] and resolved.curve.genus == 2 else [bound]
+        last = [] if files and bound > stages[-1] and reach_of(resolved.curve, bound, seconds) else [bound]
         stages = [b for b in stages if b < bound] + last
     if primes is not None:
         stages = [max(primes) + 1]
@@ -235,8 +236,8 @@ def execute(
                 break
     if any(d.verdict == "open" for d in run.decisions):
         reach = run.bound
-        if primes is None and not run.stopped and resolved.curve.genus == 2:
-            reach = max(reach, bound or (REACH if seconds is None else LONG_REACH))
+        if primes is None and not run.stopped:
+            reach = max(reach, reach_of(resolved.curve, bound, seconds))
         pursuit = pursue(lists, decisions, run.ells, run.bound, reach, stored, wanted, deadline, say)
         run.decisions = in_order(lists, pursuit.decisions)
         if pursuit.stopped:
