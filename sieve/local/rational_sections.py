@@ -241,8 +241,9 @@ def _from_base(
                 for section in [*define, *close]:
                     _check(group, section.zeros, section.multiple)
                 return Presentation(origin, tuple(leaders[o] for o in base), tuple(define), close)
-            if attempt > 6:
-                short = known.copy()
+        if known.all() and attempt > 4:
+            # too few relations between the points next to the base: let longer ones in
+            short = known.copy()
     return []
 
 
