@@ -4,10 +4,10 @@ Let D_1..D_r be given, r at least the rank of J(Q).  When their logarithms are i
 divisors are independent, so they generate a subgroup of finite index, the rank is r, and a differential
 annihilates J(Q) exactly when it annihilates their logarithms: a space of dimension g - r.
 
-Symmetric models.  If f and h are even, s(x, y) = (-x, y) acts on the curve and J(Q) (x) Q is the sum of its
-two eigenspaces; x^j dx/(2y+h) has the sign (-1)^(j+1).  For r = 1 one of the eigenspaces is 0, and the
-logarithm of D_1 tells which: the differentials of that sign annihilate J(Q) exactly, not just to the known
-digits.
+Symmetric models.  If F is even in some of X, Y, Z, the changes of their signs act on the curve, J(Q) (x) Q is
+the sum of its eigenspaces, and every x^i y^k dx / F_y belongs to one character.  A generator whose logarithm
+has a part of a character shows that this eigenspace is not 0.  When r generators show r of them, the others
+are 0, and the differentials of the other characters annihilate J(Q) exactly, not just to the known digits.
 """
 
 from __future__ import annotations
@@ -15,7 +15,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
-from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.discs import differentials
 from sieve.curves.protocol import Curve
 from sieve.errors import Inconsistent, PrecisionLost
 from sieve.exact.padic_linear import PadicVector
@@ -83,9 +83,22 @@ def annihilators(logs: Sequence[PadicVector], prime: int, genus: int, digits: in
     return out
 
 
-def symmetric(curve: Curve) -> bool:
-    """Whether the model is y^2 + h y = f with even f and h, so that (x, y) -> (-x, y) maps it to itself."""
-    return isinstance(curve, HyperellipticCurve) and not any(curve.f[1::2]) and not any(curve.h[1::2])
+def characters(curve: Curve) -> list[tuple[int, ...]]:
+    """For every regular differential how the sign changes of coordinates in which F is even act on it.
+
+    Entries 0 and 1 for each such coordinate, up to a common factor.
+
+    >>> from sieve.curves.hyperelliptic import HyperellipticCurve
+    >>> characters(HyperellipticCurve([9, 0, -2, 0, 1, 0, 1]))[:2]
+    [(0, 0, 1), (1, 0, 0)]
+    """
+    weight, degree = curve.weight, curve.degree
+    terms = [
+        (i, k, degree - i - weight * k) for k, row in enumerate(curve.rows) for i, c in enumerate(row) if c
+    ]
+    even = [n for n in range(3) if not any(term[n] % 2 for term in terms)]
+    forms = [(i, k, degree - weight - 2 - i - weight * k) for i, k in differentials(weight, degree)]
+    return [tuple(form[n] % 2 for n in even) for form in forms]
 
 
 def exact_annihilators(
@@ -93,22 +106,21 @@ def exact_annihilators(
 ) -> list[Annihilator]:
     """The same differentials, with those that are exactly known marked as such.
 
-    Without generators every differential annihilates exactly.  Raises `Inconsistent` when the logarithm of
-    the one generator has components of both signs: the rank is at least 2 then.
+    Without generators every differential annihilates exactly.  Raises `Inconsistent` when the logarithms of
+    the generators have parts of more characters than there are generators: the rank is larger then.
     """
     if not logs:
         return [replace(a, exact=True) for a in found]
-    if len(logs) > 1 or not symmetric(curve):
-        return list(found)
-    signs = {j % 2 for j, c in enumerate(logs[0].numerators) if c}
-    if len(signs) > 1:
+    labels = characters(curve)
+    present = {labels[j] for log in logs for j, c in enumerate(log.numerators) if c}
+    if len(present) > len(logs):
         raise Inconsistent(
-            "the logarithm of the generator has components in both factors of the Jacobian: the rank is "
-            "at least 2", "generator no. 1",
+            f"the logarithms of the generators have parts in {len(present)} factors of the Jacobian: the rank "
+            f"is at least {len(present)}", f"{len(logs)} generators",
         )
     out = []
     for a in found:
-        if {a.free % 2} | signs == {0, 1}:
+        if len(present) == len(logs) and labels[a.free] not in present:
             unit = tuple(int(j == a.free) for j in range(curve.genus))
             a = replace(a, coefficients=unit, exact=True)
         out.append(a)
