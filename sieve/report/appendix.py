@@ -11,6 +11,7 @@ from sieve.engine.relation import relation_from_condition
 from sieve.proof.reader import LogView
 from sieve.report import mathematics as m
 from sieve.report.blocks import Block, Code, Display, Heading, Items, Paragraph, Table, Theorem, plain
+from sieve.report.zeros import completeness, zero_counts
 
 Record = dict[str, Any]
 
@@ -248,10 +249,9 @@ def _candidates(view: LogView, p: int) -> list[Block]:
     for c in view.of("candidate"):
         if c["prime"] == p:
             rows.append((plain(c["id"]), _located(view, c), _fate(view, fates[c["id"]], c)))
-    complete = any(r["id"] == f"complete {p}" for r in view.of("premise"))
     digits = max([r["digits"] for r in view.of("padic") if r["prime"] == p] or [0])
     text = f"The list at ${p}$ has {_count(len(rows), 'candidate')}"
-    text += " and is complete by assumption." if complete else " and need not be complete."
+    text += completeness(view, p)
     if digits:
         text += (
             f" Abelian integrals at ${p}$ were computed from sections listed in the log, modulo "
@@ -269,7 +269,7 @@ def _candidates(view: LogView, p: int) -> list[Block]:
     if rows:
         header = ("", "candidate", "fate")
         out.append(Table(f"Candidates at {p} and their fates", header, tuple(rows), "lpp", (0, 0.52, 0.33)))
-    return out
+    return out + zero_counts(view, p)
 
 
 def _located(view: LogView, c: Record) -> str:
