@@ -115,8 +115,8 @@ def exact_annihilators(
     present = {labels[j] for log in logs for j, c in enumerate(log.numerators) if c}
     if len(present) > len(logs):
         raise Inconsistent(
-            f"the logarithms of the generators have parts in {len(present)} factors of the Jacobian: the rank "
-            f"is at least {len(present)}", f"{len(logs)} generators",
+            f"the logarithms of the generators have parts in {len(present)} factors of the Jacobian: the "
+            f"rank is at least {len(present)}", f"{len(logs)} generators",
         )
     out = []
     for a in found:
