@@ -111,7 +111,7 @@ class ReducedPlane:
     @property
     def fast_from(self) -> int:
         """From this v on, lines through different points give the group: enough of them split."""
-        return {4: 40, 5: 160}.get(self.degree, 900)
+        return {4: 48, 5: 160}.get(self.degree, 900)
 
     @property
     def base_size(self) -> int:

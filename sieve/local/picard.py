@@ -38,7 +38,8 @@ class PicardGroup:
     `invariants`: invariant factors > 1, each dividing the next.  `point_logs`: int64, shape (N,
     len(invariants)), the class of P - P0 for every point in the curve's numbering.  `unit_log`: the class
     of U (the fibre or section class). `reason` says how completeness was proved; `rational_generation`,
-    whether rational points alone are known to generate.
+    whether rational points alone are known to generate; `distinct_points`, whether sections through distinct
+    points sufficed.
     """
 
     curve: ReducedCurve
@@ -50,6 +51,7 @@ class PicardGroup:
     higher_logs: dict[HigherPlace, tuple[int, ...]] = field(default_factory=dict)
     sections_used: int = 0
     rational_generation: bool = True
+    distinct_points: bool = False
 
     @property
     def prime(self) -> int:
@@ -310,6 +312,7 @@ def _finish(curve: ReducedCurve, state: _Definitions, group: FiniteQuotient, sec
         unit,
         "rational points generate (N > (2g-2) sqrt v); index below twice the Weil bound",
         sections_used=sections,
+        distinct_points=True,
     )
 
 

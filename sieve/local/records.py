@@ -74,9 +74,7 @@ def expressible(group: PicardGroup, base: Divisor, divisors: Sequence[Divisor]) 
     closed = [place for place in places if isinstance(place, MumfordPlace | ClosedPlace)]
     if not all(section_through(group.curve, place) for place in closed):
         return False
-    if group.prime >= group.curve.fast_from and not group.higher_logs:
-        return group.rational_generation
-    return present(group) is not None
+    return group.distinct_points or present(group) is not None
 
 
 def local_record(
