@@ -192,6 +192,11 @@ class ReducedHyperelliptic:
         return 30 if self.genus <= 3 else 60
 
     @property
+    def section_limit(self) -> int:
+        """How many sections are tried where exact divisors of sections give the group."""
+        return 60_000
+
+    @property
     def base_size(self) -> int:
         """How many orbits are the base of relations."""
         return max(self.genus + 4, int(1.1 * self.orbit_count**0.5) + 2 + 4 * (self.genus - 2))

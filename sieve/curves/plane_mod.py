@@ -114,6 +114,11 @@ class ReducedPlane:
         return {4: 48, 5: 160}.get(self.degree, 900)
 
     @property
+    def section_limit(self) -> int:
+        """How many forms are tried where exact divisors give the group: in high genus, hardly any split."""
+        return 20_000 if self.degree == 4 else 4000 if self.prime <= 7 else 0
+
+    @property
     def base_size(self) -> int:
         """How many points are the base of relations."""
         return int(2.2 * self.count**0.5) + 2

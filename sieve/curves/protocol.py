@@ -74,6 +74,10 @@ class ReducedCurve(Protocol):
         """From this v on, sections through distinct points give the group."""
 
     @property
+    def section_limit(self) -> int:
+        """How many sections are tried where exact divisors of sections give the group."""
+
+    @property
     def base_size(self) -> int:
         """How many orbits are the base of relations."""
 

@@ -27,16 +27,16 @@ from sieve.local.order_bounds import exact_order, order_lower_bound
 
 IntArray = NDArray[np.int64]
 
-SECTION_LIMIT = 60_000
-"""Sections tried at a small prime before it is given up."""
+SMALL_INVARIANT = 2**55
+"""Classes modulo numbers up to this are held in int64, modulo larger ones as Python integers."""
 
 
 @dataclass
 class PicardGroup:
     """J(F_v) with the classes of all rational points.
 
-    `invariants`: invariant factors > 1, each dividing the next.  `point_logs`: int64, shape (N,
-    len(invariants)), the class of P - P0 for every point in the curve's numbering.  `unit_log`: the class
+    `invariants`: invariant factors > 1, each dividing the next.  `point_logs`: int64 (large groups: object),
+    shape (N, len(invariants)), the class of P - P0 for every point in the curve's numbering.  `unit_log`: the class
     of U (the fibre or section class). `reason` says how completeness was proved; `rational_generation`,
     whether rational points alone are known to generate; `distinct_points`, whether sections through distinct
     points sufficed.
@@ -291,13 +291,16 @@ def _close(
 
 def _finish(curve: ReducedCurve, state: _Definitions, group: FiniteQuotient, sections: int) -> PicardGroup:
     invariants = group.invariants
-    moduli = np.array(invariants, dtype=np.int64)
-    logs = np.zeros((curve.orbit_count, len(invariants)), dtype=np.int64)
+    # sums of as many classes as a section has zeros must fit
+    large = bool(invariants) and invariants[-1] > SMALL_INVARIANT
+    kind = object if large else np.int64
+    moduli = np.array(invariants, dtype=kind)
+    logs = np.zeros((curve.orbit_count, len(invariants)), dtype=kind)
     # columns: U, then the base without its first point, which is P0
     unit = group.coordinates[0]
     for k, orbit in enumerate(state.base.tolist()[1:], start=1):
         logs[orbit] = group.coordinates[k]
-    unit_row = np.array(unit, dtype=np.int64)
+    unit_row = np.array(unit, dtype=kind)
     for target, own_sign, units, others, signs in state.rounds:
         value = units[:, None] * unit_row
         for k in range(others.shape[1]):
@@ -346,7 +349,7 @@ def _from_exact_sections(curve: ReducedCurve, generated: bool) -> PicardGroup:
         counts += [curve.extension_count(e) for e in range(2, g + 1)]
         lower, exact = exact_order(curve, counts), True
     places = curve.places_of_degree(higher_degree) if higher_degree > 1 else []
-    closed = close_lattice(curve, places, lower, exact, SECTION_LIMIT)
+    closed = close_lattice(curve, places, lower, exact, curve.section_limit)
     if closed is None:
         raise Uncertified(v, "sections of low degree do not close the relation lattice")
     moduli = np.array(closed.invariants, dtype=np.int64)

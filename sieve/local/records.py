@@ -96,17 +96,21 @@ def local_record(
         group = picard_group(reduced)
         shown = expressible(group, base, divisors)
         images = tuple(divisor_log(group, divisor) for divisor in divisors)
-        origin = np.array(divisor_log(group, base), dtype=np.int64)
+        origin = np.array(divisor_log(group, base), dtype=group.point_logs.dtype)
     except (BadReduction, Uncertified) as error:
         return _skip(v, error.reason)
-    moduli = np.array(group.invariants, dtype=np.int64)
+    kind = group.point_logs.dtype
+    moduli = np.array(group.invariants, dtype=kind)
     # affine points come first
     logs = group.point_logs[: reduced.affine_count] if integral else group.point_logs
-    allowed = (
-        np.unique((base.degree * logs - origin) % moduli, axis=0)
-        if len(moduli)
-        else np.zeros((min(1, len(logs)), 0), dtype=np.int64)
-    )
+    shifted = (base.degree * logs - origin) % moduli
+    if not len(moduli):
+        allowed = np.zeros((min(1, len(logs)), 0), dtype=np.int64)
+    elif kind == np.int64:
+        allowed = np.unique(shifted, axis=0)
+    else:
+        rows = sorted({tuple(int(c) for c in row) for row in shifted})
+        allowed = np.array(rows, dtype=object).reshape(len(rows), len(moduli))
     return LocalRecord(
         v, reduced.count, group.order, group.invariants, images, allowed, group.reason, expressible=shown
     )
