@@ -156,14 +156,15 @@ def recognise_algebraic(curve: Curve, prime: int,
     """The algebraic point of degree 2 to 4 that a p-adic point agrees with to all its digits, if one of small
     height is found.
 
-    Arguments: weighted p-adic coordinates of the model with Z = 1, or X = 1 and p | Z (on a plane curve: with
-    one of them a unit).  Rational points are not looked for.
+    Arguments: weighted p-adic coordinates of the model, integral, Z or X a unit (on a plane curve: one of them
+    a unit).  Rational points are not looked for.
     """
     if curve.weight == 1:
         return _on_plane_curve(curve, prime, coordinates)
     x, y, z = coordinates
     infinite = z.is_zero or z.valuation > 0
-    value = z if infinite else x
+    inverse = (x if infinite else z).inverse()
+    value, y = (z if infinite else x) * inverse, y * inverse**curve.weight
     if value.is_zero or value.valuation < 0:
         return None
     digits = min(value.precision, y.precision)

@@ -85,3 +85,14 @@ def test_small_polynomials():
     cubic = [-2, 0, 0, 1]
     assert small_polynomial(root_of(cubic, 11, 12, 7), 11**12, 3) in ((-2, 0, 0, 1), (2, 0, 0, -1))
     assert small_polynomial(123456789, q, 2) is None
+
+
+def test_the_scale_of_the_coordinates_does_not_matter():
+    """(i, i) on y^2 = x^6 + x^2 + 1 as (3 i : 27 i : 3), weights 1, 3, 1."""
+    curve = HyperellipticCurve([1, 0, 1, 0, 0, 0, 1])
+    i = root_of([1, 0, 1], 5, 12, 2)
+    once = recognise_algebraic(curve, 5, point(5, 12, i, i))
+    assert once is not None and recognise_algebraic(curve, 5, point(5, 12, 3 * i, 27 * i, 3)) == once
+    # (-2/9, 241/243) lies on this curve over Q, no point with x = -2 does
+    rational = HyperellipticCurve([1, 0, 0, 1, -2, 1])
+    assert str(recognise_algebraic(rational, 5, point(5, 12, -2, 723, 9))).find("71") < 0
