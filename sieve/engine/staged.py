@@ -1,25 +1,59 @@
-"""Sieving in stages: modulo M1 | M2 | .., all conditions cut to the stage, a path of moduli planned first.
+"""Sieving in stages, the plan: from L to M L one character at a time, in an order found from counts alone.
 
-In high rank sizes multiply until the common quotients outgrow the point counts.  Between two stages only the
-part of L/M L that is new has to be met by joins, and every condition filters it at once.  The expected number
-of survivors modulo M is known from the counts alone, M^n times the product of the densities modulo M; the
-path is the one with the smallest largest stage.
+In high rank sizes multiply until the common quotients outgrow the point counts, so the whole of L/M L must be
+met, M growing by small primes.  Between M L and l M L lies a flag of subgroups, each the kernel of one more
+character of order l.  A condition at v sees the next subgroup exactly if the character, modulo those before
+it, is one of J(F_v); so the number of classes expected modulo any of these subgroups is known from the point
+counts: [L : K] times the product of the densities.  Stages are found by a shortest-path search over the M,
+the characters of a stage by a beam search over flags; both minimise the total number of classes met.
+(Lifting modulus by modulus: Bruin and Stoll 2010; what is new is that a stage is split into characters.)
 """
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
-from dataclasses import replace
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, replace
+from functools import lru_cache
 from heapq import heappop, heappush
-from math import exp, expm1, log, log1p
+from itertools import product
+from math import exp, expm1, inf, log, log1p
 
 import numpy as np
+from numpy.typing import NDArray
 
-from sieve.engine.join import join, semijoin
-from sieve.engine.plan import Outcome, Plan, Reporter, Step, sieve_run
-from sieve.engine.relation import Relation, coarsen, merge_equal, trivial
+from sieve.engine.relation import Relation
 
 Exponents = tuple[int, ...]
+FloatArray = NDArray[np.float64]
+IntArray = NDArray[np.int64]
+
+LARGEST_PRIME = 61
+"""The modulus grows by primes up to this one (a set of residues modulo l is one machine word)."""
+
+_MOST_LINES = 20_000
+"""Subspaces with more lines than this count by their given vectors only."""
+
+
+@dataclass(frozen=True)
+class Lift:
+    """One step from a subgroup K to the kernel K' of a character of K of prime order.
+
+    Fields: `prime` l and `level` a: at l, K lies between l^(a+1) L and l^a L; `character`, n residues modulo
+    l: K' = {x in K : sum character_i x_i / l^a = 0 mod l}; `names`, the conditions that see more of K' than
+    of K and are expected to exclude something, the strongest first; `log_index`, log [L : K']; `log_size`,
+    log of the number of classes expected modulo K'; `last`, whether K' = M L for an integer M.
+    """
+
+    prime: int
+    level: int
+    character: tuple[int, ...]
+    names: tuple[str, ...]
+    log_index: float
+    log_size: float
+    last: bool
+
+
+Ladder = tuple[Lift, ...]
 
 
 def expected_log_size(relations: Sequence[Relation], modulus: Mapping[int, int], known: int = 1) -> float:
@@ -35,109 +69,307 @@ def expected_log_size(relations: Sequence[Relation], modulus: Mapping[int, int],
                     for part in relation.parts for e in part.exponents)
         if relation.count >= relation.index:
             continue
-        thrown = -log1p(-relation.count / relation.index) * relation.index
-        load = thrown * exp(-order)
+        load = thrown(relation) * exp(-order)
         if load < 20:
             total += log(max(-expm1(-load), 1e-300))
     return max(total, log(max(known, 1)))
 
 
-def modulus_path(relations: Sequence[Relation], tops: Mapping[int, int], least_index: float,
-                 known: int = 1, limit: int = 20_000) -> list[int]:
-    """Primes l1, l2, .. by which the modulus grows, with the smallest largest expected size on the way.
+def thrown(relation: Relation) -> float:
+    """The number of classes that, thrown at random, leave as many of the quotient empty as the condition."""
+    if relation.count >= relation.index:
+        return inf
+    return -log1p(-relation.count / relation.index) * relation.index
 
-    Arguments: the conditions; for each prime the largest exponent; log of the index n log M to be reached
-    (the whole of `tops` if it is beyond that); how many classes survive everything; so many moduli are looked
-    at.  Best-first search; ties go to the smaller modulus.
+
+def log_density(load: FloatArray) -> FloatArray:
+    """log(1 - exp(-load)), 0 from a load of 25 on, at least log 1e-300."""
+    with np.errstate(all="ignore"):
+        value = np.log(np.maximum(-np.expm1(-load), 1e-300))
+    return np.where(load > 25, 0.0, value)
+
+
+@lru_cache(maxsize=256)
+def _combinations(prime: int, rank: int) -> IntArray:
+    """One vector for each line of F_l^rank, the first entry that is not 0 being 1; shape (lines, rank)."""
+    if (prime**rank - 1) // (prime - 1) > _MOST_LINES:
+        return np.eye(rank, dtype=np.int64)
+    rows = [(0,) * lead + (1, *tail) for lead in range(rank)
+            for tail in product(range(prime), repeat=rank - lead - 1)]
+    return np.array(rows, dtype=np.int64)
+
+
+@dataclass(frozen=True, eq=False)
+class _Characters:
+    """What the conditions see of the characters of order l of the current subgroup.
+
+    F_l^d is the space of those characters that are left in the stage; `columns` says which of the n
+    coordinates they are (the others are 0). `spaces`: for each rank r the conditions (numbers, shape (k,))
+    and the independent vectors that span what they see (shape (k, r, d)).  `lines`, sorted ids of all lines
+    seen; `line`, `owner`, `lead`: for each pair of a line and a condition that sees it the place in `lines`,
+    the condition and the place of a vector that the line can replace in the span.
     """
-    primes = sorted(tops)
-    rank = relations[0].n if relations else 0
-    goal = min(least_index, rank * sum(tops[ell] * log(ell) for ell in primes)) - 1e-9
-    start: Exponents = (0,) * len(primes)
-    heap: list[tuple[float, float, Exponents, tuple[int, ...]]] = [(0.0, 0.0, start, ())]
+
+    prime: int
+    columns: tuple[int, ...]
+    spaces: dict[int, tuple[IntArray, IntArray]]
+    lines: IntArray
+    line: IntArray
+    owner: IntArray
+    lead: IntArray
+
+    @staticmethod
+    def of(prime: int, columns: tuple[int, ...], spaces: dict[int, tuple[IntArray, IntArray]]) -> _Characters:
+        ids, owners, leads = [], [], []
+        inverse = np.array([0, *(pow(a, -1, prime) for a in range(1, prime))], dtype=np.int64)
+        weights = np.array([prime**k for k in reversed(range(len(columns)))], dtype=np.int64)
+        for rank, (who, vectors) in sorted(spaces.items()):
+            choice = _combinations(prime, rank)
+            # entries below l^2 n, far inside int64
+            found = np.einsum("cr,krd->kcd", choice, vectors) % prime
+            first = np.take_along_axis(found, (found != 0).argmax(axis=2)[:, :, None], axis=2)
+            ids.append(((found * inverse[first] % prime) @ weights).reshape(-1))
+            owners.append(np.repeat(who, len(choice)))
+            leads.append(np.tile((choice != 0).argmax(axis=1), len(who)))
+        empty = np.zeros(0, dtype=np.int64)
+        ids_of = np.concatenate(ids) if ids else empty
+        lines, line = np.unique(ids_of, return_inverse=True)
+        return _Characters(prime, columns, spaces, lines, line.reshape(-1),
+                           np.concatenate(owners) if owners else empty,
+                           np.concatenate(leads) if leads else empty)
+
+    def vector(self, place: int) -> tuple[int, ...]:
+        """The vector of a line in F_l^d."""
+        value, out = int(self.lines[place]), []
+        for _ in self.columns:
+            value, digit = divmod(value, self.prime)
+            out.append(digit)
+        return tuple(reversed(out))
+
+    def without(self, place: int) -> _Characters:
+        """What is left modulo the line: one coordinate fewer."""
+        pivot_row = np.array(self.vector(place), dtype=np.int64)
+        pivot = int((pivot_row != 0).argmax())
+        keep = [j for j in range(len(self.columns)) if j != pivot]
+        here = self.line == place
+        drop = dict(zip(self.owner[here].tolist(), self.lead[here].tolist(), strict=True))
+        spaces: dict[int, list[tuple[IntArray, IntArray]]] = {}
+        for rank, (who, vectors) in self.spaces.items():
+            left = ((vectors - vectors[:, :, pivot, None] * pivot_row) % self.prime)[:, :, keep]
+            loses = np.isin(who, np.array(sorted(drop), dtype=np.int64))
+            if not loses.all():
+                spaces.setdefault(rank, []).append((who[~loses], left[~loses]))
+            if loses.any() and rank > 1:
+                fewer = np.stack([np.delete(rows, drop[int(v)], axis=0)
+                                  for v, rows in zip(who[loses], left[loses], strict=True)])
+                spaces.setdefault(rank - 1, []).append((who[loses], fewer))
+        merged = {rank: (np.concatenate([who for who, _ in some]), np.concatenate([rows for _, rows in some]))
+                  for rank, some in sorted(spaces.items())}
+        return _Characters.of(self.prime, tuple(self.columns[j] for j in keep), merged)
+
+    def any_line(self) -> tuple[int, ...]:
+        """A character that no condition sees, for the end of a stage: the first coordinate."""
+        return (1, *(0 for _ in self.columns[1:]))
+
+
+@dataclass(frozen=True, eq=False)
+class _Node:
+    """A subgroup on the way: log sizes, total so far, log orders of the images in each group, the lifts."""
+
+    log_index: float
+    log_size: float
+    log_total: float
+    log_orders: FloatArray
+    lifts: Ladder
+
+
+@dataclass(frozen=True, eq=False)
+class _Flag:
+    """A node within a stage: the characters left for each prime, and the gain still hoped for, credited."""
+
+    node: _Node
+    left: dict[int, _Characters]
+    credit: float
+
+
+class Forecast:
+    """Expected sizes for conditions given by counts, and the search for stages and flags.
+
+    Arguments: conditions with distinct names over the same L = Z^n; the largest exponent for each prime up
+    to `LARGEST_PRIME` (a prime beyond it is refused with ValueError).
+    """
+
+    def __init__(self, relations: Sequence[Relation], tops: Mapping[int, int]) -> None:
+        if any(ell > LARGEST_PRIME for ell in tops):
+            raise ValueError(f"the modulus grows by primes up to {LARGEST_PRIME} only")
+        self.relations = [r for r in relations if 0 < r.count < r.index]
+        self.n = relations[0].n if relations else 0
+        self.primes = sorted(tops)
+        self.tops = dict(tops)
+        self.thrown = np.array([thrown(r) for r in self.relations], dtype=np.float64)
+        self._starts: dict[tuple[int, int], _Characters] = {}
+
+    def start(self) -> _Node:
+        """L itself."""
+        return _Node(0.0, float(log_density(self.thrown).sum()), -inf, np.zeros(len(self.relations)), ())
+
+    def characters(self, ell: int, level: int) -> _Characters:
+        """What the conditions see of the characters of order l of M L, for l^level exactly dividing M."""
+        if (ell, level) not in self._starts:
+            found: dict[int, list[tuple[int, list[tuple[int, ...]]]]] = {}
+            for k, relation in enumerate(self.relations):
+                part = relation.by_prime.get(ell)
+                rows = [] if part is None else [
+                    tuple(x % ell for x in row)
+                    for row, e in zip(part.rows, part.exponents, strict=True) if e > level]
+                if rows:
+                    found.setdefault(len(rows), []).append((k, rows))
+            spaces = {rank: (np.array([k for k, _ in some], dtype=np.int64),
+                             np.array([rows for _, rows in some], dtype=np.int64))
+                      for rank, some in found.items()}
+            self._starts[ell, level] = _Characters.of(ell, tuple(range(self.n)), spaces)
+        return self._starts[ell, level]
+
+    def stage(self, node: _Node, primes: Sequence[int], exponents: Mapping[int, int], width: int = 5,
+              least: float = 0.02) -> _Node:
+        """From M L to M l L (or M l l' L): the flag with the least total that a beam search finds.
+
+        Arguments: the node of M L; distinct primes; the exponents of M; how many flags are kept for each of
+        three ways to compare them; a condition is named where it is expected to exclude this share at least.
+        """
+        left = {ell: self.characters(ell, exponents.get(ell, 0)) for ell in primes}
+        # the search must not depend on the way to M, not even in the last digits
+        begin = _Node(node.log_index, round(node.log_size, 9), -inf, np.round(node.log_orders, 9), ())
+        worth = self._worth(begin, left)
+        beam = [_Flag(begin, left, 0.0)]
+        length = self.n * len(primes)
+        for number in range(length):
+            options: list[tuple[float, float, float, int, int, int]] = []
+            for place, flag in enumerate(beam):
+                options.extend(self._options(place, flag, worth))
+            chosen: dict[tuple[float, float], tuple[float, float, float, int, int, int]] = {}
+            for share in (0.0, 0.5, 1.0):
+                # equal sizes and credits are the same flag in another order, nearly always
+                ordered = sorted(options, key=lambda o: (o[0] - share * o[1] if share else o[2], o))
+                fresh: dict[tuple[float, float], tuple[float, float, float, int, int, int]] = {}
+                for option in ordered:
+                    fresh.setdefault((round(option[0], 7), round(option[1], 7)), option)
+                    if len(fresh) == width:
+                        break
+                chosen.update(fresh)
+            last = number == length - 1
+            beam = [self._take(beam[o[3]], o, exponents, last, least) for o in chosen.values()]
+        end = min(beam, key=lambda f: f.node.log_total).node
+        total = float(np.logaddexp(node.log_total, end.log_total))
+        return replace(end, log_total=total, lifts=(*node.lifts, *end.lifts))
+
+    def _worth(self, node: _Node, left: Mapping[int, _Characters]) -> FloatArray:
+        """For each condition what it will exclude in the stage, for each unit of log order that it gains."""
+        growth = np.zeros(len(self.relations))
+        for ell, seen in left.items():
+            for rank, (who, _) in seen.spaces.items():
+                growth[who] += rank * log(ell)
+        now = self.thrown * np.exp(-node.log_orders)
+        gain = log_density(now) - log_density(now * np.exp(-growth))
+        return np.where(growth > 0, gain / np.maximum(growth, 1e-9), 0.0)
+
+    def _options(self, place: int, flag: _Flag, worth: FloatArray,
+                 top: int = 8) -> list[tuple[float, float, float, int, int, int]]:
+        """(log size, credit, log total, place in the beam, prime, line; -1: a line that nobody sees)."""
+        node, out = flag.node, []
+        load = self.thrown * np.exp(-node.log_orders)
+        before = log_density(load)
+        for ell, seen in sorted(flag.left.items()):
+            if not seen.columns:
+                continue
+            if not len(seen.lines):
+                size = node.log_size + log(ell)
+                out.append((size, flag.credit, float(np.logaddexp(node.log_total, size)), place, ell, -1))
+                continue
+            gain = np.bincount(seen.line, (log_density(load / ell) - before)[seen.owner])
+            hope = np.bincount(seen.line, worth[seen.owner]) * log(ell)
+            for share in (0.0, 0.3, 1.0):
+                for k in np.argsort(gain - share * hope, kind="stable")[:top].tolist():
+                    size = float(node.log_size + log(ell) + gain[k])
+                    total = float(np.logaddexp(node.log_total, size))
+                    out.append((size, float(flag.credit + hope[k]), total, place, ell, k))
+        return out
+
+    def _take(self, flag: _Flag, option: tuple[float, float, float, int, int, int],
+              exponents: Mapping[int, int], last: bool, least: float) -> _Flag:
+        size, credit, total, _, ell, line = option
+        node, seen = flag.node, flag.left[ell]
+        short = seen.vector(line) if line >= 0 else seen.any_line()
+        owners = np.unique(seen.owner[seen.line == line])
+        orders = node.log_orders.copy()
+        orders[owners] += log(ell)
+        load = self.thrown[owners] * np.exp(-orders[owners])
+        gain = log_density(load * ell) - log_density(load)
+        names = [self.relations[int(owners[k])].name for k in np.argsort(-gain, kind="stable")
+                 if gain[k] > least]
+        character = [0] * self.n
+        for column, value in zip(seen.columns, short, strict=True):
+            character[column] = value
+        index = node.log_index + log(ell)
+        lift = Lift(ell, exponents.get(ell, 0), tuple(character), tuple(names), index, size, last)
+        pivot = next(j for j, value in enumerate(short) if value)
+        rest = seen.without(line) if line >= 0 else _Characters.of(
+            ell, tuple(c for j, c in enumerate(seen.columns) if j != pivot), {})
+        return _Flag(_Node(index, size, total, orders, (*node.lifts, lift)), {**flag.left, ell: rest}, credit)
+
+
+def plan_ladder(relations: Sequence[Relation], tops: Mapping[int, int], least_index: float, *,
+                rest: float = 1.0, width: int = 5, pairs: bool = True, limit: int = 400,
+                report: Callable[[int, Ladder], None] | None = None) -> Ladder:
+    """The lifts from L to M L with the least total number of classes expected on the way.
+
+    Arguments: conditions with distinct names; for each prime its largest exponent in M; log of the index
+    that M L must have at least; so many classes (besides those of points) may be expected in the end; the
+    width of the beams; whether two primes may share a stage; so many M are looked at; `report` receives each
+    M with its lifts.  Returns the cheapest ladder that meets both aims, or the one with the fewest classes
+    among the largest enough if none was found, or the one with the largest index.
+    Method: shortest paths over M; see the module.
+    """
+    forecast = Forecast(relations, tops)
+    primes = forecast.primes
+    heap: list[tuple[float, Exponents, int]] = [(0.0, (0,) * len(primes), 0)]
+    nodes = [forecast.start()]
     done: set[Exponents] = set()
-    while heap:
-        peak, index, here, path = heappop(heap)
+    best: tuple[bool, float, Ladder] | None = None
+    while heap and len(done) < limit:
+        _, here, number = heappop(heap)
         if here in done:
             continue
         done.add(here)
-        if index >= goal or len(done) > limit:
-            return list(path)
-        for place, ell in enumerate(primes):
-            if here[place] < tops[ell]:
-                there = here[:place] + (here[place] + 1,) + here[place + 1 :]
-                if there not in done:
-                    size = expected_log_size(relations, dict(zip(primes, there, strict=True)), known)
-                    heappush(heap, (round(max(peak, size), 6), index + rank * log(ell), there, (*path, ell)))
-    return []
+        node = nodes[number]
+        modulus = dict(zip(primes, here, strict=True))
+        if report is not None:
+            report(_product(modulus), node.lifts)
+        reached = node.log_index >= least_index - 1e-9
+        if reached and node.log_size <= (log(rest) if rest > 0 else -inf):
+            return node.lifts
+        merit = -node.log_size if reached else node.log_index
+        if best is None or (reached, merit) > best[:2]:
+            best = (reached, merit, node.lifts)
+        groups: list[tuple[int, ...]] = [(ell,) for ell in primes]
+        if pairs and node.log_index > 18:
+            groups += [(a, b) for a in primes for b in primes if a < b <= 7]
+        for group in groups:
+            there = tuple(e + (ell in group) for ell, e in zip(primes, here, strict=True))
+            if there in done or any(e > forecast.tops[ell] for ell, e in zip(primes, there, strict=True)):
+                continue
+            found = forecast.stage(node, group, modulus, width if len(group) == 1 else max(2, width // 2))
+            nodes.append(found)
+            heappush(heap, (round(found.log_total, 9), there, len(nodes) - 1))
+    return best[2] if best else ()
 
 
-def sieve_in_stages(relations: Sequence[Relation], path: Sequence[int], *, cap: int = 2 * 10**7,
-                    max_joins: int = 60, premium: float = 0.2, chunk: int = 300_000,
-                    report: Reporter | None = None) -> Outcome:
-    """The classes that all conditions allow, modulo the growing product of the path.
-
-    Arguments: conditions with distinct names; primes by which the modulus grows; limits as in `sieve_run`;
-    `chunk`: a stage that begins with more classes goes on with so many at a time, to the end of the path.
-    The plan comes from the first chunk and is the same for all, so that the result is what one set would have
-    given and memory is that of one chunk. Returns: the outcome; its plan is one list of joins and semijoins
-    over all stages.
-    """
-    return _stages(relations, list(path), {}, trivial(relations[0].n if relations else 0), cap, max_joins,
-                   premium, chunk, report)
+def _product(modulus: Mapping[int, int]) -> int:
+    out = 1
+    for ell, e in modulus.items():
+        out *= ell**e
+    return out
 
 
-def _stages(relations: Sequence[Relation], path: list[int], exponents: dict[int, int], state: Relation,
-            cap: int, max_joins: int, premium: float, chunk: int, report: Reporter | None) -> Outcome:
-    steps: list[Step] = []
-    largest, exponents = state.count, dict(exponents)
-    for number, ell in enumerate(path):
-        if state.count > chunk and number:
-            rest = _in_chunks(relations, path[number:], exponents, state, cap, max_joins, premium, chunk,
-                              report)
-            return Outcome(rest.relation, Plan((*steps, *rest.plan.steps)), max(largest, rest.largest))
-        exponents[ell] = exponents.get(ell, 0) + 1
-        pool = _with_a_group([coarsen(r, exponents) for r in relations])
-        # few options are compared where each costs a pass over many classes
-        width = 12 if state.count < 20_000 else 4 if state.count < 200_000 else 2
-        begun = bool(state.parts)
-        for end in sieve_run(pool, state if begun else None, cap=cap, max_joins=max_joins, width=width,
-                             premium=premium, report=report):
-            new, after = end.plan.steps, end
-        kinds = {"start": "join"} if begun else {}
-        steps.extend(replace(s, kind=kinds.get(s.kind, s.kind)) for s in new)
-        state, largest = after.relation, max(largest, after.largest)
-        if state.count == 0:
-            break
-    return Outcome(state, Plan(tuple(steps)), largest)
-
-
-def _in_chunks(relations: Sequence[Relation], path: list[int], exponents: dict[int, int], state: Relation,
-               cap: int, max_joins: int, premium: float, chunk: int, report: Reporter | None) -> Outcome:
-    """The rest of the path for one part of the classes after the other, all by the plan of the first."""
-    order = np.argsort(np.arange(state.count) * 7919 % state.count, kind="stable")
-    pieces = [state.select(np.isin(np.arange(state.count), order[low : low + chunk]))
-              for low in range(0, state.count, chunk)]
-    first = _stages(relations, path, exponents, pieces[0], cap, max_joins, premium, 10 * cap, report)
-    by_name = {r.name: r for r in relations}
-    blocks, largest = [first.relation.codes], first.largest
-    for piece in pieces[1:]:
-        here = piece
-        for step in first.plan.steps:
-            condition = coarsen(by_name[step.name], dict(step.exponents))
-            here = semijoin(here, condition) if step.kind == "semijoin" else join(here, condition)
-            largest = max(largest, here.count)
-        blocks.append(here.codes)
-        if report is not None and first.plan.steps:
-            report(replace(first.plan.steps[-1], actual=sum(len(b) for b in blocks)))
-    codes = np.concatenate(blocks)
-    largest = max(largest, state.count, len(codes))
-    return Outcome(merge_equal(replace(first.relation, codes=codes)), first.plan, largest)
-
-
-def _with_a_group(relations: Sequence[Relation]) -> list[Relation]:
-    """The conditions with some group left, by name."""
-    return sorted((r for r in relations if r.parts or not r.count), key=lambda r: r.name)
-
-
-__all__ = ["expected_log_size", "modulus_path", "sieve_in_stages"]
+__all__ = ["LARGEST_PRIME", "Forecast", "Ladder", "Lift", "expected_log_size", "log_density", "plan_ladder",
+           "thrown"]

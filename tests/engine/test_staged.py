@@ -1,78 +1,121 @@
-"""Sieving in stages: the same classes whatever the chunks, estimates, paths."""
+"""Ladders from L to M L: subgroups, expected sizes, the order of the steps."""
 
 from __future__ import annotations
 
 import random
-from functools import reduce
-from math import log
+from itertools import pairwise
+from math import exp, log, prod
 
+import numpy as np
 import pytest
 
-from sieve.engine.join import join, project
-from sieve.engine.plan import run_plan
-from sieve.engine.relation import coarsen, relation_from_condition
-from sieve.engine.staged import expected_log_size, modulus_path, sieve_in_stages
-from tests.support.random_conditions import random_condition
+from sieve.engine.relation import relation_from_condition
+from sieve.engine.staged import Forecast, expected_log_size, log_density, plan_ladder, thrown
+from tests.support.random_conditions import box, random_condition
 
 MODULI = (2, 4, 3, 9, 6, 12, 36, 5)
+TOPS = {2: 2, 3: 1, 5: 1}
 
 
 def family(seed, n=3, count=9, density=0.55):
     rng = random.Random(seed)
-    planted = [tuple(rng.randrange(60) for _ in range(n)) for _ in range(2)]
-    conditions = [random_condition(rng, f"v = {k}", n, moduli=MODULI, planted=planted, density=density,
-                                   factors=3) for k in range(count)]
-    return planted, [relation_from_condition(c) for c in conditions]
+    conditions = [random_condition(rng, f"v = {k}", n, moduli=MODULI, density=density, factors=3)
+                  for k in range(count)]
+    return [relation_from_condition(c) for c in conditions]
 
 
-@pytest.mark.parametrize("seed", range(8))
-def test_chunks_do_not_matter_and_nothing_allowed_is_lost(seed):
-    planted, relations = family(seed)
-    path = [2, 3, 2, 5, 3]
-    whole = sieve_in_stages(relations, path)
-    pieces = sieve_in_stages(relations, path, chunk=3)
-    cut = [coarsen(r, {2: 2, 3: 2, 5: 1}) for r in relations]
-    every = reduce(join, [r for r in cut if r.parts])
-    for outcome in (whole, pieces):
-        assert all(outcome.relation.contains(x) for x in planted)
-        assert outcome.largest >= outcome.relation.count
-        # the plan run in one piece ends with the same classes
-        again = run_plan(outcome.plan, relations).relation
-        assert (again.count, again.index) == (outcome.relation.count, outcome.relation.index)
-        assert sorted(again.codes.tolist()) == sorted(outcome.relation.codes.tolist())
-        allowed = project(every, outcome.relation.by_prime)
-        assert {tuple(c) for c in allowed.codes.tolist()} <= {tuple(c) for c in _in_basis_of(
-            allowed, outcome.relation)}
+def modulus_after(ladder):
+    return prod({(x.prime, x.level): x.prime for x in ladder}.values())
 
 
-def _in_basis_of(target, relation):
-    """The classes of a relation in the basis that `project` gives for the same subgroup."""
-    assert target.index == relation.index
-    return project(relation, target.by_prime).codes.tolist() if target.parts else relation.codes.tolist()
+def inside(ladder, vector):
+    """Whether a vector is in the subgroup after these lifts, one character after the other."""
+    for lift in ladder:
+        value = sum(c * x for c, x in zip(lift.character, vector, strict=True))
+        assert value % lift.prime**lift.level == 0
+        if value // lift.prime**lift.level % lift.prime:
+            return False
+    return True
 
 
 def test_expected_sizes_start_at_one_class_and_never_fall_below_the_known_ones():
-    _, relations = family(1)
+    relations = family(1)
     assert expected_log_size(relations, {}) == 0
     assert expected_log_size(relations, {2: 2, 3: 2, 5: 1}, known=10**6) == log(10**6)
     assert expected_log_size(relations, {2: 1}) <= 3 * log(2) + 1e-9
 
 
+@pytest.mark.parametrize("seed", range(2))
+def test_every_step_is_a_subgroup_of_its_index_and_sizes_follow_from_the_images(seed):
+    relations = family(seed)
+    ladder = plan_ladder(relations, TOPS, 3 * log(60), rest=0)
+    modulus = modulus_after(ladder)
+    assert modulus == 60 and len(ladder) == 12
+    usable = [r for r in relations if 0 < r.count < r.index]
+    for steps in (5, 9, 12):
+        below = [x for x in box(3, modulus) if inside(ladder[:steps], x)]
+        assert modulus**3 == len(below) * round(exp(ladder[steps - 1].log_index))
+        size = ladder[steps - 1].log_index
+        for relation in usable:
+            # the image of the subgroup in the group, listed; it contains 60 L
+            rows = np.array([row for part in relation.parts for row in part.rows])
+            some = np.array(below) @ rows.T
+            shifts = 60 * np.array(list(box(3, 3))) @ rows.T
+            image = np.unique((some[:, None] + shifts[None]).reshape(-1, len(rows)) % relation.moduli, axis=0)
+            size += float(log_density(thrown(relation) / np.array(relation.index / len(image))))
+        assert size == pytest.approx(ladder[steps - 1].log_size, abs=1e-6)
+    whole = expected_log_size(usable, {2: 2, 3: 1, 5: 1})
+    assert whole == pytest.approx(max(ladder[-1].log_size, 0), abs=1e-6)
+
+
 @pytest.mark.parametrize("seed", range(4))
-def test_the_path_has_the_least_peak(seed):
-    _, relations = family(seed)
-    tops = {2: 2, 3: 1, 5: 1}
-    path = modulus_path(relations, tops, 1e9)
-    assert sorted(path) == [2, 2, 3, 5]
+def test_stages_end_where_the_subgroup_is_a_multiple_of_l(seed):
+    ladder = plan_ladder(family(seed), TOPS, 3 * log(60), rest=0)
+    reached = []
+    for number, lift in enumerate(ladder, start=1):
+        if lift.last:
+            modulus = modulus_after(ladder[:number])
+            assert round(exp(lift.log_index)) == modulus**3
+            reached.append(modulus)
+            assert all(inside(ladder[:number], [modulus * (i == j) for i in range(3)]) for j in range(3))
+    assert reached[-1] == 60 and all(b % a == 0 for a, b in pairwise(reached))
 
-    def peak(order):
-        modulus, worst = {}, 0.0
+
+@pytest.mark.parametrize("seed", range(4))
+def test_the_order_of_stages_is_the_cheapest_of_all(seed):
+    relations = family(seed)
+    ladder = plan_ladder(relations, TOPS, 3 * log(60), rest=0)
+    forecast = Forecast(relations, TOPS)
+
+    def total(order):
+        node, exponents = forecast.start(), {}
         for ell in order:
-            modulus[ell] = modulus.get(ell, 0) + 1
-            worst = max(worst, expected_log_size(relations, modulus))
-        return worst
+            node = forecast.stage(node, (ell,), exponents)
+            exponents[ell] = exponents.get(ell, 0) + 1
+        return sum(exp(lift.log_size) for lift in node.lifts)
 
-    rng = random.Random(seed)
-    assert all(peak(path) <= peak(rng.sample(path, 4)) + 1e-5 for _ in range(24))
-    short = modulus_path(relations, tops, 3 * log(2))
-    assert len(short) == 1
+    best = sum(exp(lift.log_size) for lift in ladder)
+    orders = {(2, 2, 3, 5), (5, 3, 2, 2), (2, 3, 2, 5), (3, 5, 2, 2), (2, 5, 3, 2), (3, 2, 2, 5)}
+    assert all(best <= total(order) * (1 + 1e-9) for order in orders)
+
+
+def test_aims_and_limits():
+    relations = family(2)
+    assert plan_ladder(relations, TOPS, 0.0) == ()
+    short = plan_ladder(relations, TOPS, 3 * log(2), rest=10**9)
+    assert short[-1].last and short[-1].log_index >= 3 * log(2) - 1e-9 and len(short) == 3
+    # an index out of reach: as far as the exponents go
+    assert plan_ladder(relations, {2: 1, 3: 1}, 1e9)[-1].log_index == pytest.approx(3 * log(6))
+    with pytest.raises(ValueError, match="up to 61"):
+        plan_ladder(relations, {67: 1}, 1.0)
+    assert plan_ladder(relations, TOPS, 3 * log(60)) == plan_ladder(relations, TOPS, 3 * log(60))
+
+
+def test_names_are_those_of_conditions_that_see_the_step():
+    relations = family(3)
+    by_name = {r.name: r for r in relations}
+    for lift in plan_ladder(relations, TOPS, 3 * log(60), rest=0):
+        assert len(set(lift.names)) == len(lift.names)
+        for name in lift.names:
+            part = by_name[name].by_prime[lift.prime]
+            assert max(part.exponents) > lift.level

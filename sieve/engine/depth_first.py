@@ -1,0 +1,414 @@
+"""Sieving in stages, the run: classes climb a ladder of subgroups in batches, the deepest batch first.
+
+A class of L/K' above a class x of L/K is x + j b, 0 <= j < l, where b in K is not in K'.  For a condition
+that sees K', the set of the j it allows depends on the class of x in J(F_v)/phi_v(K') alone: one look into a
+table of bit masks serves all l lifts at once, and a class without lifts costs no more than that.  Memory is
+that of a few batches on each step of the ladder, however many classes there are in all.
+
+Large tables are hashed, and weak conditions are left out on the way; a class that slips through is caught by
+exact semijoins at the end, so the result is the set of classes modulo M that all conditions allow, whatever
+the ladder and the batches.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass, field
+from math import log, prod
+
+import numpy as np
+from flint import fmpz_mat
+from numpy.typing import NDArray
+
+from sieve.engine.codes import CODE_LIMIT
+from sieve.engine.join import semijoin
+from sieve.engine.relation import Relation, coarsen, merge_equal, trivial
+from sieve.engine.staged import Ladder, Lift, thrown
+from sieve.errors import Inconsistent, InternalError, LimitReached
+from sieve.exact.abelian import quotient_by
+from sieve.exact.primary import Characters
+
+Classes = NDArray[np.int32]
+FloatArray = NDArray[np.float64]
+IntArray = NDArray[np.int64]
+
+BATCH = 1 << 18
+"""A step is worked on when so many classes wait for it."""
+
+BLOCK = 1 << 15
+"""So many classes are worked on at once (they stay in the cache)."""
+
+LARGEST_MODULUS = 1 << 29
+"""Largest M: coordinates of classes are 32-bit integers below 2 M."""
+
+_TABLE = 1 << 18
+_SPARE = 32
+"""Tables longer than 2^18 are hashed to so many entries for each allowed class."""
+
+_EXACT_FLOAT = 2.0**50
+
+_FULL = 25.0
+"""Conditions that throw more classes than this on each class of their quotient modulo M are left out."""
+
+
+@dataclass(frozen=True, eq=False)
+class _Filter:
+    """One condition on one step.
+
+    `moduli`: the group J(F_v)/phi_v(K') as a product of cyclic groups; `weights`, shape (len(moduli), n): the
+    images of the unit vectors, entries between -m/2 and m/2; `masks`: bit j of the entry at the key of x says
+    whether x + j b is allowed; `strides`: key = sum of strides times codes, modulo the length of the table
+    (a power of two) if `hashed`.
+    """
+
+    name: str
+    moduli: tuple[int, ...]
+    weights: FloatArray
+    strides: tuple[int, ...]
+    hashed: bool
+    masks: NDArray[np.unsignedinteger]
+
+    def keys(self, block: FloatArray, bound: float) -> IntArray:
+        """The keys of classes, shape (count,), from their coordinates, shape (n, count), of size <= bound."""
+        key: IntArray | None = None
+        for modulus, row, stride in zip(self.moduli, self.weights, self.strides, strict=True):
+            code = _residues(row, block, modulus, bound)
+            term = code if stride == 1 else code * stride
+            key = term if key is None else key + term
+        assert key is not None
+        return key & (len(self.masks) - 1) if self.hashed else key
+
+
+def _residues(row: FloatArray, block: FloatArray, modulus: int, bound: float) -> IntArray:
+    """row . block modulo m, exactly: in floating point below 2^50, in integers beyond."""
+    if float(np.abs(row).sum()) * bound < _EXACT_FLOAT:
+        value = row @ block
+        # value + 1/2 is at least 1/2 away from the multiples of m: the rounding of the quotient is harmless
+        quotient = np.floor((value + 0.5) * (1.0 / modulus))
+        quotient *= modulus
+        value -= quotient
+        return value.astype(np.int64)
+    total = np.zeros(block.shape[1], dtype=np.int64)
+    for weight, coordinates in zip(row.tolist(), block, strict=True):
+        if weight:
+            # both factors are below 2^31
+            total += coordinates.astype(np.int64) % modulus * (int(weight) % modulus) % modulus
+    return total % modulus
+
+
+@dataclass(eq=False)
+class Rung:
+    """One step of the ladder with its filters; `waiting`, blocks of classes; `met`, how many came so far."""
+
+    lift: Lift
+    shift: tuple[int, ...]
+    filters: tuple[_Filter, ...]
+    waiting: list[Classes] = field(default_factory=list)
+    met: int = 0
+
+    @property
+    def count(self) -> int:
+        """How many classes wait."""
+        return sum(block.shape[1] for block in self.waiting)
+
+
+@dataclass(frozen=True, eq=False)
+class Climb:
+    """The result: `relation`, the classes modulo M that all conditions allow; `sizes`, for each step of the
+    ladder how many classes were met before it (one of each pair x, -x if `halved`); `most_held`, the largest
+    number of classes in memory at one time; `halved`."""
+
+    relation: Relation
+    sizes: tuple[int, ...]
+    most_held: int
+    halved: bool
+
+
+def climb(relations: Sequence[Relation], ladder: Ladder, *, known: Sequence[Sequence[int]] = (),
+          batch: int = BATCH, most: int | None = None, symmetric: bool | None = None,
+          report: Callable[[Sequence[Rung]], None] | None = None) -> Climb:
+    """The classes modulo M that all conditions allow, M being where the ladder ends.
+
+    Conditions that cannot be expected to exclude a class modulo M (25 points on each class) are left out.
+    Arguments: conditions with distinct names over L = Z^n, without labels; a ladder that `plan_ladder` made
+    from them; vectors known to be allowed, which must pass every filter; the size of batches; the largest
+    number of classes to be met in all (None: no limit); whether to follow one class of each pair x, -x only
+    (None: if all conditions are symmetric); `report` sees the steps after each batch. Raises: `Inconsistent`
+    when a known vector is excluded, naming it; `LimitReached` (partial: the numbers met so far); ValueError
+    for M beyond `LARGEST_MODULUS`, for a ladder that ends within a stage, or when asked to halve conditions
+    that are not symmetric.
+    """
+    if not relations or not ladder:
+        return Climb(trivial(relations[0].n if relations else 0), (), 1, False)
+    if not ladder[-1].last:
+        raise ValueError("the ladder ends within a stage")
+    exponents: dict[int, int] = {}
+    for lift in ladder:
+        exponents[lift.prime] = max(exponents.get(lift.prime, 0), lift.level + 1)
+    modulus = prod(ell**e for ell, e in exponents.items())
+    if modulus >= LARGEST_MODULUS:
+        raise ValueError(f"the modulus {modulus} is too large")
+    cut = [r for r in (coarsen(r, exponents) for r in relations if _load(r, exponents) < _FULL)
+           if r.count < r.index]
+    even = symmetric is not False and all(is_symmetric(r) for r in cut)
+    if symmetric and not even:
+        raise ValueError("the conditions are not symmetric")
+    vectors = _reduced(known, modulus, relations[0].n)
+    rungs = build_rungs(cut, ladder, vectors)
+    halve_at = _halving(ladder) if even else -1
+    ends, most_held = _drain(rungs, relations[0].n, batch, most, halve_at, report)
+    if halve_at >= 0:
+        ends = np.concatenate([ends, -ends], axis=1)
+    relation = _relation(ends, exponents, relations[0].n)
+    for condition in cut:
+        relation = semijoin(relation, condition)
+    for vector in known:
+        if not relation.contains(vector):
+            raise Inconsistent(f"the known vector {tuple(vector)} is excluded", str(tuple(vector)))
+    return Climb(relation, tuple(rung.met for rung in rungs), most_held, halve_at >= 0)
+
+
+def _load(relation: Relation, exponents: dict[int, int]) -> float:
+    """The number of classes thrown into the quotient modulo M, for each class of the quotient."""
+    order = prod(part.prime ** min(e, exponents.get(part.prime, 0))
+                 for part in relation.parts for e in part.exponents)
+    return max(relation.count, 0 if relation.count == relation.index else thrown(relation)) / order
+
+
+def is_symmetric(relation: Relation) -> bool:
+    """Whether the classes are closed under x -> -x."""
+    moduli = np.array(relation.moduli, dtype=np.int64)
+    mirrored = merge_equal(Relation(relation.n, relation.parts, -relation.codes % moduli, ()))
+    return bool(np.array_equal(mirrored.codes, merge_equal(relation.unlabelled()).codes))
+
+
+def build_rungs(relations: Sequence[Relation], ladder: Ladder, known: Classes, most: int = 24) -> list[Rung]:
+    """The subgroups of the ladder and the tables of the conditions it names, at most so many on each step.
+
+    `known`: vectors, shape (n, count); raises `Inconsistent` when a table excludes one.
+    """
+    n = relations[0].n if relations else len(ladder[0].character)
+    basis = [[int(i == j) for j in range(n)] for i in range(n)]
+    by_name = {r.name: r for r in relations}
+    rungs: list[Rung] = []
+    for lift in ladder:
+        finer, shift = _kernel(basis, lift)
+        filters = []
+        for name in lift.names[:most]:
+            if name in by_name:
+                made = make_filter(by_name[name], finer, shift, lift.prime)
+                if made is not None:
+                    filters.append(made)
+        rungs.append(Rung(lift, tuple(shift), tuple(filters)))
+        basis = finer
+        for made in filters:
+            _check_known(made, known, basis, rungs[-1])
+    return rungs
+
+
+def _check_known(made: _Filter, known: Classes, basis: Sequence[Sequence[int]], rung: Rung) -> None:
+    """A known vector is x + j b with j = 0 for x itself: bit 0 must be set."""
+    if not known.shape[1]:
+        return
+    points = known.astype(np.float64)
+    passed = made.masks[made.keys(points, float(np.abs(points).max()))] & made.masks.dtype.type(1)
+    if not passed.all():
+        bad = tuple(known[:, int(np.argmin(passed))].tolist())
+        raise Inconsistent(f"the known vector {bad} is excluded by {made.name}", str(bad))
+
+
+def _kernel(basis: Sequence[Sequence[int]], lift: Lift) -> tuple[list[list[int]], list[int]]:
+    """A reduced basis of the kernel of the character on K, and a vector of K outside it."""
+    ell, power = lift.prime, lift.prime**lift.level
+    values = []
+    for row in basis:
+        value = sum(c * x for c, x in zip(lift.character, row, strict=True))
+        if value % power:
+            raise InternalError("a character of the ladder is not defined on its subgroup")
+        values.append(value // power % ell)
+    pivot = next((i for i, value in enumerate(values) if value), None)
+    if pivot is None:
+        raise InternalError("a character of the ladder vanishes on its subgroup")
+    inverse = pow(values[pivot], -1, ell)
+    rows = []
+    for i, (row, value) in enumerate(zip(basis, values, strict=True)):
+        factor = ell if i == pivot else -value * inverse % ell
+        rows.append([factor * b + (0 if i == pivot else a)
+                     for a, b in zip(row, basis[pivot], strict=True)])
+    reduced = fmpz_mat(rows).lll()
+    n = len(rows)
+    return [[int(reduced[i, j]) for j in range(n)] for i in range(n)], list(basis[pivot])
+
+
+def make_filter(relation: Relation, basis: Sequence[Sequence[int]], shift: Sequence[int],
+                ell: int) -> _Filter | None:
+    """The table of a condition in J(F_v)/phi_v(K') for K' with this basis; None if it excludes nothing."""
+    characters = [(row, m) for part in relation.parts for row, m in zip(part.rows, part.moduli, strict=True)]
+    width = len(characters)
+    relators = [[m if i == k else 0 for i in range(width)] for k, (_, m) in enumerate(characters)]
+    relators += [[sum(c * x for c, x in zip(row, vector, strict=True)) % m for row, m in characters]
+                 for vector in basis]
+    quotient = quotient_by(width, relators)
+    if quotient is None or not quotient.invariants or max(quotient.invariants) >= CODE_LIMIT:
+        return None
+    moduli = quotient.invariants
+    maps = np.array(quotient.coordinates, dtype=np.int64)
+    codes = np.zeros((relation.count, len(moduli)), dtype=np.int64)
+    for k in range(width):
+        # factors below 2^31
+        codes += relation.codes[:, k, None] * maps[k] % np.array(moduli, dtype=np.int64)
+    codes %= np.array(moduli, dtype=np.int64)
+    codes = np.unique(codes, axis=0)
+    if len(codes) >= quotient.order:
+        return None
+    units = [[sum(row[j] * quotient.coordinates[k][i] for k, (row, _) in enumerate(characters)) % m
+              for j in range(relation.n)] for i, m in enumerate(moduli)]
+    centred = [[u - m if 2 * u > m else u for u in row] for row, m in zip(units, moduli, strict=True)]
+    weights = np.array(centred, dtype=np.float64)
+    image = [sum(u * x for u, x in zip(row, shift, strict=True)) % m
+             for row, m in zip(units, moduli, strict=True)]
+    size = max(_TABLE, 1 << (_SPARE * len(codes) - 1).bit_length())
+    hashed = quotient.order > size
+    strides = [1]
+    for m in moduli[:-1]:
+        strides.append(strides[-1] * m)
+    if hashed:
+        # odd numbers; a key is below 4 * 2^31 * 2^29
+        strides = [1, *(((1 << 29) * (2 * i + 1) // 7) | 1 for i in range(len(moduli) - 1))]
+    masks = np.zeros(size if hashed else quotient.order, dtype=_word(ell))
+    for j in range(ell):
+        key = np.zeros(len(codes), dtype=np.int64)
+        for i, m in enumerate(moduli):
+            key += (codes[:, i] - j * image[i]) % m * strides[i]
+        if hashed:
+            key &= size - 1
+        masks[key] |= masks.dtype.type(1 << j)
+    return _Filter(relation.name, moduli, weights, tuple(strides), hashed, masks)
+
+
+def _word(bits: int) -> type[np.unsignedinteger]:
+    return next(t for size, t in ((8, np.uint8), (16, np.uint16), (32, np.uint32), (64, np.uint64))
+                if bits <= size)
+
+
+def expand(rung: Rung, classes: Classes) -> Classes:
+    """The lifts of classes, shape (n, count), that all filters of the step allow; their order is fixed."""
+    out = [_expand_block(rung, classes[:, low : low + BLOCK]) for low in range(0, classes.shape[1], BLOCK)]
+    return np.concatenate(out, axis=1) if out else classes[:, :0]
+
+
+def _expand_block(rung: Rung, block: Classes) -> Classes:
+    ell = rung.lift.prime
+    word = _word(ell)
+    masks = np.full(block.shape[1], (1 << ell) - 1, dtype=word)
+    numbers = block.astype(np.float64)
+    bound = float(np.abs(numbers).max(initial=1.0))
+    for place, made in enumerate(rung.filters):
+        masks &= made.masks[made.keys(numbers, bound)]
+        if place + 1 < len(rung.filters):
+            alive = np.flatnonzero(masks)
+            if 4 * len(alive) < 3 * len(masks):
+                masks, block, numbers = masks[alive], block[:, alive], numbers[:, alive]
+    pieces = []
+    shift = np.array(rung.shift, dtype=np.int32)[:, None]
+    for j in range(ell):
+        here = np.flatnonzero(masks & word(1 << j))
+        if len(here):
+            pieces.append(block[:, here] + np.int32(j) * shift if j else block[:, here])
+    return np.concatenate(pieces, axis=1) if pieces else block[:, :0]
+
+
+def _halving(ladder: Ladder) -> int:
+    """The first step at the end of a stage with a few classes at least: there -x is easily compared."""
+    return next((k for k, lift in enumerate(ladder) if lift.last and lift.log_size > log(50)), -1)
+
+
+def _stage_end(classes: Classes, modulus: int, halve: bool) -> Classes:
+    """Coordinates reduced to 0..M-1; of x and -x only the first in lexicographic order if asked."""
+    classes = classes % np.int32(modulus)
+    if not halve:
+        return classes
+    keep = np.zeros(classes.shape[1], dtype=bool)
+    undecided = np.ones(classes.shape[1], dtype=bool)
+    for row in classes:
+        mirror = -row % np.int32(modulus)
+        keep |= undecided & (row < mirror)
+        undecided &= row == mirror
+    return classes[:, keep | undecided]
+
+
+def _drain(rungs: Sequence[Rung], n: int, batch: int, most: int | None, halve_at: int,
+           report: Callable[[Sequence[Rung]], None] | None) -> tuple[Classes, int]:
+    """Work on the deepest step with a full batch, else on the first step where classes wait.
+
+    Every step but the one just filled holds less than a batch: memory is bounded by that and one output.
+    """
+    moduli = _stage_moduli(rungs)
+    rungs[0].waiting.append(np.zeros((n, 1), dtype=np.int32))
+    rungs[0].met = 1
+    ends: list[Classes] = []
+    held = most_held = met = 1
+    while held:
+        counts = [rung.count for rung in rungs]
+        full = [k for k, count in enumerate(counts) if count >= batch]
+        here = full[-1] if full else next(k for k, count in enumerate(counts) if count)
+        block = _take(rungs[here], batch)
+        found = expand(rungs[here], block)
+        if rungs[here].lift.last:
+            found = _stage_end(found, moduli[here], here == halve_at)
+        held += found.shape[1] - block.shape[1]
+        met += found.shape[1]
+        most_held = max(most_held, held + block.shape[1])
+        if here + 1 < len(rungs):
+            if found.shape[1]:
+                rungs[here + 1].waiting.append(found)
+                rungs[here + 1].met += found.shape[1]
+        else:
+            ends.append(found)
+            held -= found.shape[1]
+        if report is not None:
+            report(rungs)
+        if most is not None and met > most:
+            raise LimitReached("classes met", str(most), tuple(rung.met for rung in rungs))
+    return (np.concatenate(ends, axis=1) if ends else np.zeros((n, 0), dtype=np.int32)), most_held
+
+
+def _take(rung: Rung, batch: int) -> Classes:
+    """At most a batch of the classes that wait, the last ones."""
+    taken: list[Classes] = []
+    room = batch
+    while rung.waiting and room:
+        block = rung.waiting.pop()
+        if block.shape[1] > room:
+            rung.waiting.append(block[:, : block.shape[1] - room])
+            block = block[:, block.shape[1] - room :]
+        room -= block.shape[1]
+        taken.append(block)
+    return np.concatenate(taken, axis=1) if len(taken) > 1 else taken[0]
+
+
+def _stage_moduli(rungs: Sequence[Rung]) -> list[int]:
+    """For each step the modulus M at the end of its stage."""
+    out: list[int] = []
+    exponents: dict[int, int] = {}
+    for rung in rungs:
+        exponents[rung.lift.prime] = rung.lift.level + 1
+        out.append(prod(ell**e for ell, e in exponents.items()))
+    return out
+
+
+def _reduced(vectors: Sequence[Sequence[int]], modulus: int, n: int) -> Classes:
+    rows = [[c % modulus for c in vector] for vector in vectors]
+    return np.array(rows, dtype=np.int32).reshape(len(rows), n).T
+
+
+def _relation(ends: Classes, exponents: dict[int, int], n: int) -> Relation:
+    """Classes modulo M as a relation."""
+    units = tuple(tuple(int(i == j) for j in range(n)) for i in range(n))
+    parts = tuple(Characters(ell, units, (e,) * n) for ell, e in sorted(exponents.items()))
+    blocks = [(ends.T % np.int32(ell**e)).astype(np.int64) for ell, e in sorted(exponents.items())]
+    return merge_equal(Relation(n, parts, np.concatenate(blocks, axis=1), ()))
+
+
+__all__ = ["BATCH", "LARGEST_MODULUS", "Climb", "Rung", "build_rungs", "climb", "expand", "is_symmetric",
+           "make_filter"]
