@@ -11,13 +11,14 @@ import flint
 import pytest
 
 from sieve.curves.discs import differentials
-from sieve.curves.divisors import Divisor, RationalPlace
+from sieve.curves.divisors import Divisor, Place, RationalPlace
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.curves.plane import PlaneCurve
 from sieve.errors import BadReduction, PrecisionLost, Uncertified
 from sieve.exact.padic_linear import PadicVector, combine
 from sieve.exact.padic_number import PadicNumber
 from sieve.exact.series import coefficients, polynomial
+from sieve.local import closed_points
 from sieve.local.chabauty import ChabautyPlace
 from sieve.local.logarithms import PadicIntegrals
 from sieve.local.picard import picard_group
@@ -137,6 +138,43 @@ def test_lines_have_logarithm_zero(name: str, p: int) -> None:
         assert total.is_zero and total.precision >= DIGITS
         done += 1
     assert done >= 4
+
+
+def two_pairs(seed: int) -> tuple[PlaneCurve, int, list[Place]]:
+    """A random quartic, a prime, and two places of degree 2 that make up its zeros on the line z = 0."""
+    rng = random.Random(seed)
+    p = rng.choice([2, 3, 3, 5, 5, 7])
+    first, second = ([rng.randint(-4, 4), rng.randint(-4, 4), 1] for _ in range(2))
+    terms: dict[tuple[int, int, int], int] = {}
+    for i, a in enumerate(first):
+        for j, b in enumerate(second):
+            terms[4 - i - j, i + j, 0] = terms.get((4 - i - j, i + j, 0), 0) + a * b
+    terms |= {(i, j, 4 - i - j): rng.randint(-2, 2) for i in range(4) for j in range(4 - i)}
+    curve = PlaneCurve(terms)
+    one, t = [Fraction(1)], [Fraction(0), Fraction(1)]
+    return curve, p, [curve.closed_point([Fraction(a) for a in u], one, t, []) for u in (first, second)]
+
+
+@pytest.mark.parametrize(
+    ("seed", "p", "k"),
+    [(4958, 2, 2), (565, 7, 2), (4475, 3, 3), (5994, 5, 4), (2414, 3, 5), (936, 3, 7), (465, 3, 9)],
+)
+def test_multiples_of_places_are_used(seed: int, p: int, k: int, monkeypatch: pytest.MonkeyPatch) -> None:
+    """The points modulo p generate too little: only k times a place is equivalent to points; p | k too."""
+    used: set[int] = set()
+    original = closed_points._multiple
+
+    def noted(scheme, times, *rest):  # type: ignore[no-untyped-def]
+        used.add(times)
+        return original(scheme, times, *rest)
+
+    monkeypatch.setattr(closed_points, "_multiple", noted)
+    curve, prime, places = two_pairs(seed)
+    assert prime == p
+    integrals = PadicIntegrals(curve, p, DIGITS)
+    first, second = (integrals.log_place(place) for place in places)
+    assert (first + second).is_zero and min(first.precision, second.precision) >= DIGITS
+    assert used == {k} and not first.is_zero
 
 
 def test_logarithms_of_line_sections_are_not_all_zero() -> None:
