@@ -58,8 +58,8 @@ def _no_class(log: Log) -> int:
     return log.find("zeros")
 
 
-def _one_digit_less_than_the_candidates(log: Log) -> int:
-    """The logarithms are computed with fewer digits than a candidate has."""
+def _few_digits(log: Log) -> int:
+    """One digit less than a candidate has, before the integrals lose some."""
     digits = max(r.get("digits", 0) for r in log.records if r["kind"] == "candidate")
     i = log.find("padic")
     log.records[i]["digits"] = digits - 1
@@ -70,7 +70,7 @@ def _one_digit_less_than_the_candidates(log: Log) -> int:
 
 
 def _one_digit(log: Log) -> int:
-    """Logarithms modulo p are worth nothing once integrals have lost a digit."""
+    """Logarithms modulo p, while the candidates have more digits."""
     log.records[log.find("padic")]["digits"] = 1
     return log.find("zeros")
 
@@ -147,8 +147,8 @@ def traps() -> Traps:
     out.rejected("candidate_left_out_of_counted_ones", "zeros-open", _forget(0, zeros), zeros)
     out.rejected("candidate_at_infinity_left_out", "zeros-open", _forget(-1, zeros), zeros)
     out.rejected("candidate_left_out_at_rank_zero", "zeros-open", _forget(1, zeros), "zeros_rank_zero")
-    out.rejected("more_digits_than_the_logarithms", "terms", _one_digit_less_than_the_candidates, zeros)
-    out.rejected("too_few_digits_to_count_zeros", "digits", _one_digit, "zeros_rank_zero")
+    out.rejected("more_digits_than_the_logarithms", "terms", _one_digit, "zeros_rank_zero")
+    out.rejected("too_few_digits_to_count_zeros", "digits", _few_digits, zeros)
     out.rejected("counted_list_without_the_record", "conclusion", drop(zeros, blame="end"), zeros)
     out.rejected("double_zero_no_longer_certain", "not-sole", _inexact, "zeros_double")
     out.rejected("one_disc_left_out", "conclusion", _forget(6, "end"), "integral_discs")
