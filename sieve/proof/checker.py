@@ -936,6 +936,8 @@ class Local:
         # a character of J(F_v) constant on X(F_v) has a sum of N terms and an L-polynomial of degree 2 g - 2
         need(self.points**2 > (2 * self.curve.genus - 2) ** 2 * self.prime, "generation",
              "too few points to generate the group")
+        need(all(place.closed(self.prime) for place in proof.places), "place-collapses",
+             "different points of a place meet modulo v")
         need(all(b % a == 0 for a, b in zip(self.moduli, self.moduli[1:])), "invariants",
              "the invariants do not divide each other")
         self.unit = self.element(unit)
@@ -971,7 +973,6 @@ class Local:
         inside: dict[int, int] = {}
         if place is not None:
             u, coordinates = place.modulo(self.prime, self.prime)
-            need(place.closed(self.prime), "place-collapses", "different points of a place meet modulo v")
             missed = on_place(section.form, u, coordinates, self.prime)
             need(not missed, "place-section", "the section misses the place")
             inside = place.points(self.reduction)
@@ -1094,6 +1095,7 @@ class Padic:
         bits = self.digits * self.prime.bit_length()
         limit(length <= MAX_TERMS and bits <= MAX_BITS and bits * length <= MAX_SERIES,
               "more terms or digits than this checker handles")
+        need(length >= self.digits, "terms", "fewer terms than digits")
         self.series = Series(self.prime**self.digits, length, self.curve.work)
         self.reduced = boolean(reduction)
         if self.reduced:
@@ -1167,7 +1169,6 @@ class Padic:
         if not any(monic[:m]):
             return Ball(p, [0] * self.curve.genus, 0, self.digits)
         length, lost = m * self.digits, 0
-        need(length <= self.series.length, "terms", f"too few terms for {m} zeros")
         while p ** (lost + 1) <= length:
             lost += 1
         self.curve.work.spend(length * (m + self.curve.genus))

@@ -18,6 +18,7 @@ from flint import fmpq, fmpq_poly
 
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.errors import SieveError
+from tests.support.plane_proof_cases import PLANE_CASES
 from tests.support.reference_cases import reference_case
 from tests.support.run_files import (
     chabauty_prime,
@@ -27,6 +28,7 @@ from tests.support.run_files import (
     write_case,
     write_json,
 )
+from tests.support.zero_proof_cases import ZERO_CASES
 
 ROOT = Path(__file__).resolve().parents[2]
 CORPUS = ROOT / "data" / "proofs"
@@ -282,29 +284,19 @@ def _changed(log: Path, kind: str, change: Callable[[dict[str, Any]], None]) -> 
 
 
 def _place_in_discs(directory: Path) -> Path:
-    """u = (x - 7) (x - 6)^2 modulo 11: the place is integrated directly, without a section of its own."""
+    """u = (x - 7) (x - 6)^2 modulo 11; the place is written as two of it less one of it."""
 
     def twice(group: dict[str, Any]) -> None:
-        """The place is written as two of it less one of it."""
         (divisor,) = group["free"]
-        place = next(entry[1] for entry in divisor if "mumford" in entry[1])
+        place = next(entry[1] for entry in divisor if "closed" in entry[1])
         group["free"] = [[e for e in divisor if e[1] != place] + [[2, place], [-1, place]]]
 
-    log = _cubic_place(directory, 11, "x^3 + 3*x^2 - x + 1", "x^2 + 2*x")
-    return _changed(_changed(log, "padic", lambda record: record.update(mumford=[])), "group", twice)
+    return _changed(_cubic_place(directory, 11, "x^3 + 3*x^2 - x + 1", "x^2 + 2*x"), "group", twice)
 
 
 def _place_partly_in_discs(directory: Path) -> Path:
-    """u has one root modulo 7, and the section through the place has another zero in the disc there."""
-
-    def change(record: dict[str, Any]) -> None:
-        k, even, odd = record["mumford"][0]
-        a = next(a for a in range(7) if (2 * a**3 + 8 * a**2 + 3 * a - 14) % 7 == 0)
-        widened = [[x - a * y for x, y in zip([0, *c], [*c, 0], strict=True)] for c in (even, odd)]
-        record["mumford"] = [[k, *widened]]
-
-    log = _cubic_place(directory, 7, "x^3 + 4*x^2 + 3/2*x - 7", "5/2*x + 6")
-    return _changed(log, "padic", change)
+    """u has one root modulo 7."""
+    return _cubic_place(directory, 7, "x^3 + 4*x^2 + 3/2*x - 7", "5/2*x + 6")
 
 
 CASES: dict[str, Case] = {
@@ -326,6 +318,9 @@ CASES: dict[str, Case] = {
     "torsion_coordinates": _torsion_coordinates,
     "place_in_discs": _place_in_discs,
     "place_partly_in_discs": _place_partly_in_discs,
+    **PLANE_CASES,
+    **ZERO_CASES,
+    **ZERO_CASES,
 }
 
 

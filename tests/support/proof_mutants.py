@@ -22,7 +22,7 @@ from math import gcd, isqrt
 from typing import Any
 
 from sieve.proof.checker import Malformed, Proof, decode
-from tests.support.make_corpus import dump
+from tests.support.corpus_edits import dump
 
 Records = list[Any]
 Trail = tuple[Any, ...]
