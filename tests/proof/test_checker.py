@@ -201,7 +201,7 @@ def test_examples_of_the_format_page_are_in_the_corpus() -> None:
         r"Accepted:\n```json\n(.+)\n```\nRejected, `([a-z-]+)` \(data/proofs/(\S+)\):\n```json\n(.+)\n```",
         page,
     )
-    assert len(examples) == 12
+    assert len(examples) == 13
     for accepted, code, name, rejected in examples:
         assert accepted in good
         exit_code, number, expected_code = verdicts[name]
