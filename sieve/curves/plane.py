@@ -77,7 +77,12 @@ def macaulay_rows(terms: Mapping[Exponents, int], degree: int) -> list[list[int]
 
 
 def _rank(rows: Sequence[Sequence[int]], v: int) -> int:
-    return int(flint.nmod_mat(len(rows), len(rows[0]), [c % v for row in rows for c in row], v).rank())
+    """The rank modulo a prime of any size."""
+    entries = [c % v for row in rows for c in row]
+    if v < 2**63:
+        return int(flint.nmod_mat(len(rows), len(rows[0]), entries, v).rank())
+    context = flint.fmpz_mod_ctx(v)
+    return int(flint.fmpz_mod_mat(len(rows), len(rows[0]), entries, context).rank())
 
 
 class PlaneCurve:

@@ -423,7 +423,7 @@ class ReducedPlane:
         )
         algebra = ResidueAlgebra(u)
         if algebra.embedding(coordinates) is None:
-            raise BadReduction(v, "the points of a divisor fall together there")
+            raise BadReduction(v, "a divisor does not stay embedded there")
         return algebra, coordinates
 
     def higher_place(self, u: flint.nmod_poly, coordinates: Sequence[flint.nmod_poly]) -> HigherPlace:
