@@ -1286,10 +1286,10 @@ class Zeros:
     with the right entries off the columns of the minor that satisfies this modulo p^M agrees with such an e
     modulo p^(M - s), s the valuation of the minor (Cramer), the logarithms integral and primitive.
 
-    Exactly known: unit vectors, when there are no generators; and when all powers of x in the equation are
-    even, so that (x, y) -> (-x, y) maps x^i y^k dx / F_y to (-1)^(i+1) times itself and J(Q) (x) Q is the sum
-    of two eigenspaces, for one generator unit vectors of a sign that its logarithm is not of: then the
-    eigenspace of that sign is 0.
+    Exactly known: for coordinates in which all exponents of the equation are even, changes of sign act on the
+    curve, on J(Q) (x) Q and on each x^i y^k dx / F_y, by a character.  When the logarithms of the r generators
+    have components of r characters, the other eigenspaces of J(Q) (x) Q are 0, and the differentials of the
+    other characters annihilate.
     """
 
     def __init__(self, proof: Proof, record: dict[str, Any]) -> None:
@@ -1310,17 +1310,17 @@ class Zeros:
         minor = determinant([[row[j] for j in chosen] for row in logs]) % p**known
         need(minor != 0, "dependent", "the logarithms of the generators may be dependent")
         free = [j for j in range(g) if j not in chosen]
-        even = not any(c for row in proof.curve.rows for c in row[1::2])
-        signs = [i % 2 for i, _, _ in proof.curve.exponents]
+        even = [n for n in range(3) if not any(term[n + 1] % 2 for term in proof.curve.form)]
+        signs = [tuple(key[n] % 2 for n in even) for key in proof.curve.exponents]
+        present = {sign for row in logs for sign, c in zip(signs, row) if c % p**known}
         self.forms: list[Row] = []
         self.exact: list[int | None] = []
         for j, entry in zip(free, items(annihilators, len(free))):
             e = integers(entry, 0, p**padic.digits, g)
             need([e[i] for i in free] == [int(i == j) for i in free], "annihilator", "not in the normal form")
-            other = r == 1 and even and any(
-                c % p**known for c, sign in zip(logs[0], signs) if sign != signs[j])
             self.forms.append(e)
-            self.exact.append(j if sum(e) == 1 and (r == 0 or other) else None)
+            other = len(present) >= r and signs[j] not in present
+            self.exact.append(j if sum(e) == 1 and other else None)
         values = [sum(a * b for a, b in zip(e, row)) % p**known for e in self.forms for row in logs]
         self.known = min([known, *(valuation(c, p) for c in values if c)]) - valuation(minor, p)
         need(self.known > 0, "annihilator", "a differential does not annihilate the generators")
