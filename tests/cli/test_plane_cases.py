@@ -1,0 +1,153 @@
+"""Plane curves on the command line, from an equation to an appendix."""
+
+from __future__ import annotations
+
+import json
+import shutil
+import subprocess
+from pathlib import Path
+
+import pytest
+
+from sieve.proof.checker import main as check_main
+from tests.support.command_line import sieve
+from tests.support.plane_cases import (
+    plane_case_text,
+    quartic_case,
+    write_plane_candidates,
+    write_quartic,
+)
+
+EVEN = {
+    # J is isogenous to the product of the Jacobians of the quotients by x -> -x, y -> -y, z -> -z; PARI's ellrank
+    # (GP 2.15) proves that their ranks are 0, 1, 0 and 1, 1, 0
+    "even_rank1": (1, "3*x^4 - y^4 - z^4 + 3*x^2*y^2 - 2*x^2*z^2 + y^2*z^2 = 0"),
+    "even_rank2": (2, "3*x^4 - y^4 - 3*z^4 + x^2*y^2 + 2*x^2*z^2 - 2*y^2*z^2 = 0"),
+}
+
+
+def sketch(name: str, directory: Path) -> Path:
+    rank, equation = EVEN[name]
+    path = directory / f"{name}.sketch.toml"
+    path.write_text(
+        f'format = "sieve-case/1"\nname = "{name}"\n[curve]\nequation = "{equation}"\n'
+        f'[jacobian]\nrank = {rank}\nrank_source = "three elliptic quotients"\n', "utf-8")  # fmt: skip
+    return path
+
+
+@pytest.fixture(scope="module")
+def quartic(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The case of the split curve of level 13, with a run over 7-adic candidates."""
+    directory = tmp_path_factory.mktemp("quartic")
+    case = write_quartic(quartic_case("level13_split"), directory)
+    write_plane_candidates(case, directory / "c.json", 5, 5, 12)
+    done = sieve("run", case, "-c", directory / "c.json", "-o", directory / "out", "--jobs", "1",
+                 "--bound", "300", "--json")  # fmt: skip
+    assert done.code in (0, 1), done.err
+    (directory / "result.json").write_text(done.out, "utf-8")
+    return directory
+
+
+def test_run_of_a_quartic(quartic: Path) -> None:
+    data = json.loads((quartic / "result.json").read_text("utf-8"))
+    verdicts = {v["id"]: v["verdict"] for v in data["verdicts"]}
+    assert [verdicts[f"z{i}"] for i in range(1, 8)] == ["rational"] * 7
+    assert list(verdicts.values()).count("eliminated") >= 10
+    # 7 points: the published X(Q) (Balakrishnan, Dogra, Mueller, Tuitman, Vonk 2019)
+    assert set(data["rational_points"]) == {
+        "(0 : 0 : 1)", "(0 : 1 : 0)", "(0 : 3 : 2)", "(-1 : 0 : 1)", "(1 : 0 : 0)", "(1 : 0 : 1)", "(1 : 1 : 0)"
+    }  # fmt: skip
+    report = (quartic / "out" / "report.txt").read_text("utf-8")
+    assert "genus 3" in report and "(0 : 1 : 0)" in report
+
+
+def test_the_log_is_accepted(quartic: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    log = quartic / "out" / "proof.jsonl"
+    done = sieve("check", log, "--json")
+    assert done.code == 0 and json.loads(done.out)["valid"]
+    assert check_main([str(log)]) == 0
+    assert capsys.readouterr().out.startswith("accepted")
+    # the order of lines matters
+    lines = log.read_text("utf-8").splitlines()
+    bad = quartic / "bad.jsonl"
+    bad.write_text("\n".join([*lines[:-2], lines[-1]]) + "\n", "utf-8")
+    assert sieve("check", bad).code == 3
+
+
+def test_appendix_and_drawing(quartic: Path) -> None:
+    log = quartic / "out" / "proof.jsonl"
+    texts = {}
+    for ending in ("tex", "md", "html"):
+        assert sieve("appendix", log, "-o", quartic / f"a.{ending}").code == 0
+        texts[ending] = (quartic / f"a.{ending}").read_text("utf-8")
+    assert "-x^{3}y - x^{3}z + 2x^{2}y^{2}" in texts["md"] and "plane projective equation" in texts["md"]
+    assert "(x : y : z)" in texts["tex"] and "(-1 : 0 : 1)" in texts["md"]
+    assert "<sup>3</sup>" in texts["html"]
+    for ending in ("svg", "tex", "graphml"):
+        assert sieve("draw", log, "-o", quartic / f"g.{ending}").code == 0
+
+
+@pytest.mark.skipif(shutil.which("pdflatex") is None, reason="no TeX here")
+def test_the_appendix_compiles(quartic: Path) -> None:
+    log = quartic / "out" / "proof.jsonl"
+    assert sieve("appendix", log, "-o", quartic / "compiled.tex").code == 0
+    done = subprocess.run(
+        ["pdflatex", "-interaction=nonstopmode", "-halt-on-error", "compiled.tex"],
+        cwd=quartic, capture_output=True, timeout=300, check=False,
+    )  # fmt: skip
+    assert done.returncode == 0, done.stdout[-2000:]
+
+
+def test_inspect_and_advise(quartic: Path) -> None:
+    case = quartic / "level13_split.toml"
+    done = sieve("inspect", case, "--bound", "60", "--padic", "5:6", "--jobs", "1", "--json")
+    assert done.code == 0, done.err
+    data = json.loads(done.out)
+    assert data["genus"] == 3 and data["bad_primes"] == [13] and data["torsion"] == {"order": "1", "proved": True}
+    # orders: L(1) of the reference data, at 3, 5, 7
+    orders = {row["prime"]: row["order"] for row in data["primes"]}
+    assert (orders[3], orders[5], orders[7]) == ("91", "377", "659")
+    assert all(d.keys() == {"prime", "precision", "group", "coefficients"} for d in data["padic"])
+    for row, known in zip(data["padic"][0]["coefficients"], data["known_points"], strict=True):
+        assert row["point"] == known["point"] and len(row["coefficients"]) == 3
+    done = sieve("advise", case, "-c", quartic / "c.json", "--bound", "300", "--jobs", "1", "--json")
+    assert done.code == 0 and json.loads(done.out)["advice"]
+
+
+@pytest.mark.parametrize("name", sorted(EVEN))
+def test_from_an_equation_to_all_points(name: str, tmp_path: Path) -> None:
+    """Propose base and generators, find the zeros of annihilating integrals, decide them."""
+    proposed = sieve("inspect", sketch(name, tmp_path), "--propose", "--jobs", "1")
+    assert proposed.code == 0, proposed.err
+    case = tmp_path / "case.toml"
+    case.write_text(proposed.out, "utf-8")
+    candidates = tmp_path / "c.json"
+    found = sieve("candidates", case, "-o", candidates, "--jobs", "1")
+    assert found.code == 0, found.err
+    assert "dX/F_Y" in found.out
+    done = sieve("run", case, "-c", candidates, "-o", tmp_path / "out", "--jobs", "1", "--bound", "150", "--json")
+    data = json.loads(done.out)
+    assert done.code == 0 and data["counts"]["open"] == 0
+    expected = 6 if name == "even_rank1" else 4
+    assert data["counts"]["rational"] == len(data["rational_points"]) == expected
+    assert data["statement"].startswith(f"X(Q) has exactly {expected} points")
+    assert sieve("check", tmp_path / "out" / "proof.jsonl").code == 0
+
+
+def test_own_variables_go_through_everything(tmp_path: Path) -> None:
+    curve = quartic_case("level13_split")
+    text = plane_case_text(curve.curve, "own", 3, curve.known_points)
+    equation = next(line for line in text.splitlines() if line.startswith("equation"))
+    changed = equation.translate(str.maketrans({"x": "u", "y": "v", "z": "w"})).replace("equation", "equation")
+    text = text.replace(equation, 'equation = ' + changed.split(" = ", 1)[1])
+    text = text.replace('["x", "y", "z"]', '["u", "v", "w"]')
+    case = tmp_path / "own.toml"
+    case.write_text(text, "utf-8")
+    write_plane_candidates(case, tmp_path / "c.json", 5, 4, 3)
+    done = sieve("run", case, "-c", tmp_path / "c.json", "-o", tmp_path / "out", "--jobs", "1", "--bound", "150")
+    assert done.code in (0, 1) and "u^3*v" in done.out
+    log = tmp_path / "out" / "proof.jsonl"
+    checked = sieve("check", log)
+    assert checked.code == 0 and "u^3*v" in checked.out
+    assert sieve("appendix", log, "-o", tmp_path / "a.md").code == 0
+    assert "(u : v : w)" in (tmp_path / "a.md").read_text("utf-8")
