@@ -1286,10 +1286,10 @@ class Zeros:
     with the right entries off the columns of the minor that satisfies this modulo p^M agrees with such an e
     modulo p^(M - s), s the valuation of the minor (Cramer), the logarithms integral and primitive.
 
-    Exactly known: for coordinates in which all exponents of the equation are even, changes of sign act on the
-    curve, on J(Q) (x) Q and on each x^i y^k dx / F_y, by a character.  When the logarithms of the r generators
-    have components of r characters, the other eigenspaces of J(Q) (x) Q are 0, and the differentials of the
-    other characters annihilate.
+    Exactly known: changes of sign of the coordinates in which all exponents of the equation are even act on
+    the curve, on J(Q) (x) Q, and by a character on each x^i y^k dx / F_y.  When the logarithms of the r
+    generators have components of r characters, the other eigenspaces of J(Q) (x) Q are 0, and the
+    differentials of the other characters annihilate.
     """
 
     def __init__(self, proof: Proof, record: dict[str, Any]) -> None:
