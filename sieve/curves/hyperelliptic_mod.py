@@ -187,9 +187,9 @@ class ReducedHyperelliptic:
         return self.affine_count
 
     @property
-    def fast_from(self) -> int:
-        """From this v on, sections through distinct points give the group."""
-        return 30 if self.genus <= 3 else 60
+    def plentiful(self) -> bool:
+        """Are there likely enough sections through distinct points to give the group?"""
+        return self.prime >= (30 if self.genus <= 3 else 60)
 
     @property
     def section_limit(self) -> int:

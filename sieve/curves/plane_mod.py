@@ -109,9 +109,13 @@ class ReducedPlane:
         return self.count
 
     @property
-    def fast_from(self) -> int:
-        """From this v on, lines through different points give the group: enough of them split."""
-        return {4: 48, 5: 160}.get(self.degree, 900)
+    def plentiful(self) -> bool:
+        """Are there likely enough lines that meet the curve in rational points, more than points?
+
+        About N^m / (m! v^(m-2)) of them for N points.
+        """
+        m, v, count = self.degree, self.prime, self.count
+        return v > 40 and 10 * count ** (m - 1) > 13 * factorial(m) * v ** (m - 2)
 
     @property
     def section_limit(self) -> int:

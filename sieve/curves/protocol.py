@@ -70,8 +70,8 @@ class ReducedCurve(Protocol):
         """Points with smaller numbers are drawn for sections."""
 
     @property
-    def fast_from(self) -> int:
-        """From this v on, sections through distinct points give the group."""
+    def plentiful(self) -> bool:
+        """Are there likely enough sections through distinct points to give the group?"""
 
     @property
     def section_limit(self) -> int:

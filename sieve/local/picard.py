@@ -6,7 +6,8 @@ one unknown zero define it as a short combination of the base; the others close 
 
 The group is proved complete by two facts.  Generation: if N_e = #X(F_{v^e}) > (2g-2) v^{e/2}, the places of
 degree dividing e generate Pic^0 (a nontrivial character constant on them would have a character sum N_e,
-but its L-polynomial has degree 2g-2 and inverse roots of size sqrt v; Weil 1948).  Index: the relations
+but its L-polynomial has degree 2g-2 and inverse roots of size sqrt v; Weil 1948).  So do all but k of these
+N_e points if N_e - 2 k is still larger than that.  Index: the relations
 found span a lattice whose index is a multiple of #J(F_v), and it is below twice a lower bound for #J(F_v),
 or equal to the exact order.
 """
@@ -14,6 +15,7 @@ or equal to the exact order.
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from math import isqrt
 
 import numpy as np
 from numpy.typing import NDArray
@@ -128,7 +130,7 @@ def picard_group(curve: ReducedCurve) -> PicardGroup:
         raise Uncertified(curve.prime, "no points modulo v")
     v, g = curve.prime, curve.genus
     generated = curve.count**2 > (2 * g - 2) ** 2 * v
-    if generated and v >= curve.fast_from:
+    if generated and curve.plentiful:
         group = _from_point_sections(curve)
         if group is not None:
             return group
@@ -325,7 +327,7 @@ def _finish(curve: ReducedCurve, state: _Definitions, group: FiniteQuotient, sec
 def _from_exact_sections(curve: ReducedCurve, generated: bool) -> PicardGroup:
     v, g = curve.prime, curve.genus
     counts = [curve.count]
-    higher_degree = 1
+    higher_degree, spare = 1, 0
     reason = "rational points generate (N > (2g-2) sqrt v)"
     if not generated:
         for degree in (2, 3):
@@ -335,6 +337,9 @@ def _from_exact_sections(curve: ReducedCurve, generated: bool) -> PicardGroup:
             if count * count > (2 * g - 2) ** 2 * v**degree:
                 higher_degree = degree
                 reason = f"places of degree dividing {degree} generate (N_{degree} > (2g-2) v^({degree}/2))"
+                # 2 k < N_e - (2g-2) v^(e/2), a place or a pair of conjugate ones being e or 2 e points
+                rest = count - isqrt((2 * g - 2) ** 2 * v**degree) - 1
+                spare = max(0, rest - 1) // (2 * degree * (2 if curve.involution else 1))
                 break
         else:
             raise Uncertified(v, "places of degree at most 3 are not known to generate J(F_v)")
@@ -349,7 +354,7 @@ def _from_exact_sections(curve: ReducedCurve, generated: bool) -> PicardGroup:
         counts += [curve.extension_count(e) for e in range(2, g + 1)]
         lower, exact = exact_order(curve, counts), True
     places = curve.places_of_degree(higher_degree) if higher_degree > 1 else []
-    closed = close_lattice(curve, places, lower, exact, curve.section_limit)
+    closed = close_lattice(curve, places, lower, exact, curve.section_limit, spare)
     if closed is None:
         raise Uncertified(v, "sections of low degree do not close the relation lattice")
     moduli = np.array(closed.invariants, dtype=np.int64)

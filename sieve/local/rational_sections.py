@@ -62,7 +62,7 @@ def present(group: PicardGroup) -> Presentation | None:
     if not group.rational_generation:
         return None
     found = None
-    if curve.prime >= curve.fast_from:
+    if curve.plentiful:
         found = _few_base_points(group)
     return found or _all_points_as_base(group)
 
