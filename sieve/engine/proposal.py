@@ -70,7 +70,8 @@ def propose(
     ((), 2, 1, ())
     """
     points = tuple(search_points(curve, SEARCH_HEIGHT))
-    size = 1 if points else largest
+    # lines are cheap to try
+    size = 1 if points and curve.weight > 1 else largest
     closed = _closed(curve, points, size)
     if points:
         base = Divisor.of([(1, RationalPlace(points[0]))])

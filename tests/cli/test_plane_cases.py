@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 import shutil
 import subprocess
+import tomllib
 from pathlib import Path
 
 import pytest
@@ -114,15 +115,58 @@ def test_inspect_and_advise(quartic: Path) -> None:
     assert done.code == 0 and json.loads(done.out)["advice"]
 
 
+GENERATED = {
+    "even_rank1": """[[jacobian.generators]]
+divisor = [[1, "(-1 : -2 : 1)"], [-1, "(-1 : 0 : 1)"]]
+[[jacobian.torsion]]
+order = 2
+divisor = [[1, { root_of = "t^2 + 1/4", point = "(-t : 1 : t - 1)" }],
+           [1, { root_of = "t^2 + 1/4", point = "(t : -1 : t - 1)" }], [-4, "(-1 : 0 : 1)"]]
+[[jacobian.torsion]]
+order = 8
+divisor = [[1, "(-1 : -2 : 1)"], [-2, "(-1 : 0 : 1)"], [1, "(1 : 2 : 1)"]]
+""",
+    "even_rank2": """[[jacobian.generators]]
+divisor = [[-1, "(-1 : -1 : 1)"], [1, "(-1 : 1 : 1)"]]
+[[jacobian.generators]]
+divisor = [[-1, "(-1 : -1 : 1)"], [1, "(1 : -1 : 1)"]]
+[[jacobian.torsion]]
+order = 4
+divisor = [[1, { root_of = "t^2 + 10/41*t + 9/41", point = "(2*t : -2 : 3*t + 1)" }], [-2, "(-1 : -1 : 1)"]]
+""",
+}
+"""What the proposals are."""
+
+
+def write_even(name: str, directory: Path) -> Path:
+    points, base = {
+        "even_rank1": (["(-1 : 0 : 1)", "(1 : 0 : 1)", "(-1 : -2 : 1)", "(-1 : 2 : 1)", "(1 : -2 : 1)",
+                        "(1 : 2 : 1)"], "(-1 : 0 : 1)"),
+        "even_rank2": (["(-1 : -1 : 1)", "(-1 : 1 : 1)", "(1 : -1 : 1)", "(1 : 1 : 1)"], "(-1 : -1 : 1)"),
+    }[name]  # fmt: skip
+    text = sketch(name, directory).read_text("utf-8")
+    text = text.replace("[curve]", f"known_points = {json.dumps(points)}\n[curve]")
+    path = directory / f"{name}.toml"
+    path.write_text(text + f'base = "{base}"\n' + GENERATED[name], "utf-8")
+    return path
+
+
+@pytest.mark.slow
 @pytest.mark.parametrize("name", sorted(EVEN))
-def test_from_an_equation_to_all_points(name: str, tmp_path: Path) -> None:
-    """Propose base and generators, find the zeros of annihilating integrals, decide them."""
-    proposed = sieve("inspect", sketch(name, tmp_path), "--propose", "--jobs", "1")
-    assert proposed.code == 0, proposed.err
-    case = tmp_path / "case.toml"
-    case.write_text(proposed.out, "utf-8")
-    candidates = tmp_path / "c.json"
-    found = sieve("candidates", case, "-o", candidates, "--jobs", "1")
+def test_proposals(name: str, tmp_path: Path) -> None:
+    done = sieve("inspect", sketch(name, tmp_path), "--propose", "--jobs", "1", "--json")
+    assert done.code == 0, done.err
+    found, expected = json.loads(done.out), tomllib.loads(write_even(name, tmp_path).read_text("utf-8"))
+    assert found["generators"] == [g["divisor"] for g in expected["jacobian"]["generators"]]
+    assert found["torsion"] == expected["jacobian"]["torsion"]
+    assert found["base"] == expected["jacobian"]["base"] and found["known_points"] == expected["known_points"]
+
+
+@pytest.mark.parametrize(("name", "prime"), [("even_rank1", "5"), ("even_rank2", "11")])
+def test_from_an_equation_to_all_points(name: str, prime: str, tmp_path: Path) -> None:
+    """Find the zeros of annihilating integrals, decide them."""
+    case, candidates = write_even(name, tmp_path), tmp_path / "c.json"
+    found = sieve("candidates", case, "-o", candidates, "--prime", prime, "--jobs", "1")
     assert found.code == 0, found.err
     assert "dX/F_Y" in found.out
     done = sieve("run", case, "-c", candidates, "-o", tmp_path / "out", "--jobs", "1", "--bound", "150", "--json")
