@@ -8,7 +8,7 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from pathlib import Path
 
-from sieve.commands import candidates
+from sieve.commands import candidates, propose
 from sieve.curves.divisors import Point
 from sieve.curves.protocol import Curve
 from sieve.files.resolve import read_case
@@ -93,6 +93,23 @@ def integral_discs(name: str, p: int) -> Case:
     return make
 
 
+def plane_zeros(equation: str, rank: int, p: int) -> Case:
+    """A plane curve, its base and generators proposed, with the candidates of linear Chabauty."""
+
+    def make(directory: Path) -> Path:
+        sketch = directory / "sketch.toml"
+        sketch.write_text(
+            f'format = "sieve-case/1"\nname = "quartic"\n[curve]\nequation = "{equation}"\n'
+            f'[jacobian]\nrank = {rank}\nrank_source = "the ranks of three elliptic quotients by PARI"\n',
+            "utf-8",
+        )
+        path = directory / "case.toml"
+        path.write_text(propose.text(propose.execute(str(sketch))), "utf-8")
+        return run_to(directory, path, [chabauty_list(path, p, 4)], bound=200)[1]
+
+    return make
+
+
 ZERO_CASES: dict[str, Case] = {
     "zeros": by_zeros("quadratic_period_5", 3, 5),
     "zeros_rank_zero": by_zeros("X1_13", 3, 4),
@@ -100,6 +117,8 @@ ZERO_CASES: dict[str, Case] = {
     "zeros_integral": by_zeros("quadratic_period_5", 5, 4, integral=True),
     "zeros_in_discs": by_zeros("X0_37", 5, 1, discs=True),
     "zeros_double": double_zeros,
+    "zeros_plane": plane_zeros("x^4 + y^4 - z^4 = 0", 0, 3),
+    "zeros_plane_rank_two": plane_zeros("x^4 + y^4 - z^4 - x^2*y^2 = 0", 2, 7),
     "integral_discs": integral_discs("integral_g2", 5),
 }
 """Names in data/proofs/accepted."""
