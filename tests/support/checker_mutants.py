@@ -78,13 +78,13 @@ def expected() -> list[tuple[bytes, tuple[int, int, str], str]]:
 
 
 def refusals(tree: ast.AST) -> Iterator[tuple[ast.stmt, str]]:
-    """Every `raise` and every call of `need`, with the reason code if it is spelt there."""
+    """Every `raise` and every call of `need` or `limit`, with the reason code if it is spelt there."""
     for node in ast.walk(tree):
         call: ast.expr | None = None
         if isinstance(node, ast.Raise):
             call = node.exc
         elif isinstance(node, ast.Expr) and isinstance(node.value, ast.Call):
-            if isinstance(node.value.func, ast.Name) and node.value.func.id == "need":
+            if isinstance(node.value.func, ast.Name) and node.value.func.id in ("need", "limit"):
                 call = node.value
         if isinstance(node, ast.Raise) or call is not None:
             texts = [a.value for a in getattr(call, "args", []) if isinstance(a, ast.Constant)]

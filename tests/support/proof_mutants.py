@@ -17,11 +17,11 @@ import json
 import random
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
-from fractions import Fraction
+from functools import cache
 from math import gcd, isqrt
 from typing import Any
 
-from sieve.proof.checker import Malformed, Proof, decode
+from sieve.proof.checker import STAGES, Malformed, Proof, decode
 from tests.support.corpus_edits import dump
 
 Records = list[Any]
@@ -188,14 +188,15 @@ def sample(data: bytes, count: int, seed: int) -> list[Mutant]:
 
 def statement(proof: Proof) -> Any:
     """What the theorem is about: curve, generators, candidates."""
-    places = [(m.u, m.w) for m in proof.places]
+    places = [(m.u, m.coordinates) for m in proof.places]
     candidates = [
         (c.prime, c.id, c.form, c.point, c.digits, c.multiplicity, c.coefficients, c.torsion)
         for c in proof.candidates.values()
     ]
     return (
-        proof.curve.f,
-        proof.curve.h,
+        proof.curve.rows,
+        proof.curve.weight,
+        proof.integral,
         proof.rank,
         proof.base,
         proof.torsion,
@@ -208,7 +209,7 @@ def statement(proof: Proof) -> Any:
 def claims(proof: Proof) -> Any:
     """What is said about it."""
     fates = [(c.prime, c.id, c.verdict, c.points, c.sole) for c in proof.fates]
-    return fates, proof.count, proof.conclusion, sorted(proof.points)
+    return fates, proof.count, proof.conclusion, sorted(proof.points), sorted(proof.zeros)
 
 
 def premises(proof: Proof) -> set[tuple[str, Any]]:
@@ -216,30 +217,37 @@ def premises(proof: Proof) -> set[tuple[str, Any]]:
     return {(name, record.get("at_most")) for name, record in proof.premises.items()}
 
 
-def rational_points(f: list[int], h: list[int], genus: int, height: int = 60) -> list[tuple[int, int, int]]:
-    """Rational points with |X|, Z <= height, weighted coordinates."""
-    f = f + [0] * (2 * genus + 3 - len(f))
-    h = h + [0] * (genus + 2 - len(h))
-    out = []
+@cache
+def rational_points(form: tuple[tuple[int, ...], ...], weight: int) -> list[tuple[int, int, int]]:
+    """Rational points of small height in normal form, by trying X and Z."""
+    height, out = (12, []) if weight == 1 else (60, [])
     for z in range(height + 1):
-        for x in range(-height, height + 1) if z else [1]:
-            if gcd(x, z) != 1:
-                continue
-            top = sum(c * x**i * z ** (2 * genus + 2 - i) for i, c in enumerate(f))
-            middle = sum(c * x**i * z ** (genus + 1 - i) for i, c in enumerate(h))
-            square = middle * middle + 4 * top
-            if square < 0 or isqrt(square) ** 2 != square:
-                continue
-            for root in {isqrt(square), -isqrt(square)}:
-                y = Fraction(root - middle, 2)
-                if y.denominator == 1:
-                    out.append((x, int(y), z))
+        for x in range(-height, height + 1):
+            coefficients = [0] * (1 + max(k for _, _, k, _ in form))
+            for c, i, k, j in form:
+                coefficients[k] += c * x**i * z**j
+            if weight == 1:
+                options = list(range(-height, height + 1))
+            else:
+                c, b, _ = coefficients
+                root = isqrt(max(0, b * b - 4 * c))
+                options = sorted({(sign * root - b) // 2 for sign in (1, -1)})
+            for y in options:
+                if sum(c * y**k for k, c in enumerate(coefficients)) == 0 and _normal(x, y, z, weight):
+                    out.append((x, y, z))
     return out
+
+
+def _normal(x: int, y: int, z: int, weight: int) -> bool:
+    if gcd(x, z) != 1 if weight > 1 else gcd(x, y, z) != 1:
+        return False
+    return z > 0 or (x == 1 if weight > 1 else x > 0 or (x == 0 and y == 1))
 
 
 def agrees_with_points(proof: Proof) -> bool:
     """No rational point lies in an eliminated candidate, and a conclusion names all points."""
-    known = rational_points(proof.curve.f, proof.curve.h, proof.curve.genus)
+    known = rational_points(tuple(proof.curve.form), proof.curve.weight)
+    known = [point for point in known if point[2] == 1 or not proof.integral]
     for c in proof.fates:
         if c.verdict == "eliminated" and c.point is not None and c.form != "coefficients":
             for point in known:
@@ -257,7 +265,8 @@ def claims_less(original: Proof, mutant: Proof) -> bool:
         if not weaker or (new.sole and not old.sole):
             return False
     same_end = (mutant.conclusion, sorted(mutant.points)) == (original.conclusion, sorted(original.points))
-    return mutant.count in (None, original.count) and (mutant.conclusion == "none" or same_end)
+    fewer = mutant.count in (None, original.count) and set(mutant.zeros) <= set(original.zeros)
+    return fewer and (mutant.conclusion == "none" or same_end)
 
 
 class Replay:
@@ -285,7 +294,7 @@ class Replay:
             raise Malformed("cut", "the last line has no end")
         for line in lines[start:-1]:
             proof.read(decode(line))
-        if proof.stage != len(Proof.ORDER) - 1:
+        if proof.stage != STAGES["end"]:
             raise Malformed("no-end", "the log has no end")
         return proof
 
