@@ -156,8 +156,8 @@ def recognise_algebraic(curve: Curve, prime: int,
     """The algebraic point of degree 2 to 4 that a p-adic point agrees with to all its digits, if one of small
     height is found.
 
-    Arguments: weighted p-adic coordinates of the model, integral, Z or X a unit (on a plane curve: one of them
-    a unit).  Rational points are not looked for.
+    Arguments: weighted p-adic coordinates of the model, integral, Z or X a unit (on a plane curve: one of
+    the three).  Rational points are not looked for.
     """
     if curve.weight == 1:
         return _on_plane_curve(curve, prime, coordinates)

@@ -65,7 +65,8 @@ def quartic_problem(case: QuarticCase) -> Problem:
 
 
 def plane_case_text(
-    curve: Curve, name: str, rank: int, points: Sequence[Point], more: str = 'generators_from = "known_points"'
+    curve: Curve, name: str, rank: int, points: Sequence[Point],
+    more: str = 'generators_from = "known_points"',
 ) -> str:
     """A case file with the first point as base."""
     known = json.dumps([curve.format_point(p) for p in points])
