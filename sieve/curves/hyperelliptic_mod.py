@@ -552,6 +552,10 @@ class ReducedHyperelliptic:
             t = t + vanishing * self._poly(rng.integers(0, v, size - len(values)).tolist())
         return t
 
+    def split_sections(self) -> None:
+        """None: there are far too many sections to list them."""
+        return None
+
     def through(self, points: Sequence[int]) -> flint.nmod_poly:
         """c for the section y = c(x) through the first g + 2 of these points (affine, distinct x)."""
         first = points[: self.genus + 2]

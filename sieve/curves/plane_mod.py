@@ -276,6 +276,28 @@ class ReducedPlane:
                     split[low + rows] = True
         return s, t, split
 
+    def split_sections(self) -> IntArray | None:
+        """All lines that meet the curve in m different rational points, int64, shape (L, m); None for m = 4.
+
+        Every pair of points gives a line; those that m (m - 1) / 2 pairs give are the ones.
+        """
+        m, v = self.degree, self.prime
+        if m == 4:
+            return None
+        first, second = np.triu_indices(self.count, 1)
+        (a, b, c), (d, e, f) = self.coordinates[first].T, self.coordinates[second].T
+        line = np.stack([b * f - c * e, c * d - a * f, a * e - b * d], axis=1) % v
+        x, y, z = line.T
+        lead = np.where(z != 0, z, np.where(x != 0, x, y))
+        codes = self._code(line * self._inverse[lead][:, None] % v)
+        order = np.argsort(codes, kind="stable")
+        codes = codes[order]
+        starts = np.flatnonzero(np.diff(codes, prepend=-1))
+        pairs = np.diff(starts, append=len(codes))
+        # in the order of a stable sort, the first m - 1 pairs contain the first point
+        rows = order[starts[pairs == m * (m - 1) // 2][:, None] + np.arange(m - 1)]
+        return np.concatenate([first[rows[:, :1]], second[rows]], axis=1).astype(np.int64)
+
     def through(self, points: Sequence[int]) -> Form:
         """The line through the first two of these points, which are different."""
         (a, b, c), (d, e, f) = self.points[points[0]], self.points[points[1]]

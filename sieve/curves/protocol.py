@@ -95,6 +95,9 @@ class ReducedCurve(Protocol):
     def residuals(self, choice: IntArray) -> IntArray:
         """The other zeros of sections through usable rows, one row each; -1 where not all are rational."""
 
+    def split_sections(self) -> IntArray | None:
+        """All sections with distinct rational zeros, one row each, where they are few; else None."""
+
     # ---- single sections ---------------------------------------------------------------------------
 
     def through(self, points: Sequence[int]) -> Any:

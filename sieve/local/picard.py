@@ -7,7 +7,7 @@ one unknown zero define it as a short combination of the base; the others close 
 The group is proved complete by two facts.  Generation: if N_e = #X(F_{v^e}) > (2g-2) v^{e/2}, the places of
 degree dividing e generate Pic^0 (a nontrivial character constant on them would have a character sum N_e,
 but its L-polynomial has degree 2g-2 and inverse roots of size sqrt v; Weil 1948).  So do all but k of these
-N_e points if N_e - 2 k is still larger than that.  Index: the relations
+N_e points if N_e - 2 k is larger than that, too.  Index: the relations
 found span a lattice whose index is a multiple of #J(F_v), and it is below twice a lower bound for #J(F_v),
 or equal to the exact order.
 """
@@ -26,6 +26,7 @@ from sieve.errors import InternalError, Uncertified
 from sieve.exact.abelian import FiniteQuotient, quotient_by
 from sieve.local.exact_sections import close_lattice
 from sieve.local.order_bounds import exact_order, order_lower_bound
+from sieve.local.peeling import combinations, peel
 
 IntArray = NDArray[np.int64]
 
@@ -38,8 +39,8 @@ class PicardGroup:
     """J(F_v) with the classes of all rational points.
 
     `invariants`: invariant factors > 1, each dividing the next.  `point_logs`: int64 (large groups: object),
-    shape (N, len(invariants)), the class of P - P0 for every point in the curve's numbering.  `unit_log`: the class
-    of U (the fibre or section class). `reason` says how completeness was proved; `rational_generation`,
+    shape (N, len(invariants)), the class of P - P0 for every point in the curve's numbering.  `unit_log`: the
+    class of U (the fibre or section class). `reason` says how completeness was proved; `rational_generation`,
     whether rational points alone are known to generate; `distinct_points`, whether sections through distinct
     points sufficed.
     """
@@ -131,7 +132,8 @@ def picard_group(curve: ReducedCurve) -> PicardGroup:
     v, g = curve.prime, curve.genus
     generated = curve.count**2 > (2 * g - 2) ** 2 * v
     if generated and curve.plentiful:
-        group = _from_point_sections(curve)
+        sections = curve.split_sections()
+        group = _from_point_sections(curve) if sections is None else _from_all_sections(curve, sections)
         if group is not None:
             return group
     return _from_exact_sections(curve, generated)
@@ -319,6 +321,40 @@ def _finish(curve: ReducedCurve, state: _Definitions, group: FiniteQuotient, sec
         sections_used=sections,
         distinct_points=True,
     )
+
+
+def _from_all_sections(curve: ReducedCurve, sections: IntArray) -> PicardGroup | None:
+    """The group from all sections with distinct rational zeros, where every point is its own orbit."""
+    lower = order_lower_bound(curve.prime, curve.genus, curve.count)
+    plan = peel(sections, curve.count)
+    # the first base point is P0, whose class is 0
+    columns = {point: k for k, point in enumerate(plan.base[1:], start=1)}
+    width = len(plan.base)
+    points = combinations(sections, plan, columns, width, curve.section_units)
+    rows = [points[sections[k]].sum(axis=0) for k in plan.rest[: 3 * width + 40]]
+    for row in rows:
+        row[0] -= curve.section_units
+    distinct = sorted({tuple(int(c) for c in row) for row in rows if row.any()})
+    closing = sorted(distinct, key=lambda row: sum(map(abs, row)))
+    for take in (width + 6, width + 30, len(closing)):
+        group = quotient_by(width, closing[: min(take, len(closing))]) if len(closing) >= width else None
+        if group is None or group.order >= 2 * lower:
+            continue
+        if group.order < lower:
+            raise InternalError(f"v = {curve.prime}: index {group.order} below the Weil bound {lower}")
+        kind = object if group.invariants and group.invariants[-1] > SMALL_INVARIANT else np.int64
+        logs = [group.reduce([int(c) for c in row]) for row in points]
+        return PicardGroup(
+            curve,
+            group.invariants,
+            group.order,
+            np.array(logs, dtype=kind).reshape(curve.count, len(group.invariants)),
+            group.coordinates[0],
+            "rational points generate (N > (2g-2) sqrt v); index below twice the Weil bound",
+            sections_used=len(sections),
+            distinct_points=True,
+        )
+    return None
 
 
 # ---- small v: exact divisors of sections, contact orders and places of higher degree ----------------

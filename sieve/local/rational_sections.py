@@ -19,6 +19,7 @@ from sieve.curves.divisors import Place
 from sieve.curves.protocol import ReducedCurve, Rows
 from sieve.errors import InternalError
 from sieve.exact.abelian import quotient_by
+from sieve.local.peeling import combinations, peel
 from sieve.local.picard import PicardGroup
 
 IntArray = NDArray[np.int64]
@@ -63,7 +64,8 @@ def present(group: PicardGroup) -> Presentation | None:
         return None
     found = None
     if curve.plentiful:
-        found = _few_base_points(group)
+        sections = curve.split_sections()
+        found = _few_base_points(group) if sections is None else _peeled(group, sections)
     return found or _all_points_as_base(group)
 
 
@@ -166,6 +168,33 @@ def _choose(
         if take >= len(rows):
             return None
         take += max(2, take // 8)
+
+
+def _peeled(group: PicardGroup, sections: IntArray) -> Presentation | None:
+    """From all sections with distinct rational zeros, where every point is its own orbit."""
+    curve = group.curve
+    plan = peel(sections, curve.count)
+    # the base of the group itself: P0 comes first
+    if plan.base[0] != _origin(group):
+        return None
+    columns = {point: k for k, point in enumerate(plan.base[1:], start=1)}
+    width = len(plan.base)
+    points = combinations(sections, plan, columns, width, curve.section_units)
+    closing: dict[tuple[int, ...], int] = {}
+    for number in plan.rest[: 3 * width + 40]:
+        row = points[sections[number]].sum(axis=0)
+        row[0] -= curve.section_units
+        if row.any():
+            closing.setdefault(tuple(int(c) for c in row), number)
+    rows = list(closing)
+    chosen = _choose(group, width, (), rows) if len(rows) >= width else None
+    if chosen is None:
+        return None
+    define = tuple(_section(curve, sections[number]) for number, _ in plan.steps)
+    close = tuple(_section(curve, sections[closing[rows[k]]]) for k in chosen)
+    for section in (*define, *close):
+        _check(group, section.zeros, section.multiple)
+    return Presentation(plan.base[0], plan.base[1:], define, close)
 
 
 def _few_base_points(group: PicardGroup) -> Presentation | None:

@@ -321,7 +321,8 @@ def test_places_of_degree_two_and_three() -> None:
                 places = reduced.places_of_degree(e)
                 assert len(set(places)) == len(places)
                 assert e * len(places) + reduced.count == reduced.extension_count(e)
-                assert all(len(place[0]) == e + 1 and reduced.higher_partner(place) == place for place in places)
+                assert all(len(place[0]) == e + 1 for place in places)
+                assert all(reduced.higher_partner(place) == place for place in places)
 
 
 def test_reduction_of_places() -> None:
