@@ -2102,7 +2102,8 @@ def statement(proof: Proof) -> str:
     for c in proof.fates:
         if c.verdict == "rational":
             where = ", ".join(map(point_words, c.points))
-            alone = f", the only {kind} point{'s' * (len(c.points) > 1)} there" if c.sole else ""
+            shown = c.sole and (c.proved or f"complete {c.prime}" in proof.premises)
+            alone = f", the only {kind} point{'s' * (len(c.points) > 1)} there" if shown else ""
             out.append(f"Candidate {c.id} (p = {c.prime}) agrees with {where}{alone}.")
     for p in sorted(proof.zeros):
         how = "zeros of annihilating integrals are counted"

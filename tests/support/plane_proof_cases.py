@@ -12,13 +12,15 @@ from tests.support.reference_cases import reference_case
 from tests.support.run_files import run_to, write_candidates, write_case, write_json
 
 
-def _quartic(name: str, p: int, digits: int, count: int, seed: int) -> Callable[[Path], Path]:
+def _quartic(
+    name: str, p: int, digits: int, count: int, seed: int, *, complete: bool = True
+) -> Callable[[Path], Path]:
     """A quartic of the reference data with its known points and random ones."""
 
     def make(directory: Path) -> Path:
         case = write_quartic(quartic_case(name), directory)
         candidates = directory / "candidates.json"
-        write_plane_candidates(case, candidates, p, digits, count, seed=seed)
+        write_plane_candidates(case, candidates, p, digits, count, complete=complete, seed=seed)
         return run_to(directory, case, [candidates], bound=250)[1]
 
     return make
@@ -70,6 +72,7 @@ def _integral(directory: Path) -> Path:
 PLANE_CASES: dict[str, Callable[[Path], Path]] = {
     "plane_points": _quartic("level13_split", 5, 3, 6, 2),
     "plane_at_three": _quartic("X0p239", 3, 3, 6, 2),
+    "plane_incomplete": _quartic("X0p113", 5, 3, 6, 2, complete=False),
     "plane_closed_place": _closed_place,
     "plane_discs": _klein,
     "integral_points": _integral,
