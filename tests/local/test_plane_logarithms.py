@@ -10,8 +10,9 @@ from itertools import combinations
 import flint
 import pytest
 
+from sieve.curves.algebras import fractions_of, rational_poly
 from sieve.curves.discs import differentials
-from sieve.curves.divisors import Divisor, Place, RationalPlace
+from sieve.curves.divisors import ClosedPlace, Divisor, Place, RationalPlace
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.curves.plane import PlaneCurve
 from sieve.errors import BadReduction, PrecisionLost, Uncertified
@@ -175,6 +176,31 @@ def test_multiples_of_places_are_used(seed: int, p: int, k: int, monkeypatch: py
     first, second = (integrals.log_place(place) for place in places)
     assert (first + second).is_zero and min(first.precision, second.precision) >= DIGITS
     assert used == {k} and not first.is_zero
+
+
+def test_places_may_be_written_in_many_ways() -> None:
+    """t replaced by t / p and coordinates scaled by a function: the same points, with denominators at p."""
+    integrals = integrals_of("X0p97", 7)
+    assert integrals is not None
+    (curve, points), rng, checked = quartics()["X0p97"], random.Random(4), 0
+    for _ in range(12):
+        for _, place in random_line(curve, points, rng):
+            if not isinstance(place, ClosedPlace):
+                continue
+            try:
+                expected = integrals.log_place(place)
+            except BadReduction:
+                continue
+            parts = (place.u, place.x, place.y, place.z)
+            u, *coordinates = ([c * Fraction(7) ** i for i, c in enumerate(part)] for part in parts)
+            scaled = [fractions_of(rational_poly(c) * rational_poly([1, 2]) / 7) for c in coordinates]
+            try:
+                other = curve.closed_point(u, *scaled)
+                assert integrals.log_place(other).agrees(expected)
+                checked += 1
+            except BadReduction:
+                continue
+    assert checked >= 5
 
 
 def test_logarithms_of_line_sections_are_not_all_zero() -> None:

@@ -8,6 +8,7 @@ import flint
 import pytest
 
 from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.protocol import Curve
 from sieve.errors import InternalError
 from sieve.exact.lattice import hermite
 from sieve.exact.series import polynomial
@@ -16,6 +17,7 @@ from sieve.local.disc_integrals import DiscIntegrals
 from sieve.local.effective import EffectiveRelations, unit_vectors
 from sieve.local.picard import picard_group
 from sieve.local.supported_sections import SupportedSection, find_section, relation_lattice, scheme_of
+from tests.support.quartics import quartics
 
 X0_67 = HyperellipticCurve([1, -4, 2, -2, 1, 2, 1])
 CURVES = [
@@ -87,8 +89,11 @@ def test_sections_have_the_prescribed_zeros(curve: HyperellipticCurve, p: int) -
     assert checked
 
 
-@pytest.mark.parametrize(("curve", "p"), CURVES)
-def test_effective_relations_span_all_relations(curve: HyperellipticCurve, p: int) -> None:
+PLANE = [(quartics()[name][0], p) for name, p in (("X0p97", 3), ("X0p97", 7), ("X0p151", 3), ("X0p113", 5))]
+
+
+@pytest.mark.parametrize(("curve", "p"), [*CURVES, *PLANE])
+def test_effective_relations_span_all_relations(curve: Curve, p: int) -> None:
     """The index of the effective vectors in Z^n equals that of the kernel of the class map."""
     group = picard_group(curve.modulo(p))
     integrals = DiscIntegrals(curve, group.curve)
@@ -97,6 +102,38 @@ def test_effective_relations_span_all_relations(curve: HyperellipticCurve, p: in
     assert all(n >= 0 for row in basis.rows for n in row)
     rows = hermite([*basis.rows, *basis.relations.units])
     assert rows == hermite(everything)
+
+
+@pytest.mark.parametrize(("curve", "p"), PLANE)
+def test_sections_of_plane_curves(curve: Curve, p: int) -> None:
+    """Forms of degree 1 and more have the prescribed zeros and no others; units are all split lines."""
+    group = picard_group(curve.modulo(p))
+    integrals = DiscIntegrals(curve, group.curve)
+    for row in relation_basis(integrals, group).rows:
+        section = find_section(integrals.discs, integrals.model, row)
+        orders = [disc.order(section.rows, section.multiple, 40) for disc in integrals.discs]
+        assert orders == list(row) and sum(orders) == 4 * section.multiple
+    lines = {
+        tuple(disc.order([[c, a], [b]], 1, 5) for disc in integrals.discs)
+        for a, b, c in product(range(p), repeat=3) if (a, b, c) != (0, 0, 0)
+    }
+    assert set(unit_vectors(integrals.discs, integrals.model)) == {v for v in lines if sum(v) == 4}
+
+
+@pytest.mark.parametrize(("curve", "p"), [*CURVES[1:], *PLANE])
+def test_relations_that_avoid_discs(curve: Curve, p: int) -> None:
+    group = picard_group(curve.modulo(p))
+    integrals = DiscIntegrals(curve, group.curve)
+    discs, model = integrals.discs, integrals.model
+    units = unit_vectors(discs, model)
+    for avoid in ({0}, {0, len(discs) - 1}):
+        relations = EffectiveRelations(discs, model, group, units, avoid)
+        for vector in relations.relations:
+            for least in (0, 20):
+                found = relations.effective(vector, least)
+                assert min(found) >= 0 and not any(found[i] for i in avoid) and sum(found) >= least
+                # the class is a multiple of U still: there is a section
+                find_section(discs, model, found)
 
 
 def test_a_section_through_a_divisor_vanishes_on_it() -> None:
