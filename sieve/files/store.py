@@ -16,13 +16,11 @@ from pathlib import Path
 from typing import TypeVar
 from urllib.parse import quote
 
-import numpy as np
-
 from sieve.curves.divisors import Divisor
 from sieve.curves.protocol import Curve
 from sieve.errors import InputError
 from sieve.local.quick_order import QuickOrder
-from sieve.local.records import LocalRecord
+from sieve.local.records import LocalRecord, class_bytes, classes_from_bytes
 
 SCHEMA = 3
 _MAGIC = "residue-sieve local data"
@@ -213,7 +211,7 @@ def _digest(key: str, prime: int, text: str, allowed: bytes) -> bytes:
 
 
 def _encode(record: LocalRecord) -> tuple[str, bytes]:
-    """The record as text and its classes as little-endian int64."""
+    """The record as text and its classes as bytes."""
     text = json.dumps(
         {
             "prime": record.prime,
@@ -228,19 +226,18 @@ def _encode(record: LocalRecord) -> tuple[str, bytes]:
         },
         separators=(",", ":"),
     )
-    return text, np.ascontiguousarray(record.allowed, dtype="<i8").tobytes()
+    return text, class_bytes(record)
 
 
 def _decode(text: str, allowed: bytes) -> LocalRecord:
     data = json.loads(text)
-    classes = np.frombuffer(allowed, dtype="<i8").astype(np.int64)
     return LocalRecord(
         data["prime"],
         data["points"],
         data["order"],
         tuple(data["invariants"]),
         tuple(tuple(row) for row in data["images"]),
-        classes.reshape(data["count"], len(data["invariants"])),
+        classes_from_bytes(allowed, data["count"], data["invariants"]),
         data["reason"],
         data["skipped"],
         data["expressible"],

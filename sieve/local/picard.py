@@ -14,9 +14,11 @@ or equal to the exact order.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from math import isqrt
 
+import flint
 import numpy as np
 from numpy.typing import NDArray
 
@@ -336,8 +338,10 @@ def _from_all_sections(curve: ReducedCurve, sections: IntArray) -> PicardGroup |
         row[0] -= curve.section_units
     distinct = sorted({tuple(int(c) for c in row) for row in rows if row.any()})
     closing = sorted(distinct, key=lambda row: sum(map(abs, row)))
+    if len(closing) < width or _rank(closing) < width:
+        return None  # some point is on too few lines
     for take in (width + 6, width + 30, len(closing)):
-        group = quotient_by(width, closing[: min(take, len(closing))]) if len(closing) >= width else None
+        group = quotient_by(width, closing[: min(take, len(closing))])
         if group is None or group.order >= 2 * lower:
             continue
         if group.order < lower:
@@ -355,6 +359,12 @@ def _from_all_sections(curve: ReducedCurve, sections: IntArray) -> PicardGroup |
             distinct_points=True,
         )
     return None
+
+
+def _rank(rows: Sequence[Sequence[int]]) -> int:
+    """The rank modulo a large prime: at most that of the rows."""
+    p = 2**61 - 1
+    return int(flint.nmod_mat(len(rows), len(rows[0]), [c % p for row in rows for c in row], p).rank())
 
 
 # ---- small v: exact divisors of sections, contact orders and places of higher degree ----------------

@@ -26,10 +26,11 @@ class LocalRecord:
     """What is known at the good prime `prime`, or why nothing is.
 
     Fields: `points`, #X(F_v) (-1 when not counted); `order`, `invariants` of J(F_v); `images`, one row for
-    every divisor of degree 0 that was asked for, in the product of Z/invariants[i]; `allowed`, int64, shape
-    (count, len(invariants)), the classes of P - B for P in X(F_v), distinct and sorted; `reason`, how
-    completeness was proved; `skipped`, when not empty, says why the prime is not used, and then the other
-    fields are empty; `expressible`, whether sections with rational zeros prove all this, as proof logs need.
+    every divisor of degree 0 that was asked for, in the product of Z/invariants[i]; `allowed`, int64 (object
+    for large groups), shape (count, len(invariants)), the classes of P - B for P in X(F_v), distinct and
+    sorted; `reason`, how completeness was proved; `skipped`, when not empty, says why the prime is not used,
+    and then the other fields are empty; `expressible`, whether sections with rational zeros prove all this,
+    as proof logs need.
     """
 
     prime: int
@@ -51,6 +52,27 @@ class LocalRecord:
         """The condition at v; `images` (of the generators of L) defaults to the images in the record."""
         rows = self.images if images is None else tuple(tuple(row) for row in images)
         return Condition(f"v = {self.prime}", self.prime, self.invariants, rows, self.allowed)
+
+
+def class_bytes(record: LocalRecord) -> bytes:
+    """The allowed classes as little-endian signed integers of one size, 8 bytes or as many as are needed."""
+    size = _entry_size(record.invariants)
+    if size == 8:
+        return np.ascontiguousarray(record.allowed.astype(np.int64), dtype="<i8").tobytes()
+    return b"".join(int(c).to_bytes(size, "little", signed=True) for row in record.allowed for c in row)
+
+
+def classes_from_bytes(data: bytes, count: int, invariants: Sequence[int]) -> NDArray[np.int64]:
+    """The array that `class_bytes` wrote down."""
+    shape, size = (count, len(invariants)), _entry_size(invariants)
+    if size == 8:
+        return np.frombuffer(data, dtype="<i8").astype(np.int64).reshape(shape)
+    entries = [int.from_bytes(data[k : k + size], "little", signed=True) for k in range(0, len(data), size)]
+    return np.array(entries, dtype=object).reshape(shape)
+
+
+def _entry_size(invariants: Sequence[int]) -> int:
+    return 8 * (1 + (invariants[-1].bit_length() // 64 if invariants else 0))
 
 
 def _skip(v: int, reason: str, points: int = -1) -> LocalRecord:
