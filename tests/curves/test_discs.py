@@ -7,6 +7,7 @@ import pytest
 from sieve.curves.discs import ResidueDisc
 from sieve.errors import InternalError
 from sieve.exact.series import coefficients, evaluate_at, polynomial
+from tests.support.quartics import quartics
 
 # (f, h, genus, p): even and odd degree, h zero and not, p = 2, rational and ramified points at infinity
 CURVES = [
@@ -125,3 +126,35 @@ def test_sections_restrict_to_their_values() -> None:
 def test_the_numbering_of_discs_is_checked() -> None:
     with pytest.raises(InternalError):
         ResidueDisc([[-1, 0, 0, 0, 0, -1], [], [1]], 3, 6, 7, (0, 3, 1), 0)
+
+
+# ---- plane curves ----------------------------------------------------------------------------------------
+
+
+def plane_discs(name: str, p: int) -> list[ResidueDisc]:
+    curve = quartics()[name][0]
+    return [ResidueDisc(curve.rows, 1, 4, p, point, i) for i, point in enumerate(curve.modulo(p).points)]
+
+
+@pytest.mark.parametrize(("name", "p"), [("X0p97", 2), ("X0p97", 3), ("X0p113", 5), ("level13_split", 7)])
+def test_discs_of_plane_curves(name: str, p: int) -> None:
+    """Points of every disc: on the curve (as a form), in the disc, with the parameter they were made from."""
+    curve = quartics()[name][0]
+    kinds = set()
+    for disc in plane_discs(name, p):
+        kinds.add((disc.chart, disc.ramified))
+        series = disc.expansion(7, 10)
+        parameter = series.b if disc.ramified else series.a
+        assert coefficients(parameter, 10)[1:] == [1] + [0] * 8
+        assert disc.centre(5)[disc.ramified] == disc.residue[disc.ramified]
+        for t in (0, p, 3 * p, p**3):
+            a, b = disc.coordinates(t, 7)
+            x, y, z = disc.weighted(a, b)
+            assert tuple(c % p for c in (x, y, z)) == disc.point
+            assert sum(c * x**i * y**j * z**k for (i, j, k), c in curve.terms.items()) % p**7 == 0
+            assert disc.parameter(a, b, 7) == t
+            assert (a - int(series.a(t))) % p**7 == 0 and (b - int(series.b(t))) % p**7 == 0
+            # 2 x^2 + x y - 3 y z + z^2 as a form of degree 2
+            form = disc.restrict([[1, 0, 2], [-3, 1]], 2, 7, 10)
+            assert (int(form(t)) - (2 * x * x + x * y - 3 * y * z + z * z)) % p**7 == 0
+    assert {chart for chart, _ in kinds} >= {"z", "x"} and any(ramified for _, ramified in kinds)
