@@ -37,7 +37,7 @@ MAX_LINE, MAX_FILE, MAX_DEPTH, MAX_DIGITS = 4_000_000, 400_000_000, 8, 4000
 MAX_RECORDS, MAX_CLASSES, MAX_PRIME, MAX_ELL = 50_000, 400_000, 2**20, 2**64
 MAX_GENUS, MAX_RANK, MAX_BASE, MAX_TERMS, MAX_BITS, MAX_FIELD = 12, 60, 400, 5000, 4000, 200_000
 MAX_MULTIPLE, MAX_PLACES, MAX_HEIGHT, MAX_SERIES = 60, 100, 200_000, 400_000
-MAX_WORK = 3 * 10**9
+MAX_ENTRIES, MAX_WORK = 20_000_000, 3 * 10**9
 """Elementary steps, about a microsecond each."""
 LARGE_PRIMES = (2**61 - 1, 2**89 - 1, 2**107 - 1)
 """What holds modulo one of these holds over Q: smoothness, independence."""
@@ -941,26 +941,28 @@ class Local:
         need(all(b % a == 0 for a, b in zip(self.moduli, self.moduli[1:])), "invariants",
              "the invariants do not divide each other")
         self.unit = self.element(unit)
-        self.column: dict[int, int | tuple[int, Row]] = {}
-        self.vectors: dict[int, Row] = {}
-        self.learn(integer(origin, 0, self.points - 1), [0] * len(self.moduli), 0)
         limit(len(items(base)) <= MAX_BASE, f"more than {MAX_BASE} base points")
         self.width = 1 + len(base)
+        limit(self.width * self.points <= MAX_ENTRIES, "too many points in terms of the base")
+        self.vectors: dict[int, Row] = {}
+        self.learn(integer(origin, 0, self.points - 1), [0] * len(self.moduli), [0] * self.width)
+        generators = [self.unit]
         for k, entry in enumerate(base, start=1):
             i, log = items(entry, 2)
             need(integer(i, 0, self.points - 1) not in self.logs, "base", f"base point {i} is known before")
-            self.learn(i, self.element(log), k)
+            self.learn(i, self.element(log), [int(j == k) for j in range(self.width)])
+            generators.append(self.logs[i])
         for entry in items(define):
             n, zeros = self.section(entry)
             unknown = [i for i in zeros if i not in self.logs]
             need(len(unknown) == 1, "define", f"{len(unknown)} unknown zeros, expected 1")
             known = [i for i in zeros if i in self.logs]
-            self.learn(unknown[0], self.rest(n, known), (n, known))
+            self.learn(unknown[0], self.rest(n, known), self.vector(n, known))
         need(len(self.logs) == self.points, "undefined-point", "some point of X(F_v) has no class")
         relations = [self.relation(*self.section(entry)) for entry in items(close)]
         own = (i for i in range(self.points) if self.reduction.conjugate(i) == i)
         relations += [self.relation(1, [i, i]) for i in own]
-        self.certify(relations, integer(counts))
+        self.certify(generators, relations, integer(counts))
         for k, entry in enumerate(items(places, len(proof.places))):
             number, *entry = items(entry, 3)
             need(integer(number) == k, "place-order", "the places are not listed in their order")
@@ -996,47 +998,32 @@ class Local:
         """The class of n U less the zeros."""
         return self.sum([(n, self.unit), *((-1, self.logs[i]) for i in zeros)])
 
-    def learn(self, i: int, log: Row, origin: int | tuple[int, Row]) -> None:
+    def vector(self, n: int, zeros: Row) -> Row:
+        """n U less some points in the columns (U, base points); the origin is 0."""
+        row = [n] + [0] * (self.width - 1)
+        self.curve.work.spend(len(zeros) * self.width // 10)
+        for i in zeros:
+            row = plus(row, self.vectors[i], -1)
+        limit(not max(map(abs, row)) >> MAX_BITS, "points far from the base")
+        return row
+
+    def learn(self, i: int, log: Row, vector: Row) -> None:
         """Enter a point and its conjugate: the class, and how it is expressed in the columns."""
-        self.logs[i], self.column[i] = log, origin
+        self.logs[i], self.vectors[i] = log, vector
         other = self.reduction.conjugate(i)
         if other is not None and other != i:
-            self.logs[other], self.column[other] = self.rest(1, [i]), (1, [i])
-
-    def vector(self, i: int) -> Row:
-        """A point in the columns (U, base points); the origin is 0."""
-        todo = [i]
-        while todo:
-            j, origin = todo[-1], self.column[todo[-1]]
-            if type(origin) is int:
-                self.vectors[j] = [int(origin == k > 0) for k in range(self.width)]
-            elif type(origin) is tuple:
-                n, known = origin
-                missing = [k for k in known if k not in self.vectors]
-                if missing:
-                    todo += missing
-                    continue
-                row = [n] + [0] * (self.width - 1)
-                for k in known:
-                    row = plus(row, self.vectors[k], -1)
-                self.vectors[j] = row
-                limit(not max(map(abs, row)) >> MAX_BITS, "points far from the base")
-            todo.pop()
-        return self.vectors[i]
+            self.logs[other], self.vectors[other] = self.rest(1, [i]), self.vector(1, [i])
 
     def relation(self, n: int, zeros: Row) -> Row:
         """Points that are all known and n U are equivalent: a relation in the columns, checked in A."""
         need(not any(self.rest(n, zeros)), "relation-log", "the logarithms do not satisfy a closing relation")
-        row = [-n] + [0] * (self.width - 1)
-        for i in zeros:
-            row = plus(row, self.vector(i))
-        return row
+        return self.vector(n, zeros)
 
-    def certify(self, relations: list[Row], counts: int) -> None:
+    def certify(self, generators: list[Row], relations: list[Row], counts: int) -> None:
         """A is J(F_v): the logarithms are onto, the relations have index #J(F_v)."""
         v, g, order = self.prime, self.curve.genus, prod(self.moduli)
         image = diagonal(self.moduli)
-        for row in [self.unit, *(self.logs[i] for i, k in self.column.items() if type(k) is int)]:
+        for row in generators:
             insert(image, row)
         need(index_of(image) == 1, "not-onto", "the logarithms do not generate the group")
         index = lattice_index(relations, self.width, self.curve.work)

@@ -10,16 +10,7 @@ import pytest
 from sieve.proof import checker
 from tests.support.checker_mutants import CORPUS, expected, mutants, noticed
 from tests.support.proof_mutants import Replay, sample, verdict
-
-MANY = {
-    "closed_point",
-    "empty_by_classes",
-    "odd_degree_at_three",
-    "residue_characteristic_two",
-    "stated_index",
-    "torsion",
-}
-"""Small logs, of which 620 mutants are checked; 180 of the others."""
+from tests.support.sweep import full_sweep
 
 FATES = {"accepted": 0, "refused": 0}
 ACCEPTED = sorted((CORPUS / "accepted").glob("*.jsonl"))
@@ -31,7 +22,7 @@ def test_mutants_of_logs(path: Path) -> None:
     replay = Replay(data)
     original = replay.check(data)
     wrong = []
-    for mutant in sample(data, 620 if path.stem in MANY else 180, 20261201):
+    for mutant in sample(data, 600 if full_sweep() else 155, 20261201):
         try:
             proof = replay.check(mutant.data)
         except (checker.Fault, checker.Declined):

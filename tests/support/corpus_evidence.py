@@ -239,7 +239,7 @@ def _multiple(log: Log) -> int:
     local = proof.locals[7]
     rows = [tuple(local.relation(*local.section(entry))) for entry in record["close"]]
     ramified = [k for k in range(local.points) if local.reduction.conjugate(k) == k]
-    fixed = [tuple(2 * a - (j == 0) for j, a in enumerate(local.vector(k))) for k in ramified]
+    fixed = [tuple(local.relation(1, [k, k])) for k in ramified]
     for chosen in itertools.combinations(range(len(rows)), local.width - len(fixed)):
         group = quotient_by(local.width, [*fixed, *(rows[k] for k in chosen)])
         if group is None or group.order <= 91 or len(group.invariants) > 4:
