@@ -12,6 +12,7 @@ from sieve.commands.common import Progress, StoredInvestigation, problem_of
 from sieve.curves.divisors import Divisor, Point
 from sieve.curves.protocol import Curve
 from sieve.curves.search import search_points
+from sieve.engine.algebraic import recognise_algebraic
 from sieve.engine.investigation import Investigation
 from sieve.errors import BadReduction, Inconsistent, InputError, PrecisionLost, Uncertified
 from sieve.exact.padic_number import PadicNumber, valuation
@@ -38,7 +39,8 @@ MAX_PRIME = 10**4
 class Trial:
     """One prime: its zeros and which rational points each candidate agrees with, or why it was not used.
 
-    `unsuited`: why the sieve could do nothing with candidates at this prime (or empty).
+    `unsuited`: why the sieve could do nothing with candidates at this prime (or empty); `algebraic`, how many
+    candidates are recognised as points over a small field, which often cannot be eliminated.
     """
 
     prime: int
@@ -46,6 +48,7 @@ class Trial:
     points: dict[str, tuple[Point, ...]]
     reason: str = ""
     unsuited: str = ""
+    algebraic: int = 0
 
     @property
     def spurious(self) -> int:
@@ -155,7 +158,7 @@ def execute(
         reasons = "; ".join(t.reason for t in trials) or "no good prime"
         what = f"no prime can be used ({reasons})"
         raise InputError("--prime", "", what, "more digits, or a prime by hand")
-    chosen = min(usable, key=lambda t: (bool(t.unsuited), t.spurious, t.prime))
+    chosen = min(usable, key=lambda t: (bool(t.unsuited), t.spurious, t.algebraic, t.prime))
     assert chosen.zeros is not None
     return CandidateSearch(resolved, chosen, chosen.zeros, tuple(trials), found)
 
@@ -191,7 +194,16 @@ def _trial(
             )
         points.setdefault(near[0].id, []).append(point)
     unsuited = why_unsuited(zeros, resolved.curve, [resolved.base, *generators])
-    return Trial(p, zeros, {name: tuple(sorted(here)) for name, here in points.items()}, unsuited=unsuited)
+    algebraic = sum(_is_algebraic(zeros, c) for c in candidates if c.id not in points) if several else 0
+    named = {name: tuple(sorted(here)) for name, here in points.items()}
+    return Trial(p, zeros, named, unsuited=unsuited, algebraic=algebraic)
+
+
+def _is_algebraic(zeros: ChabautyZeros, candidate: LocatedCandidate) -> bool:
+    curve, n = zeros.integrals.curve, candidate.digits
+    x, y, z = zeros.integrals.point_at(int(candidate.disc or 0), candidate.parameter, n)
+    point = tuple(PadicNumber.padic(zeros.prime, c, 0, n) for c in (x, y, z))
+    return recognise_algebraic(curve, zeros.prime, (point[0], point[1], point[2])) is not None
 
 
 def _agrees(zeros: ChabautyZeros, candidate: LocatedCandidate, point: Point) -> bool:
