@@ -32,7 +32,7 @@ Classes = NDArray[np.int32]
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
-BATCH = 1 << 18
+BATCH = 1 << 16
 """A step is worked on when so many classes wait for it."""
 
 BLOCK = 1 << 15
@@ -69,7 +69,7 @@ class _Filter:
     masks: NDArray[np.unsignedinteger]
 
     def keys(self, block: FloatArray, bound: float) -> IntArray:
-        """The keys of classes, shape (count,), from their coordinates, shape (n, count), of size <= bound."""
+        """The keys of classes, shape (count,), from their coordinates, shape (count, n), of size <= bound."""
         key: IntArray | None = None
         for modulus, row, stride in zip(self.moduli, self.weights, self.strides, strict=True):
             code = _residues(row, block, modulus, bound)
@@ -80,16 +80,16 @@ class _Filter:
 
 
 def _residues(row: FloatArray, block: FloatArray, modulus: int, bound: float) -> IntArray:
-    """row . block modulo m, exactly: in floating point below 2^50, in integers beyond."""
+    """block . row modulo m, exactly: in floating point below 2^50, in integers beyond."""
     if float(np.abs(row).sum()) * bound < _EXACT_FLOAT:
-        value = row @ block
+        value = block @ row
         # value + 1/2 is at least 1/2 away from the multiples of m: the rounding of the quotient is harmless
         quotient = np.floor((value + 0.5) * (1.0 / modulus))
         quotient *= modulus
         value -= quotient
         return value.astype(np.int64)
-    total = np.zeros(block.shape[1], dtype=np.int64)
-    for weight, coordinates in zip(row.tolist(), block, strict=True):
+    total = np.zeros(len(block), dtype=np.int64)
+    for weight, coordinates in zip(row.tolist(), block.T, strict=True):
         if weight:
             # both factors are below 2^31
             total += coordinates.astype(np.int64) % modulus * (int(weight) % modulus) % modulus
@@ -109,7 +109,7 @@ class Rung:
     @property
     def count(self) -> int:
         """How many classes wait."""
-        return sum(block.shape[1] for block in self.waiting)
+        return sum(map(len, self.waiting))
 
 
 @dataclass(frozen=True, eq=False)
@@ -158,7 +158,7 @@ def climb(relations: Sequence[Relation], ladder: Ladder, *, known: Sequence[Sequ
     halve_at = _halving(ladder) if even else -1
     ends, most_held = _drain(rungs, relations[0].n, batch, most, halve_at, report)
     if halve_at >= 0:
-        ends = np.concatenate([ends, -ends], axis=1)
+        ends = np.concatenate([ends, -ends])
     relation = _relation(ends, exponents, relations[0].n)
     for condition in cut:
         relation = semijoin(relation, condition)
@@ -185,7 +185,7 @@ def is_symmetric(relation: Relation) -> bool:
 def build_rungs(relations: Sequence[Relation], ladder: Ladder, known: Classes, most: int = 24) -> list[Rung]:
     """The subgroups of the ladder and the tables of the conditions it names, at most so many on each step.
 
-    `known`: vectors, shape (n, count); raises `Inconsistent` when a table excludes one.
+    `known`: vectors, shape (count, n); raises `Inconsistent` when a table excludes one.
     """
     n = relations[0].n if relations else len(ladder[0].character)
     basis = [[int(i == j) for j in range(n)] for i in range(n)]
@@ -208,12 +208,12 @@ def build_rungs(relations: Sequence[Relation], ladder: Ladder, known: Classes, m
 
 def _check_known(made: _Filter, known: Classes, basis: Sequence[Sequence[int]], rung: Rung) -> None:
     """A known vector is x + j b with j = 0 for x itself: bit 0 must be set."""
-    if not known.shape[1]:
+    if not len(known):
         return
     points = known.astype(np.float64)
     passed = made.masks[made.keys(points, float(np.abs(points).max()))] & made.masks.dtype.type(1)
     if not passed.all():
-        bad = tuple(known[:, int(np.argmin(passed))].tolist())
+        bad = tuple(known[int(np.argmin(passed))].tolist())
         raise Inconsistent(f"the known vector {bad} is excluded by {made.name}", str(bad))
 
 
@@ -292,35 +292,39 @@ def _word(bits: int) -> type[np.unsignedinteger]:
 
 
 def expand(rung: Rung, classes: Classes) -> Classes:
-    """The lifts of classes, shape (n, count), that all filters of the step allow; their order is fixed."""
-    out = [_expand_block(rung, classes[:, low : low + BLOCK]) for low in range(0, classes.shape[1], BLOCK)]
-    return np.concatenate(out, axis=1) if out else classes[:, :0]
+    """The lifts of classes, shape (count, n), that all filters of the step allow; their order is fixed."""
+    pieces: list[Classes] = []
+    for low in range(0, len(classes), BLOCK):
+        _expand_block(rung, classes[low : low + BLOCK], pieces)
+    return np.concatenate(pieces) if pieces else classes[:0]
 
 
-def _expand_block(rung: Rung, block: Classes) -> Classes:
+def _expand_block(rung: Rung, block: Classes, pieces: list[Classes]) -> None:
     ell = rung.lift.prime
     word = _word(ell)
-    masks = np.full(block.shape[1], (1 << ell) - 1, dtype=word)
+    masks = np.full(len(block), (1 << ell) - 1, dtype=word)
     numbers = block.astype(np.float64)
     bound = float(np.abs(numbers).max(initial=1.0))
     for place, made in enumerate(rung.filters):
         masks &= made.masks[made.keys(numbers, bound)]
         if place + 1 < len(rung.filters):
-            alive = np.flatnonzero(masks)
+            alive = np.flatnonzero(masks != 0)
             if 4 * len(alive) < 3 * len(masks):
-                masks, block, numbers = masks[alive], block[:, alive], numbers[:, alive]
-    pieces = []
-    shift = np.array(rung.shift, dtype=np.int32)[:, None]
+                masks, block, numbers = masks[alive], block.take(alive, axis=0), numbers.take(alive, axis=0)
+    shift = np.array(rung.shift, dtype=np.int32)
     for j in range(ell):
-        here = np.flatnonzero(masks & word(1 << j))
+        here = np.flatnonzero((masks & word(1 << j)) != 0)
         if len(here):
-            pieces.append(block[:, here] + np.int32(j) * shift if j else block[:, here])
-    return np.concatenate(pieces, axis=1) if pieces else block[:, :0]
+            lifts = block.take(here, axis=0)
+            if j:
+                lifts += np.int32(j) * shift
+            pieces.append(lifts)
 
 
 def _halving(ladder: Ladder) -> int:
-    """The first step at the end of a stage with a few classes at least: there -x is easily compared."""
-    return next((k for k, lift in enumerate(ladder) if lift.last and lift.log_size > log(50)), -1)
+    """The first step at the end of a stage M > 2 with a few classes: there -x is easily told from x."""
+    return next((k for k, (lift, modulus) in enumerate(zip(ladder, _stage_moduli(ladder), strict=True))
+                 if lift.last and modulus > 2 and lift.log_size > log(50)), -1)
 
 
 def _stage_end(classes: Classes, modulus: int, halve: bool) -> Classes:
@@ -328,13 +332,13 @@ def _stage_end(classes: Classes, modulus: int, halve: bool) -> Classes:
     classes = classes % np.int32(modulus)
     if not halve:
         return classes
-    keep = np.zeros(classes.shape[1], dtype=bool)
-    undecided = np.ones(classes.shape[1], dtype=bool)
-    for row in classes:
-        mirror = -row % np.int32(modulus)
-        keep |= undecided & (row < mirror)
-        undecided &= row == mirror
-    return classes[:, keep | undecided]
+    keep = np.zeros(len(classes), dtype=bool)
+    undecided = np.ones(len(classes), dtype=bool)
+    for column in classes.T:
+        mirror = -column % np.int32(modulus)
+        keep |= undecided & (column < mirror)
+        undecided &= column == mirror
+    return classes[keep | undecided]
 
 
 def _drain(rungs: Sequence[Rung], n: int, batch: int, most: int | None, halve_at: int,
@@ -343,8 +347,8 @@ def _drain(rungs: Sequence[Rung], n: int, batch: int, most: int | None, halve_at
 
     Every step but the one just filled holds less than a batch: memory is bounded by that and one output.
     """
-    moduli = _stage_moduli(rungs)
-    rungs[0].waiting.append(np.zeros((n, 1), dtype=np.int32))
+    moduli = _stage_moduli([rung.lift for rung in rungs])
+    rungs[0].waiting.append(np.zeros((1, n), dtype=np.int32))
     rungs[0].met = 1
     ends: list[Classes] = []
     held = most_held = met = 1
@@ -356,21 +360,21 @@ def _drain(rungs: Sequence[Rung], n: int, batch: int, most: int | None, halve_at
         found = expand(rungs[here], block)
         if rungs[here].lift.last:
             found = _stage_end(found, moduli[here], here == halve_at)
-        held += found.shape[1] - block.shape[1]
-        met += found.shape[1]
-        most_held = max(most_held, held + block.shape[1])
+        held += len(found) - len(block)
+        met += len(found)
+        most_held = max(most_held, held + len(block))
         if here + 1 < len(rungs):
-            if found.shape[1]:
+            if len(found):
                 rungs[here + 1].waiting.append(found)
-                rungs[here + 1].met += found.shape[1]
+                rungs[here + 1].met += len(found)
         else:
             ends.append(found)
-            held -= found.shape[1]
+            held -= len(found)
         if report is not None:
             report(rungs)
         if most is not None and met > most:
             raise LimitReached("classes met", str(most), tuple(rung.met for rung in rungs))
-    return (np.concatenate(ends, axis=1) if ends else np.zeros((n, 0), dtype=np.int32)), most_held
+    return (np.concatenate(ends) if ends else np.zeros((0, n), dtype=np.int32)), most_held
 
 
 def _take(rung: Rung, batch: int) -> Classes:
@@ -379,34 +383,34 @@ def _take(rung: Rung, batch: int) -> Classes:
     room = batch
     while rung.waiting and room:
         block = rung.waiting.pop()
-        if block.shape[1] > room:
-            rung.waiting.append(block[:, : block.shape[1] - room])
-            block = block[:, block.shape[1] - room :]
-        room -= block.shape[1]
+        if len(block) > room:
+            rung.waiting.append(block[: len(block) - room])
+            block = block[len(block) - room :]
+        room -= len(block)
         taken.append(block)
-    return np.concatenate(taken, axis=1) if len(taken) > 1 else taken[0]
+    return np.concatenate(taken) if len(taken) > 1 else taken[0]
 
 
-def _stage_moduli(rungs: Sequence[Rung]) -> list[int]:
-    """For each step the modulus M at the end of its stage."""
+def _stage_moduli(ladder: Sequence[Lift]) -> list[int]:
+    """For each step the modulus M that its stage has reached so far."""
     out: list[int] = []
     exponents: dict[int, int] = {}
-    for rung in rungs:
-        exponents[rung.lift.prime] = rung.lift.level + 1
+    for lift in ladder:
+        exponents[lift.prime] = lift.level + 1
         out.append(prod(ell**e for ell, e in exponents.items()))
     return out
 
 
 def _reduced(vectors: Sequence[Sequence[int]], modulus: int, n: int) -> Classes:
     rows = [[c % modulus for c in vector] for vector in vectors]
-    return np.array(rows, dtype=np.int32).reshape(len(rows), n).T
+    return np.array(rows, dtype=np.int32).reshape(len(rows), n)
 
 
 def _relation(ends: Classes, exponents: dict[int, int], n: int) -> Relation:
     """Classes modulo M as a relation."""
     units = tuple(tuple(int(i == j) for j in range(n)) for i in range(n))
     parts = tuple(Characters(ell, units, (e,) * n) for ell, e in sorted(exponents.items()))
-    blocks = [(ends.T % np.int32(ell**e)).astype(np.int64) for ell, e in sorted(exponents.items())]
+    blocks = [(ends % np.int32(ell**e)).astype(np.int64) for ell, e in sorted(exponents.items())]
     return merge_equal(Relation(n, parts, np.concatenate(blocks, axis=1), ()))
 
 

@@ -89,6 +89,25 @@ def log_density(load: FloatArray) -> FloatArray:
     return np.where(load > 25, 0.0, value)
 
 
+def may_exclude(points: int, orders: Sequence[int], tops: Mapping[int, int], least: float = 0.02) -> bool:
+    """Whether the prime v can be worth its local data, from #X(F_v) and the possible orders of J(F_v).
+
+    The part of J(F_v) at the primes of `tops` must be so large that a share `least` of its classes, at least,
+    is expected to be free of points.
+
+    >>> may_exclude(100, [2**3 * 3 * 5 * 83], {2: 3, 3: 2, 5: 1}), may_exclude(100, [2 * 4999], {2: 3, 3: 2})
+    (True, False)
+    """
+    for order in orders:
+        part = 1
+        for ell in tops:
+            while order % ell == 0:
+                order, part = order // ell, part * ell
+        if -float(log_density(np.array(points / part))) > least:
+            return True
+    return False
+
+
 @lru_cache(maxsize=256)
 def _combinations(prime: int, rank: int) -> IntArray:
     """One vector for each line of F_l^rank, the first entry that is not 0 being 1; shape (lines, rank)."""
@@ -371,5 +390,5 @@ def _product(modulus: Mapping[int, int]) -> int:
     return out
 
 
-__all__ = ["LARGEST_PRIME", "Forecast", "Ladder", "Lift", "expected_log_size", "log_density", "plan_ladder",
-           "thrown"]
+__all__ = ["LARGEST_PRIME", "Forecast", "Ladder", "Lift", "expected_log_size", "log_density", "may_exclude",
+           "plan_ladder", "thrown"]

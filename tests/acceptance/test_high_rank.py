@@ -1,10 +1,15 @@
-"""The reference curves of rank 4 and 6 run: local data, saturation, surviving classes."""
+"""The reference curves of rank 3 to 6: local data, saturation, surviving classes, indices above 10^20."""
 
 from __future__ import annotations
 
+from math import log
+
 import pytest
 
+from sieve.engine.depth_first import climb
+from sieve.engine.staged import plan_ladder
 from sieve.engine.verdicts import surviving_classes
+from tests.support.high_rank import gather, tops_of
 from tests.support.problems import investigate, known_point_problem
 from tests.support.reference_cases import reference_case
 from tests.support.sweep import full_sweep
@@ -38,3 +43,37 @@ def test_rank_three_and_four(name: str) -> None:
 @pytest.mark.slow
 def test_rank_six() -> None:
     run("binomial_y2_x5", 500 if full_sweep() else 250)
+
+
+def climb_to(name: str, bound: int, index: float, rest: float = 1e-3):
+    """All classes up to the index; the known points must pass every filter."""
+    investigation, relations = gather(name, bound)
+    ladder = plan_ladder(relations, tops_of(investigation), log(index), rest=rest)
+    known = [c.vector for c in investigation.coordinates.values()]
+    result = climb(relations, ladder, known=known)
+    assert result.relation.index >= index and all(map(result.relation.contains, known))
+    return known, ladder, result
+
+
+def test_rank_three_beyond_ten_to_the_twenty() -> None:
+    known, _, result = climb_to("y2_minus_y_x5_minus_x", 6000, 1e20)
+    assert len(known) == result.relation.count == 17
+    # with fewer primes classes are left that are near one known point at some primes, near another elsewhere
+    known, _, coarser = climb_to("y2_minus_y_x5_minus_x", 2000, 1e20)
+    assert 17 < coarser.relation.count < 60
+
+
+@pytest.mark.slow
+def test_rank_six_beyond_ten_to_the_twenty() -> None:
+    full = full_sweep()
+    known, ladder, result = climb_to("binomial_y2_x5", 30_000 if full else 300, 1e20 if full else 2e6,
+                                     1e-3 if full else 1e9)
+    assert len(known) == 39 and result.halved
+    if full:
+        assert result.relation.count == 39
+    # sizes are those that the counts foretell (one of each pair is followed)
+    sizes = [*result.sizes[1:], result.relation.count // 2]
+    ends = [(lift, 2 * met) for lift, met in zip(ladder, sizes, strict=True) if lift.last and met > 500]
+    assert ends
+    for lift, met in ends:
+        assert abs(log(met) - lift.log_size) < log(2)

@@ -159,7 +159,7 @@ def test_residues_are_exact(bound):
         points = [[rng.choice((0, bound, -bound, rng.randint(-bound, bound))) for _ in range(200)]
                   for _ in range(6)]
         # multiples of the modulus and their neighbours
-        got = depth_first._residues(row, np.array(points, dtype=np.float64), modulus, float(bound))
+        got = depth_first._residues(row, np.array(points, dtype=np.float64).T, modulus, float(bound))
         expected = [sum(int(c) * p[k] for c, p in zip(row, points, strict=True)) % modulus
                     for k in range(200)]
         assert got.tolist() == expected

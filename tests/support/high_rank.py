@@ -1,0 +1,50 @@
+"""Conditions for sieving in stages: auxiliary primes whose group may exclude something, by its order."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+from sieve.engine.investigation import Investigation
+from sieve.engine.relation import Relation, relation_from_condition
+from sieve.engine.staged import may_exclude
+from sieve.exact.primes import primes_below
+from sieve.local.quick_order import quick_order
+from sieve.local.records import local_record
+from tests.support.problems import curve_of, known_point_problem
+from tests.support.reference_cases import reference_case
+
+TOPS = {2: 5, 3: 3, 5: 2, 7: 1, 11: 1, 13: 1}
+"""The largest exponents of the modulus."""
+
+START = 150
+"""Primes below this are used in any case; the coordinates of the known points come from them."""
+
+
+def gather(name: str, bound: int, report: Callable[[int, int], None] | None = None
+           ) -> tuple[Investigation, list[Relation]]:
+    """The group of the known points of a reference curve, and its conditions at the useful primes.
+
+    Arguments: id of a curve of genus 2; a bound for the auxiliary primes; `report` receives the prime and the
+    number of groups so far.  The conditions have the parts at those primes of `TOPS` where the group is
+    proved saturated.
+    """
+    problem = known_point_problem(reference_case(name))
+    investigation = Investigation(problem)
+    investigation.gather(primes_below(START))
+    investigation.establish(lambda primes: None)
+    curve = curve_of(reference_case(name))
+    for v in primes_below(bound, START):
+        quick = quick_order(curve.f, curve.h, v)
+        if quick is not None and may_exclude(quick.points, quick.orders, TOPS):
+            investigation.add(local_record(curve, problem.base, investigation.asked, v))
+            if report is not None:
+                report(v, len(investigation.records))
+    ells = [ell for ell in sorted(TOPS) if investigation.saturation_at(ell).proved]
+    relations = [relation_from_condition(record.condition(investigation.images(record)), ells)
+                 for record in investigation.usable]
+    return investigation, [r for r in relations if r.count < r.index]
+
+
+def tops_of(investigation: Investigation) -> dict[int, int]:
+    """`TOPS` at the primes where the group is proved saturated."""
+    return {ell: e for ell, e in TOPS.items() if investigation.saturation_at(ell).proved}
