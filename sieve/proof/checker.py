@@ -833,7 +833,8 @@ class Place:
         numbers = [*u, *(c for row in coordinates for c in row)]
         self.denominator = lcm(*(c.denominator for c in numbers))
         size = max(c.numerator.bit_length() for c in numbers) + self.denominator.bit_length()
-        limit(size * (self.degree + curve.degree) <= MAX_HEIGHT, "a place of too large a height or degree")
+        small = self.degree <= MAX_MULTIPLE and size * (self.degree + curve.degree) <= MAX_HEIGHT
+        limit(small, "a place of too large a height or degree")
         bits = size * self.degree * curve.weight * curve.degree
         curve.work.spend(len(curve.form) * self.degree**2 * (1 + int((bits / 600) ** 1.6)))
         # with t = T / s, and the coordinates multiplied by s^e, s^(e w), s^e, all is integral
@@ -1909,8 +1910,10 @@ class Proof:
         if key not in self.tables:
             if type(name) is int:
                 condition = self.condition_at(name)
+            elif text(name).startswith("deep "):
+                condition = self.deep_condition(name)
             else:
-                condition = self.list_condition(text(name), list(exponents))
+                condition = self.list_condition(name, list(exponents))
             for ell, e in exponents.items():
                 top = max([valuation(d, ell) for d in condition.moduli], default=0)
                 need(e <= top, "exponent", f"the group has no elements of order {ell}^{e}")
@@ -1918,6 +1921,29 @@ class Proof:
                 self.tables.clear()
             self.tables[key] = Table(state, condition.restricted(exponents), exponents, self.work)
         return apply(state, self.tables[key], how == "join", self.work)
+
+    def deep_condition(self, name: str) -> Condition:
+        """The points of X modulo q^2: classes in J(F_q) and logarithms, known modulo q^2."""
+        if not re.fullmatch("deep [1-9][0-9]{0,6}", name):
+            raise Malformed("use", "no condition of this name")
+        q, n = int(name[5:]), len(self.generators)
+        padic = self.padics.get(q)
+        if padic is None:
+            raise Rejected("no-padic", f"no logarithms at {q}")
+        local, points = self.group_at(q), padic.reduction.points
+        allowed = [i for i in range(len(points)) if points[i][2] or not self.integral]
+        base = padic.log(self.base)
+        balls = [padic.log(d) for d in self.generators]
+        balls += [padic.combine([(self.degree, padic.log_at(i, q * k, 2)), (-1, base)])
+                  for i in allowed for k in range(q)]
+        shift = max(ball.shift for ball in balls)
+        known = min(ball.precision for ball in balls) + shift
+        need(known > 0, "digits", "too few digits of the logarithms")
+        rows = [[a * q ** (shift - ball.shift) % q**known for a in ball.numerators] for ball in balls]
+        images = [row + local.log(d) for row, d in zip(rows, self.generators)]
+        classes = [local.shifted(local.logs[i]) for i in allowed for _ in range(q)]
+        values = {(*row, *found) for row, found in zip(rows[n:], classes)}
+        return Condition([q**known] * self.curve.genus + local.moduli, images, sorted(values))
 
     def list_condition(self, name: str, primes: Row) -> Condition:
         """A complete list at another Chabauty prime."""

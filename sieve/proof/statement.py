@@ -12,6 +12,7 @@ from sieve.engine.fates import Use
 from sieve.engine.plan import Outcome
 from sieve.engine.survivors import Survivor
 from sieve.engine.verdicts import CandidateList, Decision
+from sieve.local.condition import Condition
 from sieve.local.records import LocalRecord
 
 
@@ -34,7 +35,8 @@ class ProofInput:
     `records` of the usable primes and the `images` of the generators there; `ells`, the allowed primes l,
     `stated` those among them that rest on the user's word; `outcome` and `vectors`, the classes left without
     candidates (None: not part of the log); `branch`, the factors of the branch polynomial where they tell
-    J(Q)[2]; `integral`, whether integral points of the affine equation are meant.
+    J(Q)[2]; `integral`, whether integral points of the affine equation are meant; `deep`, conditions modulo
+    q^2 by q.
     """
 
     program: str
@@ -57,6 +59,7 @@ class ProofInput:
     branch: BranchFactors | None = None
     two_torsion: int | None = None
     integral: bool = False
+    deep: Mapping[int, Condition] = field(default_factory=dict)
 
     @property
     def size(self) -> int:
@@ -76,7 +79,7 @@ def closed_places(divisors: Sequence[Divisor]) -> list[MumfordPlace | ClosedPlac
 
 @dataclass(frozen=True)
 class Step:
-    """One use of a condition in a log: `name` is an auxiliary prime, or "p = q"."""
+    """One use of a condition in a log: `name` is an auxiliary prime, or "p = q", or "deep q"."""
 
     name: int | str
     exponents: tuple[tuple[int, int], ...]
@@ -90,5 +93,8 @@ class Step:
 def step_of(use: Use) -> Step:
     """The step of an engine's use."""
     kind = "semijoin" if use.kind == "semijoin" else "join"
-    name: int | str = int(use.name.split("=")[1]) if use.name.startswith("v") else use.name
+    name: int | str = use.name
+    if use.name.startswith(("v", "deep")):
+        word, number = use.name.split(" = ")
+        name = int(number) if word == "v" else f"deep {number}"
     return Step(name, use.exponents, kind)

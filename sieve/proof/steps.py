@@ -10,6 +10,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
+from sieve.engine.fates import Use
 from sieve.engine.join import join, match, semijoin
 from sieve.engine.relation import Relation, coarsen, relation_from_condition, trivial
 from sieve.errors import InternalError
@@ -50,7 +51,8 @@ class Steps:
     def condition(self, name: int | str) -> Condition:
         """The condition that a step names."""
         if isinstance(name, str):
-            return self.complete[name]
+            word, number = name.split(" ", 1)
+            return self.source.deep[int(number)] if word == "deep" else self.complete[name]
         return self.source.records[name].condition(self.source.images[name])
 
     def relation(self, step: Step) -> Relation:
@@ -175,12 +177,12 @@ def class_steps(steps: Steps) -> tuple[tuple[Step, ...], Relation] | None:
     if outcome is None:
         return None
     found = tuple(
-        Step(int(s.name.split("=")[1]), s.exponents, "semijoin" if s.kind == "semijoin" else "join")
+        step_of(Use(s.name, s.exponents, "semijoin" if s.kind == "semijoin" else "join"))
         for s in outcome.plan.steps
     )
     start = trivial(steps.source.size)
     end = steps.replay(start, found)
-    if end is not None and end.count != outcome.relation.count:
+    if end is None or end.count != outcome.relation.count:
         found = steps.completed(found)
         end = steps.replay(start, found)
     if end is None:

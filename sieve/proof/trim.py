@@ -113,6 +113,9 @@ def _need_uses(
         needs.ells |= {int(ell) for ell in exponents}
         if isinstance(name, int):
             needs.primes.add(name)
+        elif name.startswith("deep "):
+            needs.primes.add(int(name[5:]))
+            needs.padic.add(int(name[5:]))
         else:
             _need_place(int(name.split("=")[1]), padic, local, forms, needs)
 

@@ -17,6 +17,8 @@ from sieve.curves.search import by_height
 from sieve.engine.verdicts import CandidateList, Decision
 from sieve.errors import InternalError
 from sieve.local.chabauty import LocatedCandidate, useful_digits
+from sieve.local.deep import DIGITS as DEEP_DIGITS
+from sieve.local.picard import picard_group
 from sieve.local.zero_counts import ZeroProof
 from sieve.proof.saturation_choice import Chosen, choose_saturation
 from sieve.proof.statement import ProofInput
@@ -89,6 +91,9 @@ def _layout(source: ProofInput) -> tuple[list[Record], set[int]]:
         for x in source.lists
         if _located(x)
     ]
+    listed = {x.place.prime for x in source.lists if _located(x)}
+    for q in sorted(set(source.deep) - listed):
+        records.append({"kind": "padic", "prime": q, "reduction": True})
     records += [_zeros(x.proof) for x in source.lists if x.proof is not None and x.proof.complete]
     for choice in chosen:
         records += _saturated(choice)
@@ -292,7 +297,12 @@ def _with_evidence(source: ProofInput, record: Record) -> Record:
     if record["kind"] == "local":
         return local_document(source.curve, record["prime"], source.places())
     if record["kind"] == "padic":
-        listing = next(x for x in source.lists if x.place.prime == record["prime"])
+        p = record["prime"]
+        listing = next((x for x in source.lists if x.place.prime == p and _located(x)), None)
+        if listing is None:
+            group = picard_group(source.curve.modulo(p))
+            evidence = PadicEvidence(source.curve, group, source.places())
+            return evidence.record(range(group.curve.count), DEEP_DIGITS + 1, True)
         place = listing.place
         evidence = PadicEvidence(source.curve, place.group, source.places())
         discs = {c.disc for c in listing.candidates if c.kind != "coefficients" and c.disc is not None}

@@ -9,7 +9,7 @@ import subprocess
 import sys
 from collections.abc import Callable
 from pathlib import Path
-from typing import BinaryIO
+from typing import Any, BinaryIO
 
 import pytest
 
@@ -18,6 +18,7 @@ from tests.support.checker_mutants import CORPUS, SOURCE
 SECONDS, MEMORY = 10, 2**30
 
 HEADER = (CORPUS / "accepted" / "torsion.jsonl").read_bytes().splitlines(keepends=True)[0]
+PLANE = (CORPUS / "accepted" / "plane_points.jsonl").read_bytes().splitlines(keepends=True)
 START = b"".join((CORPUS / "accepted" / "torsion.jsonl").read_bytes().splitlines(keepends=True)[:4])
 
 
@@ -116,9 +117,9 @@ def _wide_section(file: BinaryIO) -> None:
         "origin": 0,
         "unit": [0],
         "base": [],
-        "define": [[[1] * 1_000_000, []]],
+        "define": [[[3, [1] * 1_000_000], []]],
         "close": [],
-        "mumford": [],
+        "places": [],
         "counts": 0,
     }
     file.write(json.dumps(record, separators=(",", ":")).encode() + b"\n")
@@ -135,7 +136,7 @@ def _wide_vector(file: BinaryIO) -> None:
         "base": [],
         "define": [],
         "close": [],
-        "mumford": [],
+        "places": [],
         "counts": 0,
     }
     file.write(json.dumps(record, separators=(",", ":")).encode() + b"\n")
@@ -144,12 +145,20 @@ def _wide_vector(file: BinaryIO) -> None:
 def _large_coordinates(file: BinaryIO) -> None:
     file.write(HEADER)
     point = [int("3" * 3900), int("5" * 3900), int("7" * 3900) * 3 + 1]
-    record = {"kind": "group", "rank": 0, "base": [[1, {"point": point}]] * 300, "free": [], "torsion": []}
+    record = {
+        "kind": "group",
+        "rank": 0,
+        "base": [[1, {"point": point}]] * 300,
+        "free": [],
+        "torsion": [],
+        "integral": False,
+    }
     file.write(json.dumps(record, separators=(",", ":")).encode() + b"\n")
 
 
 def _large_coefficients(file: BinaryIO) -> None:
-    file.write(HEADER.replace(b'"f":[', b'"f":[' + (b"9" * 3999 + b",") * 3))
+    assert b'"equation":[[' in HEADER
+    file.write(HEADER.replace(b'"equation":[[', b'"equation":[[' + (b"9" * 3999 + b",") * 3))
 
 
 def _large_multiplicities(file: BinaryIO) -> None:
@@ -160,7 +169,55 @@ def _large_multiplicities(file: BinaryIO) -> None:
         "base": [[int("9" * 3999), {"fibres": int("9" * 3999)}]],
         "free": [],
         "torsion": [],
+        "integral": False,
     }
+    file.write(json.dumps(record, separators=(",", ":")).encode() + b"\n")
+
+
+def _plane(file: BinaryIO, *records: dict[str, Any]) -> None:
+    """The start of a log on a plane quartic, and more records."""
+    file.write(b"".join(PLANE[:4]))
+    for record in records:
+        file.write(json.dumps(record, separators=(",", ":")).encode() + b"\n")
+
+
+def _local(v: int, **changes: Any) -> dict[str, Any]:
+    record = {
+        "kind": "local",
+        "prime": v,
+        "invariants": [2],
+        "origin": 0,
+        "unit": [0],
+        "base": [],
+        "define": [],
+    }
+    return {**record, "close": [], "places": [], "counts": 0, **changes}
+
+
+def _plane_at_a_large_prime(file: BinaryIO) -> None:
+    _plane(file, _local(1048573))
+
+
+def _field_of_a_large_degree(file: BinaryIO) -> None:
+    file.write(HEADER.replace(b'"weight":3', b'"weight":10000').replace(b'"genus":2', b'"genus":9999'))
+
+
+def _equation_of_a_large_degree(file: BinaryIO) -> None:
+    rows = [[1] * (1001 - k) for k in range(1001)]
+    header = json.loads(PLANE[0]) | {"equation": rows}
+    file.write(json.dumps(header, separators=(",", ":")).encode() + b"\n")
+
+
+def _sections_of_a_large_degree(file: BinaryIO) -> None:
+    dense = [60, *([3] * (61 - k) for k in range(61))]
+    _plane(file, _local(5, define=[[dense, [0] * 240]] * 200))
+
+
+def _place_of_a_large_degree(file: BinaryIO) -> None:
+    u = [str(k) for k in range(2, 602)] + ["1"]
+    place = {"closed": [u, ["7"] * 599 + ["5"], ["11"] * 599 + ["3"], ["13"] * 599 + ["2"]]}
+    file.write(PLANE[0])
+    record = {"kind": "group", "rank": 0, "base": [[1, place]], "free": [], "torsion": [], "integral": False}
     file.write(json.dumps(record, separators=(",", ":")).encode() + b"\n")
 
 
@@ -198,6 +255,11 @@ HOSTILE: tuple[Callable[[BinaryIO], None], ...] = (
     _large_coefficients,
     _large_multiplicities,
     _large_prime,
+    _plane_at_a_large_prime,
+    _field_of_a_large_degree,
+    _equation_of_a_large_degree,
+    _sections_of_a_large_degree,
+    _place_of_a_large_degree,
     _surrogates,
     _terminal,
 )
