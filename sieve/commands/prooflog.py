@@ -87,6 +87,7 @@ def proof_of(run: Run, full: bool) -> ProofLog:
             branch=investigation.branch,
             two_torsion=investigation.exact_two,
             integral=problem.integral,
+            deep=investigation.deep,
         ),
         full,
     )

@@ -9,6 +9,7 @@ from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 from sieve.commands.common import Progress, StoredInvestigation, problem_of
+from sieve.commands.deep import add_deep
 from sieve.commands.premises import premises_of
 from sieve.commands.prooflog import proof_of, restrict_to_log
 from sieve.commands.pursue import pursue, reach_of
@@ -58,7 +59,7 @@ SEARCH_HEIGHT = 200
 
 def default_stages(curve: Curve) -> list[int]:
     """Bounds for the auxiliary primes, tried one after the other until every candidate is decided."""
-    return [FIRST_BOUND, 400, 1000] if reach_of(curve, None, None) else [FIRST_BOUND, 300]
+    return [FIRST_BOUND, 400, 1000] if curve.weight in (1, 3) else [FIRST_BOUND, 300]
 
 
 def case_name(case_path: str) -> str:
@@ -224,6 +225,11 @@ def execute(
         say(f"auxiliary primes below {stage}: {len(investigation.usable)} usable, parts at l = {run.ells}")
         if lists:
             decisions = decide_candidates(investigation, lists, matched, run.ells, stage, wanted)
+            if any(d.verdict == "open" for d in decisions.values()) and not investigation.deep and add_deep(
+                investigation, run.ells, wanted, chabauty_primes
+            ):
+                say(f"points modulo q^2 at q = {sorted(investigation.deep)}")
+                decisions = decide_candidates(investigation, lists, matched, run.ells, stage, wanted)
             run.decisions = in_order(lists, decisions)
         if lists and all(d.verdict != "open" for d in run.decisions):
             break
@@ -232,6 +238,8 @@ def execute(
             break
         if not lists:
             run.outlook = surviving_classes(investigation, run.ells, stage, wanted, run.steps.append)
+            if not run.outlook.empty and not investigation.deep and add_deep(investigation, run.ells, wanted):
+                run.outlook = surviving_classes(investigation, run.ells, stage, wanted, run.steps.append)
             if run.outlook.empty:
                 break
     if any(d.verdict == "open" for d in run.decisions):

@@ -20,6 +20,7 @@ from sieve.engine.problem import Problem
 from sieve.engine.relation import Relation, relation_from_condition
 from sieve.errors import Inconsistent
 from sieve.exact.primes import prime_factors, primes_below
+from sieve.local.condition import Condition
 from sieve.local.records import LocalRecord, local_records
 
 LARGEST_ELL = 2000
@@ -60,6 +61,8 @@ class Investigation:
         self.rows: list[list[int]] = []
         self.orders: tuple[int, ...] = ()
         self.coordinates: dict[Point, PointCoordinates] = {}
+        #: conditions modulo q^2 (see `sieve.local.deep`) by q, for the generators in use
+        self.deep: dict[int, Condition] = {}
         self._saturation: dict[int, tuple[int, Saturation]] = {}
         self.branch = branch_factors(problem.curve.square_form)
         #: dim J(Q)[2], where factors that are proved irreducible tell it
@@ -294,4 +297,5 @@ class Investigation:
         for record in self.usable:
             if (bound is None or record.prime < bound) and (primes is None or record.prime in primes):
                 out.append(relation_from_condition(record.condition(self.images(record)), ells))
+        out += [relation_from_condition(self.deep[q], ells) for q in sorted(self.deep)]
         return out

@@ -325,7 +325,9 @@ def _names(uses: list[list[Any]]) -> str:
     auxiliary = list(dict.fromkeys(name for name, _, _ in uses if isinstance(name, int)))
     others = list(dict.fromkeys(name for name, _, _ in uses if not isinstance(name, int)))
     parts = ["$v = " + "$, $".join(map(str, auxiliary)) + "$"] if auxiliary else []
-    return " and ".join(parts + [f"the list at ${name}$" for name in others])
+    deep = [f"$X$ modulo ${name[5:]}^2$" for name in others if name.startswith("deep ")]
+    lists = [f"the list at ${name}$" for name in others if not name.startswith("deep ")]
+    return " and ".join(parts + deep + lists)
 
 
 def _classes(view: LogView) -> list[Block]:
