@@ -232,38 +232,6 @@ def _points(header: dict[str, Any], v: int) -> int:
     return affine + infinite + (w == 1 and (len(ends) <= top or ends[top] % v == 0))
 
 
-def _evaluate(rows: list[list[int]], x: int, y: int, v: int) -> int:
-    """F(x, y, 1), one term after the other."""
-    return sum(c * pow(x, i, v) * pow(y, k, v) for k, row in enumerate(rows) for i, c in enumerate(row)) % v
-
-
-def _points(header: dict[str, Any], v: int) -> int:
-    """#X(F_v) by trying all pairs."""
-    rows, w = header["equation"], header["weight"]
-    top = max(i + w * k for k, row in enumerate(rows) for i, c in enumerate(row) if c)
-    # where Z = 0: F(1, s, 0) and F(0, 1, 0)
-    ends = [row[top - w * k] if len(row) > top - w * k >= 0 else 0 for k, row in enumerate(rows)]
-    affine = sum(_evaluate(rows, x, y, v) == 0 for x in range(v) for y in range(v))
-    infinite = sum(sum(c * pow(s, k, v) for k, c in enumerate(ends)) % v == 0 for s in range(v))
-    return affine + infinite + (w == 1 and (len(ends) <= top or ends[top] % v == 0))
-
-
-def _evaluate(rows: list[list[int]], x: int, y: int, v: int) -> int:
-    """F(x, y, 1), one term after the other."""
-    return sum(c * pow(x, i, v) * pow(y, k, v) for k, row in enumerate(rows) for i, c in enumerate(row)) % v
-
-
-def _points(header: dict[str, Any], v: int) -> int:
-    """#X(F_v) by trying all pairs."""
-    rows, w = header["equation"], header["weight"]
-    top = max(i + w * k for k, row in enumerate(rows) for i, c in enumerate(row) if c)
-    # where Z = 0: F(1, s, 0) and F(0, 1, 0)
-    ends = [row[top - w * k] if len(row) > top - w * k >= 0 else 0 for k, row in enumerate(rows)]
-    affine = sum(_evaluate(rows, x, y, v) == 0 for x in range(v) for y in range(v))
-    infinite = sum(sum(c * pow(s, k, v) for k, c in enumerate(ends)) % v == 0 for s in range(v))
-    return affine + infinite + (w == 1 and (len(ends) <= top or ends[top] % v == 0))
-
-
 def test_weil_bound_is_below_the_order_and_sharp_enough() -> None:
     """#J(F_v) of the accepted logs, certified by their other witnesses."""
     seen = set()
@@ -373,14 +341,14 @@ def test_points_and_orders_of_quartics(case: QuarticCase) -> None:
         points = checker.Reduction(curve, v).points
         assert len(points) == expected_count == len(set(points))
         assert all(checker.evaluate(curve.form, point, v) == 0 for point in points)
-        if v < 8:
+        if v < 8 and text in raw["Lpoly"]:
             tower = [len(points), *(checker.extension_points(curve, v, i) for i in (2, 3))]
             assert checker.jacobian_order(v, 3, tower) == sum(raw["Lpoly"][text])
 
 
 @pytest.mark.parametrize("name", ["Klein", "with h"])
-def test_orders_of_sections_by_another_way(name: str) -> None:
-    """The order at a point is the dimension of a local algebra: rational zeros and their orders are a divisor."""
+def test_orders_of_sections(name: str) -> None:
+    """The orders of a section have at most its degree as sum; those of its square are twice as large."""
     curve, rng = _curve(name), random.Random(3)
     v = 5
     reduction = checker.Reduction(curve, v)
@@ -388,6 +356,8 @@ def test_orders_of_sections_by_another_way(name: str) -> None:
         keys = checker.monomials(n, curve.weight)
         for _ in range(20):
             form = [(rng.randrange(v), *key) for key in keys]
+            if not any(c for c, *_ in form):
+                continue
             orders = []
             for i in range(len(reduction.points)):
                 order = 0
@@ -397,7 +367,10 @@ def test_orders_of_sections_by_another_way(name: str) -> None:
             multiple = curve.degree <= n and min(orders) > n * curve.unit
             assert multiple or sum(orders) <= n * curve.unit
             # a product has the sum of the orders
-            square = [(c * d, i + a, k + b, j + e) for c, i, k, j in form for d, a, b, e in form]
+            doubled = Counter[tuple[int, int, int]]()
+            for (c, i, k, j), (d, a, b, e) in itertools.product(form, form):
+                doubled[i + a, k + b, j + e] += c * d
+            square = [(c, *key) for key, c in doubled.items()]
             for i, order in enumerate(orders):
                 if not multiple:
                     assert reduction.order_reaches(square, i, 2 * order)
@@ -431,7 +404,7 @@ def test_primes() -> None:
 
 
 def test_smoothness_agrees_with_the_engine() -> None:
-    """Hyperelliptic models against the engine; plane quartics against singular points over F_v and F_{v^2}."""
+    """On models y^2 + h y = f."""
     rng, seen = random.Random(5), set()
     for _ in range(300):
         g = rng.choice([2, 3])
@@ -499,26 +472,21 @@ def test_statement_in_words() -> None:
 @pytest.mark.parametrize(
     "name", ["closed_point", "residue_characteristic_two", "genus_three", "plane_discs", "plane_closed_place"]
 )
-def test_logarithms_agree_with_the_engine(name: str) -> None:
-    """Log of the generators, to all digits that the checker has."""
+def test_discs_agree_with_the_engine(name: str) -> None:
+    """All digits of the differentials, in every disc with the same centre, those at infinity included."""
     with (CORPUS / "accepted" / f"{name}.jsonl").open("rb") as stream:
         proof = checker.check(stream)
-    ((p, padic),) = proof.padics.items()
-    curve: Any
-    if proof.curve.weight == 1:
-        curve = PlaneCurve({(i, k, j): c for c, i, k, j in proof.curve.form})
-    else:
-        curve = HyperellipticCurve([-c for c in proof.curve.rows[0]], proof.curve.rows[1])
-    integrals = PadicIntegrals(curve, p, padic.digits + 5)
-    for generator in proof.generators:
-        ball = padic.log(generator)
-        places = {number: _engine_place(curve, place) for number, place in enumerate(proof.places)}
-        terms = [
-            (k, RationalPlace(what) if kind == "point" else places[what])
-            for k, kind, what in generator
-            if kind != "fibres"
-        ]
-        fibres = sum(k * what for k, kind, what in generator if kind == "fibres")
-        found = integrals.log(Divisor.of([*terms, (fibres, FibrePlace(1))] if fibres else terms))
-        for own, value in zip(ball.numerators, found, strict=True):
-            assert _difference(Fraction(own, p**ball.shift), value, p) >= ball.precision
+    curve, same = proof.curve, 0
+    for p, padic in proof.padics.items():
+        for number, point in enumerate(padic.reduction.points):
+            disc = ResidueDisc(curve.rows, curve.weight, curve.degree, p, point, number)
+            own = padic.disc(number)
+            assert own.vertical == disc.ramified
+            if own.centre == disc.centre(padic.digits):
+                forms = disc.expansion(padic.digits, padic.series.length).forms
+                assert own.differentials() == [coefficients(form, padic.series.length) for form in forms]
+                same += 1
+            else:
+                # a Weierstrass point is the centre for the engine
+                assert own.vertical and curve.weight > 1 and p > 2
+    assert same >= 3
