@@ -209,6 +209,15 @@ def traps() -> Traps:
         put("local", "base", 0, 1, 0, value=lambda a: (a + 1) % 659, prime=7),
         "plane_points",
     )
+    rejected(
+        "section_with_more_zeros_than_its_degree_has",
+        "form-degree",
+        put("local", "close", 0, 0, 1, value=lambda row: [*row, *[0] * 20]),
+        "plane_points",
+    )
+    out.declined(
+        "equation_of_degree_27", put("header", "equation", value=[[0] * 27 + [1], [1]]), "plane_points"
+    )
     # places
     place = "plane_closed_place"
     rejected(
