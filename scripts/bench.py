@@ -1,10 +1,12 @@
 """Ratios, taken in one run on one core: this engine next to the usual ways.
 
-    python scripts/bench.py [--quick] [local] [joins] [store] [cores] [advice]
+    python scripts/bench.py [--quick] [local] [plane] [joins] [store] [cores] [advice]
 
 local   J(F_v) with the logarithms of all points of X(F_v), next to PARI's point count alone
         (`hyperellcharpoly`) and to the textbook way (order by PARI, Cantor arithmetic, Pohlig-Hellman for
         each point).
+plane   J(F_v) of smooth plane curves: quartics near v = 100, 300, 1000 with the growth of the time, a quintic
+        and a sextic; next to the enumeration of the points alone.
 joins   the sieve by joins next to lift-and-filter (Bruin and Stoll 2010) on the same conditions, up to the
         modulus that the joins reach, along the best path for it.
 store   local data computed next to local data read back.
@@ -38,6 +40,7 @@ from flint import fmpz
 
 from sieve.curves.divisors import Divisor
 from sieve.curves.hyperelliptic import HyperellipticCurve
+from sieve.curves.plane import PlaneCurve
 from sieve.engine.advice import Offer, advise
 from sieve.engine.investigation import FIRST_BOUND, Investigation
 from sieve.engine.join import semijoin
@@ -52,6 +55,7 @@ from sieve.local.picard import PicardGroup, picard_group
 from sieve.local.records import LocalRecord, local_records
 from tests.support.cantor import CantorJacobian
 from tests.support.pohlig_hellman import GroupOracle
+from tests.support.quartics import quartics
 from tests.support.reference_cases import ReferenceCase, reference_case, reference_cases
 
 T = TypeVar("T")
@@ -117,6 +121,38 @@ def bench_local(quick: bool) -> None:
 
 def text(c: Sequence[int]) -> str:
     return "+".join(f"({a})*x^{i}" for i, a in enumerate(c)) or "0"
+
+
+def bench_plane(quick: bool) -> None:
+    """One line for each curve and prime; the growth is the slope of log time against log v."""
+    print("plane curves: J(F_v), structure and logarithms of all points; times in milliseconds")
+    print(f"{'curve':16}{'v':>6}{'points':>8}{'sections':>10}{'engine':>9}{'count':>9}{'ratio':>7}")
+    means: list[tuple[float, float]] = []
+    names = ["X0p97", "X0p113", "X0p139", "X0p151", "X0p239", "level13_split", "level13_S4"]
+    for near in ((97, 101, 103), (293, 307, 311), (991, 997, 1009)):
+        times = []
+        for name in names[: 2 if quick else None]:
+            curve = quartics()[name][0]
+            for v in [p for p in near if curve.is_smooth(p)][: 1 if quick else None]:
+                times.append((v, _plane_line(name, curve, v)))
+        value = mean([t for _, t in times])
+        means.append((mean([float(v) for v, _ in times]), value))
+        print(f"near {means[-1][0]:.0f}: {value * 1e3:.1f} ms (worst {max(t for _, t in times) * 1e3:.1f})")
+    (low, first), (high, last) = means[0], means[-1]
+    print(f"growth: time as v^{log(last / first) / log(high / low):.2f}")
+    for degree, near in ((5, (199, 499)), (6, (1009, 1499))):
+        terms = {(degree, 0, 0): 1, (0, degree, 0): 2, (0, 0, degree): -3, (degree - 1, 0, 1): 1,
+                 (0, degree - 1, 1): -1, (3, 1, degree - 4): 2, (1, degree - 3, 2): -2}
+        for v in near[: 1 if quick else None]:
+            _plane_line(f"degree {degree}", PlaneCurve(terms), v)
+
+
+def _plane_line(name: str, curve: PlaneCurve, v: int) -> float:
+    ours, group = best(lambda: picard_group(curve.modulo(v)), 3)
+    count, _ = best(lambda: curve.modulo(v), 3)
+    print(f"{name:16}{v:6}{len(group.point_logs):8}{group.sections_used:10}{ours * 1e3:9.1f}"
+          f"{count * 1e3:9.2f}{ours / count:7.1f}", flush=True)
+    return ours
 
 
 # ---- joins -----------------------------------------------------------------------------------------------
@@ -344,8 +380,8 @@ def bench_advice(quick: bool) -> None:
 def main() -> None:
     words = sys.argv[1:]
     quick = "--quick" in words
-    sections = {"local": bench_local, "joins": bench_joins, "store": bench_store, "cores": bench_cores,
-                "advice": bench_advice}
+    sections = {"local": bench_local, "plane": bench_plane, "joins": bench_joins, "store": bench_store,
+                "cores": bench_cores, "advice": bench_advice}
     for word in [w for w in words if w != "--quick"] or list(sections):
         sections[word](quick)
 

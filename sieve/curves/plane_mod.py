@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from functools import cached_property
-from math import comb, factorial
+from math import comb, factorial, isqrt
 
 import flint
 import numpy as np
@@ -115,7 +115,7 @@ class ReducedPlane:
         About N^m / (m! v^(m-2)) of them for N points.
         """
         m, v, count = self.degree, self.prime, self.count
-        return v > 40 and 10 * count ** (m - 1) > 13 * factorial(m) * v ** (m - 2)
+        return v > 30 and 10 * count ** (m - 1) > 13 * factorial(m) * v ** (m - 2)
 
     @property
     def section_limit(self) -> int:
@@ -124,7 +124,7 @@ class ReducedPlane:
 
     @property
     def base_size(self) -> int:
-        """How many points are the base of relations."""
+        """How many points are the base of relations, where lines are not listed."""
         return int(2.2 * self.count**0.5) + 2
 
     @property
@@ -276,14 +276,33 @@ class ReducedPlane:
                     split[low + rows] = True
         return s, t, split
 
-    def split_sections(self) -> IntArray | None:
-        """All lines that meet the curve in m different rational points, int64, shape (L, m); None for m = 4.
+    def split_sections(self) -> IntArray:
+        """Lines that meet the curve in m different rational points: enough for m = 4, else all.
 
-        Every pair of points gives a line; those that m (m - 1) / 2 pairs give are the ones.
+        Returns int64, shape (L, m), distinct sorted rows.
         """
+        return self._lines_through_some() if self.degree == 4 else self._lines_by_pairs()
+
+    def _lines_through_some(self) -> IntArray:
+        """From the remaining zeros of all lines through one of some points; more than points by far."""
+        count = self.count
+        some = np.random.default_rng([self.prime, 23]).permutation(count)[: 20 + isqrt(count)]
+        rank = np.full(count, len(some), dtype=np.int64)
+        rank[some] = np.arange(len(some))
+        first, second = np.repeat(some, count), np.tile(np.arange(count), len(some))
+        once = rank[first] < rank[second]
+        choice = np.stack([first[once], second[once]], axis=1).astype(np.int64)
+        rest = self.residuals(choice)
+        split = rest[:, 0] >= 0
+        lines = np.sort(np.concatenate([choice[split], rest[split]], axis=1), axis=1)
+        lines = lines[(lines[:, 1:] != lines[:, :-1]).all(axis=1)]
+        # two points determine the line
+        firsts = np.unique(lines[:, 0] * count + lines[:, 1], return_index=True)[1]
+        return lines[firsts]
+
+    def _lines_by_pairs(self) -> IntArray:
+        """Every pair of points gives a line; those that m (m - 1) / 2 pairs give are the ones."""
         m, v = self.degree, self.prime
-        if m == 4:
-            return None
         first, second = np.triu_indices(self.count, 1)
         (a, b, c), (d, e, f) = self.coordinates[first].T, self.coordinates[second].T
         line = np.stack([b * f - c * e, c * d - a * f, a * e - b * d], axis=1) % v

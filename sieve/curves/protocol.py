@@ -96,7 +96,7 @@ class ReducedCurve(Protocol):
         """The other zeros of sections through usable rows, one row each; -1 where not all are rational."""
 
     def split_sections(self) -> IntArray | None:
-        """All sections with distinct rational zeros, one row each, where they are few; else None."""
+        """Many sections with distinct rational zeros, one row each, if these are easy to list; else None."""
 
     # ---- single sections ---------------------------------------------------------------------------
 

@@ -322,7 +322,10 @@ def random_curve(seed: str, degree: int) -> PlaneCurve:
             pass
 
 
-@pytest.mark.parametrize(("degree", "v"), [(4, 83), (4, 499), (5, 173), (5, 179), (5, 197), (6, 1109)])
+@pytest.mark.parametrize(
+    ("degree", "v"),
+    [(4, 83), (4, 499), (5, 173), (5, 179), (5, 197), pytest.param(6, 1109, marks=pytest.mark.slow)],
+)
 def test_fermat_curves(degree: int, v: int) -> None:
     """x^m + y^m = z^m: #J(F_v) = (1 + v^e)^(g/e) where v^e = -1 modulo m (Weil 1949)."""
     curve = PlaneCurve({(degree, 0, 0): 1, (0, degree, 0): 1, (0, 0, degree): -1})
