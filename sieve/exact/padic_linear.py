@@ -116,6 +116,26 @@ def combine(terms: Sequence[tuple[Fraction, PadicVector]]) -> PadicVector:
     return PadicVector.of(prime, total, shift, precision)
 
 
+def integer_combination(
+    factors: Sequence[int], vectors: Sequence[PadicVector], divisor: int = 1
+) -> PadicVector:
+    """sum factors[i] vectors[i] / divisor, as `combine` does it, for integers that are not all 0.
+
+    >>> v = PadicVector.of(5, (5, 126), 1, 2)
+    >>> integer_combination((2, 0, 4), (v, v, v), 25) == combine([(Fraction(6, 25), v)])
+    True
+    """
+    used = [(k, v) for k, v in zip(factors, vectors, strict=True) if k]
+    prime = used[0][1].prime
+    lost = valuation(divisor, prime)
+    precision = min(v.precision if k % prime else v.precision + valuation(k, prime) for k, v in used)
+    shift = max(v.shift for _, v in used)
+    scaled = [(k if v.shift == shift else k * prime ** (shift - v.shift), v.numerators) for k, v in used]
+    total = [sum(k * n[j] for k, n in scaled) for j in range(len(used[0][1].numerators))]
+    unit = pow(divisor // prime**lost, -1, prime ** max(1, precision + shift))
+    return PadicVector.of(prime, [unit * c for c in total], shift + lost, precision - lost)
+
+
 def independent_rows(matrix: Sequence[Sequence[int]], prime: int, columns: int) -> list[int]:
     """Indices of `columns` rows that span the same lattice over Z_p as all rows, in increasing order.
 

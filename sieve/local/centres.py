@@ -19,10 +19,11 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
-from math import isqrt
+from functools import cached_property
+from math import isqrt, lcm
 
 from sieve.errors import InternalError
-from sieve.exact.padic_linear import PadicVector, combine, independent_rows, rational_inverse
+from sieve.exact.padic_linear import PadicVector, independent_rows, integer_combination, rational_inverse
 from sieve.exact.padic_number import valuation
 from sieve.local.disc_integrals import DiscIntegrals
 from sieve.local.effective import EffectiveRelations, Vector, unit_vectors
@@ -59,6 +60,15 @@ class Basis:
     chosen: tuple[int, ...]
     inverse: tuple[tuple[Fraction, ...], ...]
 
+    @cached_property
+    def scaled(self) -> list[tuple[int, list[int]]]:
+        """For every row of the inverse its common denominator and its numerators."""
+        out = []
+        for line in self.inverse:
+            multiple = lcm(1, *(c.denominator for c in line))
+            out.append((multiple, [c.numerator * (multiple // c.denominator) for c in line]))
+        return out
+
 
 def relation_basis(integrals: DiscIntegrals, group: PicardGroup) -> Basis:
     """A basis of the relations between all discs."""
@@ -87,10 +97,10 @@ def centre_logarithms(integrals: DiscIntegrals, group: PicardGroup, digits: int)
     precision = digits + guard
     working = precision + max(0, loss)
     constants = [_right_side(integrals, basis.rows[i], working) for i in basis.chosen]
-    heads = [combine(list(zip(line, constants, strict=True))) for line in basis.inverse]
+    heads = [integer_combination(line, constants, multiple) for multiple, line in basis.scaled]
     for vector in _surplus(basis):
-        terms = [(Fraction(n), log) for n, log in zip(relations.fold(vector), heads, strict=True)]
-        if not combine(terms).agrees(_right_side(integrals, vector, working)):
+        total = integer_combination(relations.fold(vector), heads)
+        if not total.agrees(_right_side(integrals, vector, working)):
             raise InternalError(f"p = {p}: the integrals do not satisfy the relation {vector}")
     by_orbit = {int(group.curve.orbit[i]): (i, log) for i, log in zip(relations.heads, heads, strict=True)}
     logs = []
@@ -132,8 +142,10 @@ def _surplus(basis: Basis) -> list[Vector]:
 
 def _used(basis: Basis, folded: Vector) -> set[int]:
     """The equations of the basis that occur in an expression of a relation."""
-    total = [Fraction(0)] * len(basis.chosen)
-    for n, line in zip(folded, basis.inverse, strict=True):
+    common = lcm(*(multiple for multiple, _ in basis.scaled))
+    total = [0] * len(basis.chosen)
+    for n, (multiple, line) in zip(folded, basis.scaled, strict=True):
         if n:
-            total = [a + n * b for a, b in zip(total, line, strict=True)]
+            factor = n * (common // multiple)
+            total = [a + factor * b for a, b in zip(total, line, strict=True)]
     return {i for i, c in enumerate(total) if c}

@@ -12,7 +12,7 @@ from collections.abc import Sequence
 from sieve.curves.discs import ResidueDisc
 from sieve.curves.protocol import Curve, ReducedCurve
 from sieve.errors import InternalError
-from sieve.exact.padic_linear import PadicVector
+from sieve.exact.padic_linear import PadicVector, integer_combination
 from sieve.exact.series import (
     characteristic,
     coefficients,
@@ -85,7 +85,7 @@ class DiscIntegrals:
         Zeros in discs only; with a `scheme` over Z/p^N, N >= `working(largest contact order, precision)`, the
         lift vanishes on it, and its own zeros are left out.
         """
-        total = PadicVector.zero(self.prime, self.genus, precision)
+        parts = [PadicVector.zero(self.prime, self.genus, precision)]
         rows = section.rows if scheme is None else section.through(scheme, self.prime)
         for number, order in section.contacts:
             _, exponent = self.working(order, precision)
@@ -93,8 +93,8 @@ class DiscIntegrals:
             monic = distinguished_polynomial(series, self.prime, exponent)
             if monic.degree() != order:
                 raise InternalError(f"{monic.degree()} zeros in a disc where {order} were prescribed")
-            total = total + self.over_roots(number, coefficients(monic, order + 1), precision)
-        return total
+            parts.append(self.over_roots(number, coefficients(monic, order + 1), precision))
+        return integer_combination([1] * len(parts), parts)
 
     def over_scheme(self, number: int, scheme: Scheme, precision: int) -> PadicVector:
         """The integrals from the centre of a disc summed over a scheme all of whose points lie in it.
