@@ -98,11 +98,17 @@ def _residues(row: FloatArray, block: FloatArray, modulus: int, bound: float) ->
 
 @dataclass(eq=False)
 class Rung:
-    """One step of the ladder with its filters; `waiting`, blocks of classes; `met`, how many came so far."""
+    """One step of the ladder with its filters.
+
+    `shift` is b; `modulus`, M at the end of the stage (M L lies in K'); `tidy`, whether coordinates are
+    reduced modulo M after the step; `waiting`, blocks of classes; `met`, how many came so far.
+    """
 
     lift: Lift
     shift: tuple[int, ...]
     filters: tuple[_Filter, ...]
+    modulus: int
+    tidy: bool
     waiting: list[Classes] = field(default_factory=list)
     met: int = 0
 
@@ -185,13 +191,15 @@ def is_symmetric(relation: Relation) -> bool:
 def build_rungs(relations: Sequence[Relation], ladder: Ladder, known: Classes, most: int = 24) -> list[Rung]:
     """The subgroups of the ladder and the tables of the conditions it names, at most so many on each step.
 
-    `known`: vectors, shape (count, n); raises `Inconsistent` when a table excludes one.
+    `known`: vectors, shape (count, n); raises `Inconsistent` when a table excludes one, ValueError when
+    coordinates of classes might not fit into 32 bits.
     """
     n = relations[0].n if relations else len(ladder[0].character)
     basis = [[int(i == j) for j in range(n)] for i in range(n)]
     by_name = {r.name: r for r in relations}
     rungs: list[Rung] = []
-    for lift in ladder:
+    bound = 0
+    for lift, modulus in zip(ladder, _stage_moduli(ladder), strict=True):
         finer, shift = _kernel(basis, lift)
         filters = []
         for name in lift.names[:most]:
@@ -199,14 +207,20 @@ def build_rungs(relations: Sequence[Relation], ladder: Ladder, known: Classes, m
                 made = make_filter(by_name[name], finer, shift, lift.prime)
                 if made is not None:
                     filters.append(made)
-        rungs.append(Rung(lift, tuple(shift), tuple(filters)))
+        growth = (lift.prime - 1) * max(map(abs, shift))
+        if bound + growth >= CODE_LIMIT and rungs:
+            rungs[-1].tidy, bound = True, modulus
+        if bound + growth >= CODE_LIMIT:
+            raise ValueError(f"the modulus {modulus} is too large for steps of order {lift.prime}")
+        bound = modulus if lift.last else bound + growth
+        rungs.append(Rung(lift, tuple(shift), tuple(filters), modulus, lift.last))
         basis = finer
         for made in filters:
-            _check_known(made, known, basis, rungs[-1])
+            _check_known(made, known)
     return rungs
 
 
-def _check_known(made: _Filter, known: Classes, basis: Sequence[Sequence[int]], rung: Rung) -> None:
+def _check_known(made: _Filter, known: Classes) -> None:
     """A known vector is x + j b with j = 0 for x itself: bit 0 must be set."""
     if not len(known):
         return
@@ -327,7 +341,7 @@ def _halving(ladder: Ladder) -> int:
                  if lift.last and modulus > 2 and lift.log_size > log(50)), -1)
 
 
-def _stage_end(classes: Classes, modulus: int, halve: bool) -> Classes:
+def _tidied(classes: Classes, modulus: int, halve: bool) -> Classes:
     """Coordinates reduced to 0..M-1; of x and -x only the first in lexicographic order if asked."""
     classes = classes % np.int32(modulus)
     if not halve:
@@ -347,7 +361,6 @@ def _drain(rungs: Sequence[Rung], n: int, batch: int, most: int | None, halve_at
 
     Every step but the one just filled holds less than a batch: memory is bounded by that and one output.
     """
-    moduli = _stage_moduli([rung.lift for rung in rungs])
     rungs[0].waiting.append(np.zeros((1, n), dtype=np.int32))
     rungs[0].met = 1
     ends: list[Classes] = []
@@ -358,8 +371,8 @@ def _drain(rungs: Sequence[Rung], n: int, batch: int, most: int | None, halve_at
         here = full[-1] if full else next(k for k, count in enumerate(counts) if count)
         block = _take(rungs[here], batch)
         found = expand(rungs[here], block)
-        if rungs[here].lift.last:
-            found = _stage_end(found, moduli[here], here == halve_at)
+        if rungs[here].tidy:
+            found = _tidied(found, rungs[here].modulus, here == halve_at)
         held += len(found) - len(block)
         met += len(found)
         most_held = max(most_held, held + len(block))
@@ -392,12 +405,16 @@ def _take(rung: Rung, batch: int) -> Classes:
 
 
 def _stage_moduli(ladder: Sequence[Lift]) -> list[int]:
-    """For each step the modulus M that its stage has reached so far."""
+    """For each step the modulus M at the end of its stage."""
     out: list[int] = []
     exponents: dict[int, int] = {}
+    waiting = 0
     for lift in ladder:
         exponents[lift.prime] = lift.level + 1
-        out.append(prod(ell**e for ell, e in exponents.items()))
+        waiting += 1
+        if lift.last:
+            out.extend([prod(ell**e for ell, e in exponents.items())] * waiting)
+            waiting = 0
     return out
 
 

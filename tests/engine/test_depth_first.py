@@ -163,3 +163,22 @@ def test_residues_are_exact(bound):
         expected = [sum(int(c) * p[k] for c, p in zip(row, points, strict=True)) % modulus
                     for k in range(200)]
         assert got.tolist() == expected
+
+
+def test_coordinates_stay_in_their_words(monkeypatch):
+    planted, made = conditions(2)
+    relations = [relation_from_condition(c) for c in made]
+    ladder = ladder_for(relations)
+    whole = climb(relations, ladder, known=planted)
+    rungs = depth_first.build_rungs([coarsen(r, TOPS) for r in relations], ladder, np.zeros((0, 3), np.int32))
+    assert {rung.modulus for rung in rungs if rung.tidy} <= {2, 3, 4, 5, 6, 10, 12, 15, 20, 30, 60}
+    assert [rung.tidy for rung in rungs] == [lift.last for lift in ladder]
+    # with narrower words coordinates are reduced more often, with the same result, or the run is refused
+    worst = max((rung.lift.prime - 1) * max(map(abs, rung.shift)) for rung in rungs)
+    monkeypatch.setattr(depth_first, "CODE_LIMIT", 60 + worst + 1)
+    tidier = depth_first.build_rungs(relations, ladder, np.zeros((0, 3), np.int32))
+    assert sum(rung.tidy for rung in tidier) > sum(rung.tidy for rung in rungs)
+    assert climb(relations, ladder, known=planted).relation.codes.tolist() == whole.relation.codes.tolist()
+    monkeypatch.setattr(depth_first, "CODE_LIMIT", worst)
+    with pytest.raises(ValueError, match="too large"):
+        climb(relations, ladder)
