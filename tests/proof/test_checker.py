@@ -395,6 +395,20 @@ def test_group_of_a_quintic(v: int) -> None:
             check(invariants=changed)
 
 
+def test_a_line_through_a_place() -> None:
+    """The closed place and the point (0 : 0 : 1) are the zeros of x = y: in every group, and for Log."""
+    with (CORPUS / "accepted" / "plane_closed_place.jsonl").open("rb") as stream:
+        proof = checker.check(stream)
+    assert len(proof.locals) >= 4 and len(proof.padics) == 1
+    for local in proof.locals.values():
+        line = [(1, local.places[0]), (1, local.class_of((0, 0, 1))), (-1, local.unit)]
+        assert any(local.places[0]) and not any(local.sum(line))
+    for padic in proof.padics.values():
+        divisor = [(1, "closed", 0), (1, "point", (0, 0, 1))]
+        ball = padic.log(divisor)
+        assert ball.precision >= 3 and not any(ball.numerators) and any(padic.log(divisor[:1]).numerators)
+
+
 def test_primes() -> None:
     small = [n for n in range(2, 3000) if all(n % d for d in range(2, n))]
     assert [n for n in range(3000) if checker.is_prime(n)] == small

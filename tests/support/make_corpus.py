@@ -2,7 +2,8 @@
 
 Run as `python -m tests.support.make_corpus` to write data/proofs/{rejected,malformed,declined} and
 expected.tsv anew; the result depends on the accepted logs alone.  The expectations are written by hand in
-`corpus_statement`, `corpus_evidence`, `corpus_plane`, `corpus_zeros` and `corpus_fates`, never taken from the checker.
+`corpus_statement`, `corpus_evidence`, `corpus_plane`, `corpus_fates` and `corpus_zeros`, never taken from
+the checker.
 """
 
 from __future__ import annotations
