@@ -302,6 +302,8 @@ def reason_of(run: Run, listing: CandidateList, kind: str) -> str:
             text += f", and the others hold no other {kind} point"
         return f"{text}."
     if not listing.rests_on_claim(run.decisions):
+        if not listing.candidates:
+            return f"The annihilating integrals at {p} have no common zero, as counting zeros proves."
         return (
             f"Every {kind} point is near a candidate at {p}, as counting zeros of annihilating integrals "
             "proves, and every candidate is decided."

@@ -116,7 +116,7 @@ def prove_list(investigation: Investigation, listing: CandidateList) -> None:
     """
     problem, place = investigation.problem, listing.place
     listing.proved_complete = listing.covers(problem.integral)
-    located = any(c.kind != "coefficients" for c in listing.candidates)
+    located = not listing.candidates or any(c.kind != "coefficients" for c in listing.candidates)
     if problem.rank < problem.curve.genus and place.prime > 2 and located and not listing.blocked:
         try:
             listing.proof = zero_proof(

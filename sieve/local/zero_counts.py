@@ -45,6 +45,9 @@ EXTRA_DIGITS = 4
 LARGEST_FACTOR = 4
 """At most about this many times the digits of the candidates are computed."""
 
+DEEPEST = 3
+"""Without candidates t is looked at modulo p^(DEEPEST + 1), with candidates to their digits."""
+
 Ball = tuple[int, int, int]
 """(disc, value, digits): the points of a disc whose parameter is `value` modulo p^digits, digits >= 1."""
 
@@ -248,7 +251,7 @@ def zero_proof(
     `Inconsistent`.
     """
     group = picard_group(curve.modulo(prime)) if group is None else group
-    digits = max([c.digits for c in candidates if c.kind != "coefficients"], default=1)
+    digits = max([c.digits for c in candidates if c.kind != "coefficients"], default=DEEPEST + 1)
     limit = LARGEST_FACTOR * digits + 20
     working = digits + EXTRA_DIGITS
     while True:
@@ -273,7 +276,7 @@ def prove(found: Integrals, candidates: Sequence[LocatedCandidate], integral: bo
     for c in candidates:
         if c.kind != "coefficients" and c.disc is not None:
             balls.setdefault(c.disc, []).append(c)
-    deepest = max((c.digits - 1 for here in balls.values() for c in here), default=0)
+    deepest = max((c.digits - 1 for here in balls.values() for c in here), default=DEEPEST)
     counts: list[tuple[int, int | None]] = []
     bounds: dict[str, BallBound] = {}
     missing: list[Ball] = []

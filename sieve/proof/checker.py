@@ -1314,7 +1314,7 @@ class Zeros:
         need(self.known > 0, "annihilator", "a differential does not annihilate the generators")
         self.origin = padic.log(proof.base)
         here = [c for c in proof.candidates.values() if c.prime == p and c.form != "coefficients"]
-        self.deepest = max([c.digits - 1 for c in here], default=0)
+        self.deepest = max([c.digits - 1 for c in here], default=3)
         self.bounds: dict[str, int] = {}
         self.central: set[str] = set()
         for i, point in enumerate(padic.reduction.points):
@@ -2037,7 +2037,8 @@ class Proof:
         need(len(set(self.points)) == len(points), "points", "a point occurs twice")
         claimed = {r["prime"] for k, r in self.premises.items() if k.startswith("complete ")}
         known = []
-        for p in sorted(claimed | {c.prime for c in self.fates} if conclusion != "none" else ()):
+        at = claimed | {c.prime for c in self.fates} | set(self.zeros)
+        for p in sorted(at if conclusion != "none" else ()):
             listing = [c for c in self.fates if c.prime == p]
             decided = all(c.verdict == "eliminated" or (c.verdict == "rational" and c.sole and (
                 c.proved or p in claimed)) for c in listing)
@@ -2120,7 +2121,9 @@ def statement(proof: Proof) -> str:
             out.append(f"Candidate {c.id} (p = {c.prime}) agrees with {where}{alone}.")
     for p in sorted(proof.zeros):
         how = "zeros of annihilating integrals are counted"
-        out.append(f"Every {kind} point agrees with a candidate at {p}: {how}.")
+        some = any(c.prime == p for c in proof.fates)
+        where = f"Every {kind} point agrees with a candidate" if some else f"No {kind} point is in a residue disc"
+        out.append(f"{where} at {p}: {how}.")
     if proof.conclusion == "points":
         points = ", ".join(map(point_words, proof.points))
         out.append(f"{points_of} has exactly {len(proof.points)} points: {points}.")

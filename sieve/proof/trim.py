@@ -48,7 +48,9 @@ def trim(records: Sequence[Record], image_ells: Collection[int] | None = None) -
                 needs.ells |= set(image_ells or ())
                 needs.every_ell |= image_ells is None
     for p in counted:
-        _need_place(p, padic, local, forms, needs)
+        needs.padic.add(p)
+        if padic.get(p, {}).get("reduction"):
+            needs.primes.add(p)
     for record in records:
         if record["kind"] == "classes" and wants_classes:
             _need_uses(record["uses"], padic, local, forms, needs)

@@ -138,7 +138,8 @@ def _saturation_records(source: ProofInput, needed: set[int], in_use: set[int]) 
 
 def _located(listing: CandidateList) -> bool:
     """Whether the list has points or discs that integrals can tell apart."""
-    return not listing.blocked and any(c.kind != "coefficients" for c in listing.candidates)
+    counted = listing.proof is not None and listing.proof.complete
+    return not listing.blocked and (counted or any(c.kind != "coefficients" for c in listing.candidates))
 
 
 def _needs_group(listing: CandidateList) -> bool:

@@ -121,3 +121,15 @@ def test_a_list_with_too_high_multiplicities_keeps_its_claim(tmp_path: Path) -> 
             assert by_id[c["id"]].verdict == "rational"
             # two rational points are near, and two zeros are possible: these are all
             assert by_id[c["id"]].sole == (len(by_id[c["id"]].points) == c["multiplicity"])
+
+
+def test_no_candidates_at_all(tmp_path: Path) -> None:
+    """y^2 = 2 x^6 + 8 x^4 + 6 x^2 + 8, rank 1 by PARI's ellrank: no common zero modulo 13, so no point."""
+    path = pipeline.write_case(tmp_path, [8, 0, 6, 0, 8, 0, 2], (), 1, "elliptic factors, by PARI")
+    done = pipeline.pipeline(path, 13)
+    assert done.run.lists[0].candidates == [] and not done.run.lists[0].rests_on_claim([])
+    assert run_command.statement(done.run).startswith("X(Q) is empty. (The annihilating integrals at 13")
+    run_command.write_files(done.run, tmp_path / "out")
+    proof = check(records_of(tmp_path / "out" / "proof.jsonl"))
+    assert (proof.conclusion, list(proof.premises)) == ("empty", ["rank"])
+    assert "No rational point is in a residue disc at 13" in checker.statement(proof)
