@@ -2121,8 +2121,9 @@ def statement(proof: Proof) -> str:
             out.append(f"Candidate {c.id} (p = {c.prime}) agrees with {where}{alone}.")
     for p in sorted(proof.zeros):
         how = "zeros of annihilating integrals are counted"
-        some = any(c.prime == p for c in proof.fates)
-        where = f"Every {kind} point agrees with a candidate" if some else f"No {kind} point is in a residue disc"
+        where = f"Every {kind} point agrees with a candidate"
+        if not any(c.prime == p for c in proof.fates):
+            where = f"No {kind} point is in a residue disc"
         out.append(f"{where} at {p}: {how}.")
     if proof.conclusion == "points":
         points = ", ".join(map(point_words, proof.points))

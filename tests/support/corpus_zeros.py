@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
-from tests.support.corpus_edits import Edit, Log, Traps, drop, put, twice
+from tests.support.corpus_edits import Edit, Log, Traps, add, drop, put, twice
 
 
 def _forget(n: int, blame: str, m: int = 0) -> Edit:
@@ -105,6 +105,12 @@ def _other_column(log: Log) -> int:
     return i
 
 
+def _deep_without_group(log: Log) -> int:
+    """J(F_11) is left out, and the logarithms at 11 do without it."""
+    log.records[log.find("padic", prime=11)]["reduction"] = False
+    return drop("local", blame="classes", prime=11)(log)
+
+
 def _conclude_without(premise: str) -> Edit:
     """The premise that bounds the first candidate with a bound is left out."""
 
@@ -156,5 +162,13 @@ def traps() -> Traps:
     out.rejected("disc_with_room_for_two", "not-sole", _sole_with_room, "integral_discs")
     edit = _then(put("group", "integral", value=False), lambda log: log.find("fate", id="d8"))
     out.rejected("integral_points_called_rational", "not-eliminated", edit, "integral_discs")
+    edit = drop("padic", blame="classes", prime=5)
+    out.rejected("deep_without_logarithms", "no-padic", edit, "deep")
+    out.rejected("deep_without_a_group", "no-local", _deep_without_group, "deep")
+    edit = put("classes", "uses", 0, 0, value="deep x")
+    out.malformed("deep_condition_of_no_prime", "use", edit, "deep")
+    edit = put("classes", "uses", 0, 0, value="deep 7")
+    out.rejected("deep_condition_of_another_prime", "no-padic", edit, "deep")
+    out.rejected("deep_with_one_class_more", "count", put("classes", "count", value=add(1)), "deep")
     return out
 

@@ -9,6 +9,7 @@ from collections.abc import Callable, Sequence
 from pathlib import Path
 
 from sieve.commands import candidates, propose
+from sieve.commands import run as run_command
 from sieve.curves.divisors import Point
 from sieve.curves.protocol import Curve
 from sieve.files.resolve import read_case
@@ -110,6 +111,14 @@ def plane_zeros(equation: str, rank: int, p: int) -> Case:
     return make
 
 
+def deep(directory: Path) -> Path:
+    """Few auxiliary primes, so that points modulo q^2 are worth their while."""
+    path = write_case(reference_case("integral_g2"), directory)
+    done = run_command.execute(str(path), [], primes=[3, 5, 7, 11])
+    run_command.write_files(done, directory)
+    return directory / "proof.jsonl"
+
+
 ZERO_CASES: dict[str, Case] = {
     "zeros": by_zeros("quadratic_period_5", 3, 5),
     "zeros_rank_zero": by_zeros("X1_13", 3, 4),
@@ -120,5 +129,6 @@ ZERO_CASES: dict[str, Case] = {
     "zeros_plane": plane_zeros("x^4 + y^4 - z^4 = 0", 0, 3),
     "zeros_plane_rank_two": plane_zeros("x^4 + y^4 - z^4 - x^2*y^2 = 0", 2, 7),
     "integral_discs": integral_discs("integral_g2", 5),
+    "deep": deep,
 }
 """Names in data/proofs/accepted."""
