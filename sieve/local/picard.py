@@ -372,6 +372,8 @@ def _rank(rows: Sequence[Sequence[int]]) -> int:
 
 def _from_exact_sections(curve: ReducedCurve, generated: bool) -> PicardGroup:
     v, g = curve.prime, curve.genus
+    if not curve.section_limit:
+        raise Uncertified(v, "too few sections with rational zeros alone to find all relations")
     counts = [curve.count]
     higher_degree, spare = 1, 0
     reason = "rational points generate (N > (2g-2) sqrt v)"
