@@ -192,6 +192,14 @@ class PlaneForms:
             self._place_rows[key] = self.through_subscheme(degree, ResidueAlgebra(u), coordinates)
         return self._place_rows[key]
 
+    def kernel(self, degree: int, conditions: Sequence[Sequence[int]]) -> list[Form]:
+        """A basis of the forms that meet linear conditions, of which there is at least one."""
+        v, width = self.prime, len(self.monomials(degree))
+        matrix = flint.nmod_mat(len(conditions), width, [c for row in conditions for c in row], v)
+        basis, nullity = matrix.nullspace()
+        columns = range(int(nullity))
+        return [Form(degree, tuple(int(basis[i, k]) for i in range(width))) for k in columns]
+
     def solve(
         self, degree: int, conditions: Sequence[Sequence[int]], rng: np.random.Generator
     ) -> Form | None:
@@ -200,14 +208,13 @@ class PlaneForms:
         if not conditions:
             coefficients = rng.integers(0, v, width).tolist()
         else:
-            matrix = flint.nmod_mat(len(conditions), width, [c for row in conditions for c in row], v)
-            basis, nullity = matrix.nullspace()
-            nullity = int(nullity)
-            if nullity == 0:
-                return None
-            weights = [1] if nullity == 1 else rng.integers(0, v, nullity).tolist()
+            basis = self.kernel(degree, conditions)
+            if len(basis) < 2:
+                return basis[0] if basis else None
+            weights = rng.integers(0, v, len(basis)).tolist()
             coefficients = [
-                sum(int(basis[i, k]) * weights[k] for k in range(nullity)) % v for i in range(width)
+                sum(w * form.coefficients[i] for w, form in zip(weights, basis, strict=True)) % v
+                for i in range(width)
             ]
         if not any(coefficients):
             return None

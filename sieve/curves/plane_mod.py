@@ -277,11 +277,14 @@ class ReducedPlane:
         return s, t, split
 
     def split_sections(self) -> IntArray:
-        """Lines that meet the curve in m different rational points: enough for m = 4, else all.
+        """Lines that meet the curve in rational points alone.
 
-        Returns int64, shape (L, m), distinct sorted rows.
+        m = 4: enough of those with m different points; else all of these, and tangents.  Returns int64, shape
+        (L, m), distinct sorted rows.
         """
-        return self._lines_through_some() if self.degree == 4 else self._lines_by_pairs()
+        if self.degree == 4:
+            return self._lines_through_some()
+        return np.concatenate([self._lines_by_pairs(), self._tangents()])
 
     def _lines_through_some(self) -> IntArray:
         """From the remaining zeros of all lines through one of some points; more than points by far."""
@@ -317,9 +320,24 @@ class ReducedPlane:
         rows = order[starts[pairs == m * (m - 1) // 2][:, None] + np.arange(m - 1)]
         return np.concatenate([first[rows[:, :1]], second[rows]], axis=1).astype(np.int64)
 
+    def _tangents(self) -> IntArray:
+        """The tangents that meet the curve in rational points alone, with multiplicities."""
+        rows = set()
+        for number in range(self.count):
+            zeros = self.forms.rational_zeros(self.through([number, number]))
+            row = tuple(i for i, order in zeros for _ in range(order))
+            if len(row) == self.degree:
+                rows.add(row)
+        return np.array(sorted(rows), dtype=np.int64).reshape(len(rows), self.degree)
+
     def through(self, points: Sequence[int]) -> Form:
-        """The line through the first two of these points, which are different."""
-        (a, b, c), (d, e, f) = self.points[points[0]], self.points[points[1]]
+        """The line through the first two different ones of these points, or the tangent at the only one."""
+        other = next((i for i in points if i != points[0]), None)
+        if other is None:
+            conditions = self.forms.through_point(1, points[0], 2)
+            (form,) = self.forms.kernel(1, conditions)
+            return form
+        (a, b, c), (d, e, f) = self.points[points[0]], self.points[other]
         x, y, z = (b * f - c * e, c * d - a * f, a * e - b * d)
         return Form(1, (z % self.prime, x % self.prime, y % self.prime))
 

@@ -96,12 +96,12 @@ class ReducedCurve(Protocol):
         """The other zeros of sections through usable rows, one row each; -1 where not all are rational."""
 
     def split_sections(self) -> IntArray | None:
-        """Many sections with distinct rational zeros, one row each, if these are easy to list; else None."""
+        """Many sections with rational zeros alone, one row each, if these are easy to list; else None."""
 
     # ---- single sections ---------------------------------------------------------------------------
 
     def through(self, points: Sequence[int]) -> Any:
-        """The section through a usable row (the first `points_per_section` numbers)."""
+        """The section through a usable row (the first `points_per_section` numbers), or with these zeros."""
 
     def encode(self, section: Any) -> tuple[int, Rows]:
         """The multiple n of U that the section has, and the rows of its form, as logs write them."""

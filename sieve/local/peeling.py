@@ -1,6 +1,6 @@
 """A small base for relations with few points each: sections that define all other points one after another.
 
-Given many sections through distinct rational points, base points are chosen greedily: whenever no section
+Given many sections with rational zeros alone, base points are chosen greedily: whenever no section
 has exactly one unknown point, the point that the most sections with two unknown points share joins the base.
 What is left over are relations between base points (structured elimination, as for any sparse system).
 """
@@ -28,7 +28,10 @@ class Peeling:
 
 
 def peel(sections: IntArray, count: int) -> Peeling:
-    """Order sections, int64, shape (L, m), of distinct point numbers below `count`, by what they define."""
+    """Order sections by what they define.
+
+    Arguments: `sections`, int64, shape (L, m), rows of zeros with repetition, numbers below `count`.
+    """
     known = np.zeros(count, dtype=bool)
     depth = np.zeros(count, dtype=np.int64)
     used = np.zeros(len(sections), dtype=bool)

@@ -326,7 +326,7 @@ def _finish(curve: ReducedCurve, state: _Definitions, group: FiniteQuotient, sec
 
 
 def _from_all_sections(curve: ReducedCurve, sections: IntArray) -> PicardGroup | None:
-    """The group from listed sections with distinct rational zeros, where every point is its own orbit."""
+    """The group from listed sections with rational zeros alone, where every point is its own orbit."""
     lower = order_lower_bound(curve.prime, curve.genus, curve.count)
     plan = peel(sections, curve.count)
     # the first base point is P0, whose class is 0

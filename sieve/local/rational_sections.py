@@ -171,7 +171,7 @@ def _choose(
 
 
 def _peeled(group: PicardGroup, sections: IntArray) -> Presentation | None:
-    """From listed sections with distinct rational zeros, where every point is its own orbit."""
+    """From listed sections with rational zeros alone, where every point is its own orbit."""
     curve = group.curve
     plan = peel(sections, curve.count)
     # the base of the group itself: P0 comes first
