@@ -25,7 +25,7 @@ sys.path.insert(0, str(Path(__file__).resolve().parent.parent))
 from sieve.engine.depth_first import Rung, climb
 from sieve.engine.relation import Relation
 from sieve.engine.staged import Ladder, plan_ladder
-from tests.support.high_rank import gather, tops_of
+from tests.support.high_rank import down_to_known, gather, tops_of
 
 
 def say(text: str) -> None:
@@ -108,6 +108,9 @@ def main(arguments: Sequence[str]) -> int:
         f"{progress.elapsed:.0f} s, peak memory {peak:.2f} GiB")
     say(f"{left.count} classes are left modulo a subgroup of index {left.index} = "
         f"10^{log10(left.index):.1f}, {classes_of(left, known)} of them those of known points")
+    alone = down_to_known(left, known)
+    if alone.index < left.index:
+        say(f"modulo a subgroup of index {alone.index} = 10^{log10(alone.index):.1f} none but these")
     return 0
 
 

@@ -22,15 +22,13 @@ from numpy.typing import NDArray
 
 from sieve.engine.codes import CODE_LIMIT
 from sieve.engine.join import semijoin
+from sieve.engine.lift_tables import LiftTable, make_table, mask_type
 from sieve.engine.relation import Relation, coarsen, merge_equal, trivial
 from sieve.engine.staged import Ladder, Lift, thrown
 from sieve.errors import Inconsistent, InternalError, LimitReached
-from sieve.exact.abelian import quotient_by
 from sieve.exact.primary import Characters
 
 Classes = NDArray[np.int32]
-FloatArray = NDArray[np.float64]
-IntArray = NDArray[np.int64]
 
 BATCH = 1 << 16
 """A step is worked on when so many classes wait for it."""
@@ -39,61 +37,10 @@ BLOCK = 1 << 15
 """So many classes are worked on at once (they stay in the cache)."""
 
 LARGEST_MODULUS = 1 << 29
-"""Largest M: coordinates of classes are 32-bit integers below 2 M."""
-
-_TABLE = 1 << 18
-_SPARE = 32
-"""Tables longer than 2^18 are hashed to so many entries for each allowed class."""
-
-_EXACT_FLOAT = 2.0**50
+"""Largest M: coordinates of classes are 32-bit integers."""
 
 _FULL = 25.0
 """Conditions that throw more classes than this on each class of their quotient modulo M are left out."""
-
-
-@dataclass(frozen=True, eq=False)
-class _Filter:
-    """One condition on one step.
-
-    `moduli`: the group J(F_v)/phi_v(K') as a product of cyclic groups; `weights`, shape (len(moduli), n): the
-    images of the unit vectors, entries between -m/2 and m/2; `masks`: bit j of the entry at the key of x says
-    whether x + j b is allowed; `strides`: key = sum of strides times codes, modulo the length of the table
-    (a power of two) if `hashed`.
-    """
-
-    name: str
-    moduli: tuple[int, ...]
-    weights: FloatArray
-    strides: tuple[int, ...]
-    hashed: bool
-    masks: NDArray[np.unsignedinteger]
-
-    def keys(self, block: FloatArray, bound: float) -> IntArray:
-        """The keys of classes, shape (count,), from their coordinates, shape (count, n), of size <= bound."""
-        key: IntArray | None = None
-        for modulus, row, stride in zip(self.moduli, self.weights, self.strides, strict=True):
-            code = _residues(row, block, modulus, bound)
-            term = code if stride == 1 else code * stride
-            key = term if key is None else key + term
-        assert key is not None
-        return key & (len(self.masks) - 1) if self.hashed else key
-
-
-def _residues(row: FloatArray, block: FloatArray, modulus: int, bound: float) -> IntArray:
-    """block . row modulo m, exactly: in floating point below 2^50, in integers beyond."""
-    if float(np.abs(row).sum()) * bound < _EXACT_FLOAT:
-        value = block @ row
-        # value + 1/2 is at least 1/2 away from the multiples of m: the rounding of the quotient is harmless
-        quotient = np.floor((value + 0.5) * (1.0 / modulus))
-        quotient *= modulus
-        value -= quotient
-        return value.astype(np.int64)
-    total = np.zeros(len(block), dtype=np.int64)
-    for weight, coordinates in zip(row.tolist(), block.T, strict=True):
-        if weight:
-            # both factors are below 2^31
-            total += coordinates.astype(np.int64) % modulus * (int(weight) % modulus) % modulus
-    return total % modulus
 
 
 @dataclass(eq=False)
@@ -106,7 +53,7 @@ class Rung:
 
     lift: Lift
     shift: tuple[int, ...]
-    filters: tuple[_Filter, ...]
+    filters: tuple[LiftTable, ...]
     modulus: int
     tidy: bool
     waiting: list[Classes] = field(default_factory=list)
@@ -204,7 +151,7 @@ def build_rungs(relations: Sequence[Relation], ladder: Ladder, known: Classes, m
         filters = []
         for name in lift.names[:most]:
             if name in by_name:
-                made = make_filter(by_name[name], finer, shift, lift.prime)
+                made = make_table(by_name[name], finer, shift, lift.prime)
                 if made is not None:
                     filters.append(made)
         growth = (lift.prime - 1) * max(map(abs, shift))
@@ -220,7 +167,7 @@ def build_rungs(relations: Sequence[Relation], ladder: Ladder, known: Classes, m
     return rungs
 
 
-def _check_known(made: _Filter, known: Classes) -> None:
+def _check_known(made: LiftTable, known: Classes) -> None:
     """A known vector is x + j b with j = 0 for x itself: bit 0 must be set."""
     if not len(known):
         return
@@ -254,57 +201,6 @@ def _kernel(basis: Sequence[Sequence[int]], lift: Lift) -> tuple[list[list[int]]
     return [[int(reduced[i, j]) for j in range(n)] for i in range(n)], list(basis[pivot])
 
 
-def make_filter(relation: Relation, basis: Sequence[Sequence[int]], shift: Sequence[int],
-                ell: int) -> _Filter | None:
-    """The table of a condition in J(F_v)/phi_v(K') for K' with this basis; None if it excludes nothing."""
-    characters = [(row, m) for part in relation.parts for row, m in zip(part.rows, part.moduli, strict=True)]
-    width = len(characters)
-    relators = [[m if i == k else 0 for i in range(width)] for k, (_, m) in enumerate(characters)]
-    relators += [[sum(c * x for c, x in zip(row, vector, strict=True)) % m for row, m in characters]
-                 for vector in basis]
-    quotient = quotient_by(width, relators)
-    if quotient is None or not quotient.invariants or max(quotient.invariants) >= CODE_LIMIT:
-        return None
-    moduli = quotient.invariants
-    maps = np.array(quotient.coordinates, dtype=np.int64)
-    codes = np.zeros((relation.count, len(moduli)), dtype=np.int64)
-    for k in range(width):
-        # factors below 2^31
-        codes += relation.codes[:, k, None] * maps[k] % np.array(moduli, dtype=np.int64)
-    codes %= np.array(moduli, dtype=np.int64)
-    codes = np.unique(codes, axis=0)
-    if len(codes) >= quotient.order:
-        return None
-    units = [[sum(row[j] * quotient.coordinates[k][i] for k, (row, _) in enumerate(characters)) % m
-              for j in range(relation.n)] for i, m in enumerate(moduli)]
-    centred = [[u - m if 2 * u > m else u for u in row] for row, m in zip(units, moduli, strict=True)]
-    weights = np.array(centred, dtype=np.float64)
-    image = [sum(u * x for u, x in zip(row, shift, strict=True)) % m
-             for row, m in zip(units, moduli, strict=True)]
-    size = max(_TABLE, 1 << (_SPARE * len(codes) - 1).bit_length())
-    hashed = quotient.order > size
-    strides = [1]
-    for m in moduli[:-1]:
-        strides.append(strides[-1] * m)
-    if hashed:
-        # odd numbers; a key is below 4 * 2^31 * 2^29
-        strides = [1, *(((1 << 29) * (2 * i + 1) // 7) | 1 for i in range(len(moduli) - 1))]
-    masks = np.zeros(size if hashed else quotient.order, dtype=_word(ell))
-    for j in range(ell):
-        key = np.zeros(len(codes), dtype=np.int64)
-        for i, m in enumerate(moduli):
-            key += (codes[:, i] - j * image[i]) % m * strides[i]
-        if hashed:
-            key &= size - 1
-        masks[key] |= masks.dtype.type(1 << j)
-    return _Filter(relation.name, moduli, weights, tuple(strides), hashed, masks)
-
-
-def _word(bits: int) -> type[np.unsignedinteger]:
-    return next(t for size, t in ((8, np.uint8), (16, np.uint16), (32, np.uint32), (64, np.uint64))
-                if bits <= size)
-
-
 def expand(rung: Rung, classes: Classes) -> Classes:
     """The lifts of classes, shape (count, n), that all filters of the step allow; their order is fixed."""
     pieces: list[Classes] = []
@@ -315,7 +211,7 @@ def expand(rung: Rung, classes: Classes) -> Classes:
 
 def _expand_block(rung: Rung, block: Classes, pieces: list[Classes]) -> None:
     ell = rung.lift.prime
-    word = _word(ell)
+    word = mask_type(ell)
     masks = np.full(len(block), (1 << ell) - 1, dtype=word)
     numbers = block.astype(np.float64)
     bound = float(np.abs(numbers).max(initial=1.0))
@@ -431,5 +327,4 @@ def _relation(ends: Classes, exponents: dict[int, int], n: int) -> Relation:
     return merge_equal(Relation(n, parts, np.concatenate(blocks, axis=1), ()))
 
 
-__all__ = ["BATCH", "LARGEST_MODULUS", "Climb", "Rung", "build_rungs", "climb", "expand", "is_symmetric",
-           "make_filter"]
+__all__ = ["BATCH", "LARGEST_MODULUS", "Climb", "Rung", "build_rungs", "climb", "expand", "is_symmetric"]

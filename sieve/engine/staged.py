@@ -13,15 +13,14 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
-from functools import lru_cache
 from heapq import heappop, heappush
-from itertools import product
 from math import exp, expm1, inf, log, log1p
 
 import numpy as np
 from numpy.typing import NDArray
 
 from sieve.engine.relation import Relation
+from sieve.engine.stage_characters import StageCharacters
 
 Exponents = tuple[int, ...]
 FloatArray = NDArray[np.float64]
@@ -29,9 +28,6 @@ IntArray = NDArray[np.int64]
 
 LARGEST_PRIME = 61
 """The modulus grows by primes up to this one (a set of residues modulo l is one machine word)."""
-
-_MOST_LINES = 20_000
-"""Subspaces with more lines than this count by their given vectors only."""
 
 
 @dataclass(frozen=True)
@@ -108,89 +104,6 @@ def may_exclude(points: int, orders: Sequence[int], tops: Mapping[int, int], lea
     return False
 
 
-@lru_cache(maxsize=256)
-def _combinations(prime: int, rank: int) -> IntArray:
-    """One vector for each line of F_l^rank, the first entry that is not 0 being 1; shape (lines, rank)."""
-    if (prime**rank - 1) // (prime - 1) > _MOST_LINES:
-        return np.eye(rank, dtype=np.int64)
-    rows = [(0,) * lead + (1, *tail) for lead in range(rank)
-            for tail in product(range(prime), repeat=rank - lead - 1)]
-    return np.array(rows, dtype=np.int64)
-
-
-@dataclass(frozen=True, eq=False)
-class _Characters:
-    """What the conditions see of the characters of order l of the current subgroup.
-
-    F_l^d is the space of those characters that are left in the stage; `columns` says which of the n
-    coordinates they are (the others are 0). `spaces`: for each rank r the conditions (numbers, shape (k,))
-    and the independent vectors that span what they see (shape (k, r, d)).  `lines`, sorted ids of all lines
-    seen; `line`, `owner`, `lead`: for each pair of a line and a condition that sees it the place in `lines`,
-    the condition and the place of a vector that the line can replace in the span.
-    """
-
-    prime: int
-    columns: tuple[int, ...]
-    spaces: dict[int, tuple[IntArray, IntArray]]
-    lines: IntArray
-    line: IntArray
-    owner: IntArray
-    lead: IntArray
-
-    @staticmethod
-    def of(prime: int, columns: tuple[int, ...], spaces: dict[int, tuple[IntArray, IntArray]]) -> _Characters:
-        ids, owners, leads = [], [], []
-        inverse = np.array([0, *(pow(a, -1, prime) for a in range(1, prime))], dtype=np.int64)
-        weights = np.array([prime**k for k in reversed(range(len(columns)))], dtype=np.int64)
-        for rank, (who, vectors) in sorted(spaces.items()):
-            choice = _combinations(prime, rank)
-            # entries below l^2 n, far inside int64
-            found = np.einsum("cr,krd->kcd", choice, vectors) % prime
-            first = np.take_along_axis(found, (found != 0).argmax(axis=2)[:, :, None], axis=2)
-            ids.append(((found * inverse[first] % prime) @ weights).reshape(-1))
-            owners.append(np.repeat(who, len(choice)))
-            leads.append(np.tile((choice != 0).argmax(axis=1), len(who)))
-        empty = np.zeros(0, dtype=np.int64)
-        ids_of = np.concatenate(ids) if ids else empty
-        lines, line = np.unique(ids_of, return_inverse=True)
-        return _Characters(prime, columns, spaces, lines, line.reshape(-1),
-                           np.concatenate(owners) if owners else empty,
-                           np.concatenate(leads) if leads else empty)
-
-    def vector(self, place: int) -> tuple[int, ...]:
-        """The vector of a line in F_l^d."""
-        value, out = int(self.lines[place]), []
-        for _ in self.columns:
-            value, digit = divmod(value, self.prime)
-            out.append(digit)
-        return tuple(reversed(out))
-
-    def without(self, place: int) -> _Characters:
-        """What is left modulo the line: one coordinate fewer."""
-        pivot_row = np.array(self.vector(place), dtype=np.int64)
-        pivot = int((pivot_row != 0).argmax())
-        keep = [j for j in range(len(self.columns)) if j != pivot]
-        here = self.line == place
-        drop = dict(zip(self.owner[here].tolist(), self.lead[here].tolist(), strict=True))
-        spaces: dict[int, list[tuple[IntArray, IntArray]]] = {}
-        for rank, (who, vectors) in self.spaces.items():
-            left = ((vectors - vectors[:, :, pivot, None] * pivot_row) % self.prime)[:, :, keep]
-            loses = np.isin(who, np.array(sorted(drop), dtype=np.int64))
-            if not loses.all():
-                spaces.setdefault(rank, []).append((who[~loses], left[~loses]))
-            if loses.any() and rank > 1:
-                fewer = np.stack([np.delete(rows, drop[int(v)], axis=0)
-                                  for v, rows in zip(who[loses], left[loses], strict=True)])
-                spaces.setdefault(rank - 1, []).append((who[loses], fewer))
-        merged = {rank: (np.concatenate([who for who, _ in some]), np.concatenate([rows for _, rows in some]))
-                  for rank, some in sorted(spaces.items())}
-        return _Characters.of(self.prime, tuple(self.columns[j] for j in keep), merged)
-
-    def any_line(self) -> tuple[int, ...]:
-        """A character that no condition sees, for the end of a stage: the first coordinate."""
-        return (1, *(0 for _ in self.columns[1:]))
-
-
 @dataclass(frozen=True, eq=False)
 class _Node:
     """A subgroup on the way: log sizes, total so far, log orders of the images in each group, the lifts."""
@@ -207,7 +120,7 @@ class _Flag:
     """A node within a stage: the characters left for each prime, and the gain still hoped for, credited."""
 
     node: _Node
-    left: dict[int, _Characters]
+    left: dict[int, StageCharacters]
     credit: float
 
 
@@ -226,13 +139,13 @@ class Forecast:
         self.primes = sorted(tops)
         self.tops = dict(tops)
         self.thrown = np.array([thrown(r) for r in self.relations], dtype=np.float64)
-        self._starts: dict[tuple[int, int], _Characters] = {}
+        self._starts: dict[tuple[int, int], StageCharacters] = {}
 
     def start(self) -> _Node:
         """L itself."""
         return _Node(0.0, float(log_density(self.thrown).sum()), -inf, np.zeros(len(self.relations)), ())
 
-    def characters(self, ell: int, level: int) -> _Characters:
+    def characters(self, ell: int, level: int) -> StageCharacters:
         """What the conditions see of the characters of order l of M L, for l^level exactly dividing M."""
         if (ell, level) not in self._starts:
             found: dict[int, list[tuple[int, list[tuple[int, ...]]]]] = {}
@@ -246,7 +159,7 @@ class Forecast:
             spaces = {rank: (np.array([k for k, _ in some], dtype=np.int64),
                              np.array([rows for _, rows in some], dtype=np.int64))
                       for rank, some in found.items()}
-            self._starts[ell, level] = _Characters.of(ell, tuple(range(self.n)), spaces)
+            self._starts[ell, level] = StageCharacters.of(ell, tuple(range(self.n)), spaces)
         return self._starts[ell, level]
 
     def stage(self, node: _Node, primes: Sequence[int], exponents: Mapping[int, int], width: int = 5,
@@ -282,7 +195,7 @@ class Forecast:
         total = float(np.logaddexp(node.log_total, end.log_total))
         return replace(end, log_total=total, lifts=(*node.lifts, *end.lifts))
 
-    def _worth(self, node: _Node, left: Mapping[int, _Characters]) -> FloatArray:
+    def _worth(self, node: _Node, left: Mapping[int, StageCharacters]) -> FloatArray:
         """For each condition what it will exclude in the stage, for each unit of log order that it gains."""
         growth = np.zeros(len(self.relations))
         for ell, seen in left.items():
@@ -332,7 +245,7 @@ class Forecast:
         index = node.log_index + log(ell)
         lift = Lift(ell, exponents.get(ell, 0), tuple(character), tuple(names), index, size, last)
         pivot = next(j for j, value in enumerate(short) if value)
-        rest = seen.without(line) if line >= 0 else _Characters.of(
+        rest = seen.without(line) if line >= 0 else StageCharacters.of(
             ell, tuple(c for j, c in enumerate(seen.columns) if j != pivot), {})
         return _Flag(_Node(index, size, total, orders, (*node.lifts, lift)), {**flag.left, ell: rest}, credit)
 

@@ -11,7 +11,7 @@ from scripts.high_rank import main
 from sieve.engine.depth_first import climb
 from sieve.engine.staged import plan_ladder
 from sieve.engine.verdicts import surviving_classes
-from tests.support.high_rank import gather, tops_of
+from tests.support.high_rank import down_to_known, gather, tops_of
 from tests.support.problems import investigate, known_point_problem
 from tests.support.reference_cases import reference_case
 from tests.support.sweep import full_sweep
@@ -64,10 +64,11 @@ def test_rank_three_beyond_ten_to_the_twenty() -> None:
 
 def test_the_script_says_what_is_left(capsys: pytest.CaptureFixture[str]) -> None:
     assert main(["y2_minus_y_x5_minus_x", "--bound", "2000"]) == 0
-    *_, line = capsys.readouterr().out.splitlines()
+    *_, line, last = capsys.readouterr().out.splitlines()
     found = re.fullmatch(r"(\d+) classes are left modulo a subgroup of index (\d+) = .*, 17 of them .*", line)
     # classes near one known point at some primes and near another elsewhere need more primes than these
     assert found and 17 < int(found[1]) < 60 and int(found[2]) >= 10**20
+    assert re.fullmatch(r"modulo a subgroup of index \d+ = 10\^\d+\.\d none but these", last)
 
 
 @pytest.mark.slow
@@ -77,7 +78,8 @@ def test_rank_six_beyond_ten_to_the_twenty() -> None:
                                      1e-3 if full else 1e9)
     assert len(known) == 39 and result.halved
     if full:
-        assert result.relation.count == 39
+        alone = down_to_known(result.relation, known)
+        assert alone.count == 39 and alone.index > 10**20 and result.relation.count < 100
     # sizes are those that the counts foretell (one of each pair is followed)
     sizes = [*result.sizes[1:], result.relation.count // 2]
     ends = [(lift, 2 * met) for lift, met in zip(ladder, sizes, strict=True) if lift.last and met > 500]

@@ -11,6 +11,7 @@ import numpy as np
 import pytest
 
 import sieve.engine.depth_first as depth_first
+import sieve.engine.lift_tables as lift_tables
 from sieve.engine.depth_first import climb, is_symmetric
 from sieve.engine.join import join
 from sieve.engine.relation import coarsen, relation_from_condition
@@ -84,11 +85,11 @@ def test_hashed_tables_change_nothing(seed, monkeypatch):
     relations = [relation_from_condition(c) for c in made]
     ladder = ladder_for(relations)
     exact = climb(relations, ladder, known=planted)
-    monkeypatch.setattr(depth_first, "_TABLE", 2)
-    monkeypatch.setattr(depth_first, "_SPARE", 1)
+    monkeypatch.setattr(lift_tables, "_TABLE", 2)
+    monkeypatch.setattr(lift_tables, "_SPARE", 1)
     found = []
-    make = depth_first.make_filter
-    monkeypatch.setattr(depth_first, "make_filter", lambda *a: found.append(make(*a)) or found[-1])
+    make = depth_first.make_table
+    monkeypatch.setattr(depth_first, "make_table", lambda *a: found.append(make(*a)) or found[-1])
     hashed = climb(relations, ladder, known=planted)
     assert any(f is not None and f.hashed for f in found)
     assert hashed.relation.codes.tolist() == exact.relation.codes.tolist()
@@ -159,7 +160,7 @@ def test_residues_are_exact(bound):
         points = [[rng.choice((0, bound, -bound, rng.randint(-bound, bound))) for _ in range(200)]
                   for _ in range(6)]
         # multiples of the modulus and their neighbours
-        got = depth_first._residues(row, np.array(points, dtype=np.float64).T, modulus, float(bound))
+        got = lift_tables.residues(row, np.array(points, dtype=np.float64).T, modulus, float(bound))
         expected = [sum(int(c) * p[k] for c, p in zip(row, points, strict=True)) % modulus
                     for k in range(200)]
         assert got.tolist() == expected

@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 
 from sieve.engine.investigation import Investigation
-from sieve.engine.relation import Relation, relation_from_condition
+from sieve.engine.relation import Relation, coarsen, relation_from_condition
 from sieve.engine.staged import may_exclude
 from sieve.exact.primes import primes_below
 from sieve.local.quick_order import quick_order
@@ -48,3 +48,15 @@ def gather(name: str, bound: int, report: Callable[[int, int], None] | None = No
 def tops_of(investigation: Investigation) -> dict[int, int]:
     """`TOPS` at the primes where the group is proved saturated."""
     return {ell: e for ell, e in TOPS.items() if investigation.saturation_at(ell).proved}
+
+
+def down_to_known(relation: Relation, known: Sequence[Sequence[int]]) -> Relation:
+    """The relation, or the finest of its coarsenings l by l that has no class but those of known vectors."""
+    def excess(r: Relation) -> int:
+        return r.count - len({tuple(c for part in r.parts for c in part.values(x)) for x in known})
+
+    while excess(relation):
+        options = [coarsen(relation, {**relation.exponents, ell: e - 1})
+                   for ell, e in sorted(relation.exponents.items())]
+        relation = min(options, key=lambda r: (excess(r) / r.count, -r.index))
+    return relation
