@@ -165,8 +165,11 @@ def match_rational(
                     continue
                 shown = problem.curve.format_point(point)
                 what = f"no candidate is near the rational point {shown}"
+                claim = "the list claims to be complete"
+                if not listing.claimed:
+                    claim = "counting zeros proves the list complete, given the rank"
                 raise Inconsistent(
-                    f"the list claims to be complete, but {what}",
+                    f"{claim}, but {what}",
                     shown,
                     "a candidate near every rational point",
                     listing.name,
