@@ -64,13 +64,15 @@ def outcomes(count: int, seed: int, directory: Path) -> tuple[list[tuple[Hyperel
 
 
 def check(found: list[tuple[HyperellipticCurve, Outcome]], share: float) -> None:
-    decided = 0
+    decided = without_claim = 0
     for curve, outcome in found:
         points = set(search_points(curve, 400))
         assert points <= outcome.points
         if outcome.proved:
             assert points == outcome.points
         decided += not outcome.open_candidates
+        without_claim += not outcome.run.lists[0].rests_on_claim(outcome.run.decisions)
+    assert without_claim >= share * len(found)
     assert decided >= share * len(found)
 
 
