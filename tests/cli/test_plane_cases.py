@@ -218,3 +218,30 @@ def test_own_variables_go_through_everything(tmp_path: Path) -> None:
     assert checked.code == 0 and "u^3*v" in checked.out
     assert sieve("appendix", log, "-o", tmp_path / "a.md").code == 0
     assert "(u : v : w)" in (tmp_path / "a.md").read_text("utf-8")
+
+
+def test_a_quintic_of_genus_six(tmp_path: Path) -> None:
+    """Three points on a quintic: found again among the classes that survive, in a log of exact sections.
+
+    The rank is that of the group of the three points; it is a premise of the test alone.
+    """
+    case = tmp_path / "quintic.toml"
+    case.write_text("""format = "sieve-case/1"
+name = "quintic"
+known_points = ["(0 : 1 : 1)", "(1 : -1 : 0)", "(1 : 0 : 1)"]
+[curve]
+equation = "x^5 + y^5 - z^5 + x*y*z^3 - x^2*y^2*z = 0"
+[jacobian]
+rank = 2
+rank_source = "a premise of the test"
+base = "(0 : 1 : 1)"
+generators_from = "known_points"
+""", "utf-8")
+    done = sieve("run", case, "-o", tmp_path / "out", "--bound", "300", "--jobs", "1", "--json")
+    assert done.code == 1, done.err
+    data = json.loads(done.out)
+    # one class for each known point, and few others
+    assert [["0", "0"], ["0", "1"], ["1", "0"]] == sorted(data["survivors"]["vectors"][:3])
+    assert int(data["survivors"]["quotient"]) > 10**9
+    checked = sieve("check", tmp_path / "out" / "proof.jsonl", "--json")
+    assert checked.code == 0 and "of genus 6" in json.loads(checked.out)["statement"]
