@@ -432,8 +432,19 @@ def integrals(traps: Traps) -> None:
     rejected("integrals_without_the_group", "no-local", drop("local", blame="padic"), "demo")
 
 
+def _nothing_to_see(log: Log) -> int:
+    """No point modulo 3, a place of degree 2, and the section 0 of degree 1, which would say that Log is 0."""
+    place = {"closed": [["1", "0", "1"], ["0", "1"], ["0", "1"], ["1"]]}
+    log.records[log.find("group")].update(rank=1, free=[[[1, place], [-1, {"fibres": 1}]]])
+    record = {"kind": "padic", "prime": 3, "digits": 4, "terms": 8, "sections": [], "discs": []}
+    i = log.find("local")
+    log.records.insert(i, {**record, "places": [[0, [1, [0]]]], "reduction": False})
+    return i
+
+
 def places_that_meet_discs(traps: Traps) -> None:
     rejected = traps.rejected
+    rejected("section_zero_through_a_place", "section-vanishes", whole(_nothing_to_see), "empty_modulo_three")
     rejected(
         "point_eliminated_by_a_place_in_discs", "not-eliminated", _known_point_eliminated, "place_in_discs"
     )

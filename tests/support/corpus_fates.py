@@ -248,7 +248,7 @@ def the_end(traps: Traps) -> None:
     rejected("points_of_a_list_with_an_open_candidate", "conclusion", _conclude_from_open, "forms")
     rejected("points_and_no_conclusion", "conclusion", put("end", "conclusion", value="none"), "demo")
     rejected("empty_although_there_are_points", "conclusion", _claim_empty, "demo")
-    rejected("empty_with_points", "conclusion", _empty_with_points)
+    rejected("empty_with_points", "conclusion", _empty_with_points, "stated_index")
     rejected("number_of_classes", "count", _classes(2, 1), "demo")
     rejected("index_of_classes", "index", _classes(1, 2), "demo")
     rejected("class_twice", "vector", _vectors([[0], [1]]), "demo")
