@@ -91,6 +91,14 @@ def _inexact(log: Log) -> int:
     return log.find("fate", points=log.records[log.find("fate", id=_double(log))]["points"])
 
 
+def _rounded(log: Log) -> int:
+    """The annihilator is known modulo p alone: no zero in a disc is counted any more."""
+    i = log.find("zeros")
+    p = log.records[i]["prime"]
+    log.records[i]["annihilators"] = [[c % p for c in e] for e in log.records[i]["annihilators"]]
+    return log.find("fate", verdict="rational", sole=True)
+
+
 def _double(log: Log) -> str:
     """The id of the first candidate of multiplicity 2."""
     return str(log.records[log.find("candidate", multiplicity=2)]["id"])
@@ -157,6 +165,7 @@ def traps() -> Traps:
     out.rejected("too_few_digits_to_count_zeros", "digits", _few_digits, zeros)
     out.rejected("counted_list_without_the_record", "conclusion", drop(zeros, blame="end"), zeros)
     out.rejected("double_zero_no_longer_certain", "not-sole", _inexact, "zeros_double")
+    out.rejected("annihilator_to_one_digit", "not-sole", _rounded, "zeros_in_discs")
     out.rejected("one_disc_left_out", "conclusion", _forget(6, "end"), "integral_discs")
     out.rejected("bound_of_a_disc_left_out", "not-sole", _conclude_without("bound "), "integral_discs")
     out.rejected("disc_with_room_for_two", "not-sole", _sole_with_room, "integral_discs")

@@ -75,11 +75,15 @@ def chabauty_list(path: Path, p: int, digits: int) -> Path:
     return file
 
 
-def double_zeros(directory: Path) -> Path:
-    """y^2 = x^6 + x^4 + 4 x^2 + 4: the integrals have double zeros at rational points."""
-    source = "ranks of the elliptic factors by PARI"
-    path = pipeline.write_case(directory, [4, 0, 4, 0, 1, 0, 1], (), 1, source)
-    return run_to(directory, path, [chabauty_list(path, 3, 6)], bound=200)[1]
+def double_zeros(f: Sequence[int]) -> Case:
+    """y^2 = f, f even: the integrals have double zeros at rational points with x = 0, or at infinity."""
+
+    def make(directory: Path) -> Path:
+        source = "ranks of the elliptic factors by PARI"
+        path = pipeline.write_case(directory, f, (), 1, source)
+        return run_to(directory, path, [chabauty_list(path, 3, 6)], bound=200)[1]
+
+    return make
 
 
 def integral_discs(name: str, p: int) -> Case:
@@ -124,8 +128,9 @@ ZERO_CASES: dict[str, Case] = {
     "zeros_rank_zero": by_zeros("X1_13", 3, 4),
     "zeros_half_fibre": by_zeros("X0_37", 3, 4, half=True),
     "zeros_integral": by_zeros("quadratic_period_5", 5, 4, integral=True),
-    "zeros_in_discs": by_zeros("X0_37", 5, 1, discs=True),
-    "zeros_double": double_zeros,
+    "zeros_in_discs": by_zeros("quadratic_period_5", 5, 1, discs=True),
+    "zeros_double": double_zeros([4, 0, 4, 0, 1, 0, 1]),
+    "zeros_double_at_infinity": double_zeros([4, 0, -4, 0, 0, 0, 1]),
     "zeros_plane": plane_zeros("x^4 + y^4 - z^4 = 0", 0, 3),
     "zeros_plane_rank_two": plane_zeros("x^4 + y^4 - z^4 - x^2*y^2 = 0", 2, 7),
     "integral_discs": integral_discs("integral_g2", 5),
