@@ -18,6 +18,9 @@ from sieve.local.chabauty import ChabautyPlace, LocatedCandidate
 from sieve.local.condition import Condition
 from sieve.local.zero_counts import ZeroProof, zero_proof
 
+LARGEST_COUNTED = 100
+"""Zeros are counted at primes up to this: the log then needs logarithms in every residue disc."""
+
 VerdictKind = Literal["eliminated", "rational", "open"]
 
 
@@ -117,7 +120,8 @@ def prove_list(investigation: Investigation, listing: CandidateList) -> None:
     problem, place = investigation.problem, listing.place
     listing.proved_complete = listing.covers(problem.integral)
     located = not listing.candidates or any(c.kind != "coefficients" for c in listing.candidates)
-    if problem.rank < problem.curve.genus and place.prime > 2 and located and not listing.blocked:
+    countable = problem.rank < problem.curve.genus and 2 < place.prime <= LARGEST_COUNTED
+    if countable and located and not listing.blocked:
         try:
             listing.proof = zero_proof(
                 problem.curve, problem.base, investigation.generators[: problem.rank], place.prime,
