@@ -22,9 +22,6 @@ REACH = 4000
 LONG_REACH = 20_000
 """Primes below this are considered when a time is given."""
 
-PLANE_REACH = 2000
-"""The same for plane quartics, where the groups themselves are computed, without a first look at orders."""
-
 BLOCK = 16
 """So many groups are computed before their conditions are used (the same for any number of processes)."""
 
@@ -32,12 +29,10 @@ Key = tuple[int, str]
 
 
 def reach_of(curve: Curve, bound: int | None, seconds: float | None) -> int:
-    """How far primes are sought for open candidates: 0 where larger groups take too long (genus 3 and more,
-    but for plane quartics)."""
+    """How far primes are sought by their orders for open candidates: 0 where orders have no quick way (genus 3
+    and more)."""
     if curve.weight == 3:
         return bound or (REACH if seconds is None else LONG_REACH)
-    if curve.weight == 1 and curve.degree == 4:
-        return bound or (PLANE_REACH if seconds is None else REACH)
     return 0
 
 
@@ -88,10 +83,7 @@ def pursue(lists: Sequence[CandidateList], decisions: dict[Key, Decision], ells:
         high = min(high, bound)
         fresh = [v for v in primes_below(high) if v >= low and v not in investigation.records]
         orders = stored.quick_orders(fresh)
-        if orders:
-            best = ranked([hunt for _, hunt in hunts], {v: (q.points, q.orders) for v, q in orders.items()})
-        else:
-            best = [Prospect(v, 0.0, 0) for v in fresh]
+        best = ranked([hunt for _, hunt in hunts], {v: (q.points, q.orders) for v, q in orders.items()})
         say(f"{len(best)} of {len(fresh)} primes from {low} to {high} may help {_open_count(hunts)} "
             "open candidates")
         _use(result, investigation, hunts, best, ells, stored.gather, deadline)

@@ -57,8 +57,11 @@ SEARCH_HEIGHT = 200
 """Rational points up to this height of x are looked for, to recognise candidates not listed in the case."""
 
 
-def default_stages(curve: Curve) -> list[int]:
+def default_stages(curve: Curve, candidates: bool) -> list[int]:
     """Bounds for the auxiliary primes, tried one after the other until every candidate is decided."""
+    if curve.weight == 1 and curve.degree == 4 and candidates:
+        # quickly found groups, no quick orders that would tell which of them to look at
+        return [FIRST_BOUND, 400, 1000, 2000]
     return [FIRST_BOUND, 400, 1000] if curve.weight in (1, 3) else [FIRST_BOUND, 300]
 
 
@@ -208,7 +211,7 @@ def execute(
             f"{files[i].path} claims to be complete but misses the rational point "
             f"{resolved.curve.format_point(point)}: it is used as an incomplete list"
         )
-    stages = default_stages(resolved.curve)
+    stages = default_stages(resolved.curve, bool(files))
     if bound is not None:
         # beyond the usual stages only primes that open candidates can use are looked at
         last = [] if files and bound > stages[-1] and reach_of(resolved.curve, bound, seconds) else [bound]
