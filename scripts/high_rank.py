@@ -23,9 +23,10 @@ from pathlib import Path
 sys.path.insert(0, str(Path(__file__).resolve().parent.parent))
 
 from sieve.engine.depth_first import Rung, climb
+from sieve.engine.higher import climb_further
 from sieve.engine.relation import Relation
 from sieve.engine.staged import Ladder, plan_ladder
-from tests.support.high_rank import down_to_known, gather, tops_of
+from tests.support.high_rank import FURTHER, TOPS, down_to_known, gather, proved
 
 
 def say(text: str) -> None:
@@ -76,20 +77,32 @@ def classes_of(relation: Relation, vectors: Sequence[Sequence[int]]) -> int:
     return len({tuple(c for part in relation.parts for c in part.values(x)) for x in vectors})
 
 
+def show_classes(left: Relation, known: Sequence[Sequence[int]]) -> Relation:
+    """Prints how many there are; returns the finest coarsening with classes of known points alone."""
+    say(f"{left.count} classes are left modulo a subgroup of index {left.index} = "
+        f"10^{log10(left.index):.1f}, {classes_of(left, known)} of them those of known points")
+    alone = down_to_known(left, known)
+    if alone.index < left.index:
+        say(f"modulo a subgroup of index {alone.index} = 10^{log10(alone.index):.1f} none but these")
+    return alone
+
+
 def main(arguments: Sequence[str]) -> int:
     parser = argparse.ArgumentParser(description=(__doc__ or "").split("\n")[0])
     parser.add_argument("name", nargs="?", default="binomial_y2_x5")
     parser.add_argument("--bound", type=int, default=40_000, help="auxiliary primes below this")
     parser.add_argument("--index", type=float, default=1e20, help="the index to be reached, at least")
+    parser.add_argument("--further", action="store_true", help="sieve on from the classes that are left")
     parser.add_argument("--plan", action="store_true", help="stop after the plan")
     given = parser.parse_args(arguments)
     progress = Progress(30)
     investigation, relations = gather(given.name, given.bound, progress.groups)
-    tops = tops_of(investigation)
+    tops, more = proved(investigation, TOPS), proved(investigation, FURTHER)
     known = [c.vector for c in investigation.coordinates.values()]
+    ells = ", ".join(map(str, sorted({*tops, *more})))
     say(f"rank {investigation.problem.rank}, torsion {investigation.orders} (proved: "
-        f"{investigation.torsion_proved()}), saturated at {', '.join(map(str, tops))}; {len(known)} known "
-        f"points; {len(investigation.records)} groups, {len(relations)} conditions, {progress.elapsed:.0f} s")
+        f"{investigation.torsion_proved()}), saturated at {ells}; {len(known)} known points; "
+        f"{len(investigation.records)} groups, {len(relations)} conditions, {progress.elapsed:.0f} s")
     ladder = plan_ladder(relations, tops, log(given.index), rest=1e-3)
     show_plan(ladder)
     if given.plan:
@@ -106,11 +119,12 @@ def main(arguments: Sequence[str]) -> int:
     say(f"{sum(result.sizes):.4g} classes met{' (one of each pair)' if result.halved else ''}, "
         f"{max(result.sizes):.4g} on one step at most, {result.most_held} in memory at a time; "
         f"{progress.elapsed:.0f} s, peak memory {peak:.2f} GiB")
-    say(f"{left.count} classes are left modulo a subgroup of index {left.index} = "
-        f"10^{log10(left.index):.1f}, {classes_of(left, known)} of them those of known points")
-    alone = down_to_known(left, known)
-    if alone.index < left.index:
-        say(f"modulo a subgroup of index {alone.index} = 10^{log10(alone.index):.1f} none but these")
+    left = show_classes(left, known)
+    if given.further and left.count <= 500:
+        most = left.n * sum(e * log(ell) for ell, e in more.items())
+        left, _ = climb_further(relations, left, more, most, known=known)
+        say(f"{progress.elapsed:.0f} s:")
+        show_classes(left, known)
     return 0
 
 

@@ -24,7 +24,7 @@ from sieve.engine.codes import CODE_LIMIT
 from sieve.engine.join import semijoin
 from sieve.engine.lift_tables import LiftTable, make_table, mask_type
 from sieve.engine.relation import Relation, coarsen, merge_equal, trivial
-from sieve.engine.staged import Ladder, Lift, thrown
+from sieve.engine.staged import LARGEST_MODULUS, Ladder, Lift, thrown
 from sieve.errors import Inconsistent, InternalError, LimitReached
 from sieve.exact.primary import Characters
 
@@ -35,9 +35,6 @@ BATCH = 1 << 16
 
 BLOCK = 1 << 15
 """So many classes are worked on at once (they stay in the cache)."""
-
-LARGEST_MODULUS = 1 << 29
-"""Largest M: coordinates of classes are 32-bit integers."""
 
 _FULL = 25.0
 """Conditions that throw more classes than this on each class of their quotient modulo M are left out."""
@@ -327,4 +324,4 @@ def _relation(ends: Classes, exponents: dict[int, int], n: int) -> Relation:
     return merge_equal(Relation(n, parts, np.concatenate(blocks, axis=1), ()))
 
 
-__all__ = ["BATCH", "LARGEST_MODULUS", "Climb", "Rung", "build_rungs", "climb", "expand", "is_symmetric"]
+__all__ = ["BATCH", "Climb", "Rung", "build_rungs", "climb", "expand", "is_symmetric"]

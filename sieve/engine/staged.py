@@ -14,7 +14,7 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from heapq import heappop, heappush
-from math import exp, expm1, inf, log, log1p
+from math import exp, expm1, inf, log, log1p, prod
 
 import numpy as np
 from numpy.typing import NDArray
@@ -28,6 +28,9 @@ IntArray = NDArray[np.int64]
 
 LARGEST_PRIME = 61
 """The modulus grows by primes up to this one (a set of residues modulo l is one machine word)."""
+
+LARGEST_MODULUS = 1 << 29
+"""M stays below this: coordinates of classes are 32-bit integers."""
 
 
 @dataclass(frozen=True)
@@ -264,19 +267,19 @@ def plan_ladder(relations: Sequence[Relation], tops: Mapping[int, int], least_in
     """
     forecast = Forecast(relations, tops)
     primes = forecast.primes
-    heap: list[tuple[float, Exponents, int]] = [(0.0, (0,) * len(primes), 0)]
+    heap: list[tuple[float, float, Exponents, int]] = [(0.0, 0.0, (0,) * len(primes), 0)]
     nodes = [forecast.start()]
     done: set[Exponents] = set()
     best: tuple[bool, float, Ladder] | None = None
     while heap and len(done) < limit:
-        _, here, number = heappop(heap)
+        *_, here, number = heappop(heap)
         if here in done:
             continue
         done.add(here)
         node = nodes[number]
         modulus = dict(zip(primes, here, strict=True))
         if report is not None:
-            report(_product(modulus), node.lifts)
+            report(prod(ell**e for ell, e in modulus.items()), node.lifts)
         reached = node.log_index >= least_index - 1e-9
         if reached and node.log_size <= (log(rest) if rest > 0 else -inf):
             return node.lifts
@@ -288,20 +291,17 @@ def plan_ladder(relations: Sequence[Relation], tops: Mapping[int, int], least_in
             groups += [(a, b) for a in primes for b in primes if a < b <= 7]
         for group in groups:
             there = tuple(e + (ell in group) for ell, e in zip(primes, here, strict=True))
+            if prod(ell**e for ell, e in zip(primes, there, strict=True)) >= LARGEST_MODULUS:
+                continue
             if there in done or any(e > forecast.tops[ell] for ell, e in zip(primes, there, strict=True)):
                 continue
             found = forecast.stage(node, group, modulus, width if len(group) == 1 else max(2, width // 2))
             nodes.append(found)
-            heappush(heap, (round(found.log_total, 9), there, len(nodes) - 1))
+            # totals below one class are all the same: then the largest index comes first
+            heappush(heap, (round(max(found.log_total, 0.0), 9), -round(found.log_index, 9), there,
+                            len(nodes) - 1))
     return best[2] if best else ()
 
 
-def _product(modulus: Mapping[int, int]) -> int:
-    out = 1
-    for ell, e in modulus.items():
-        out *= ell**e
-    return out
-
-
-__all__ = ["LARGEST_PRIME", "Forecast", "Ladder", "Lift", "expected_log_size", "log_density", "may_exclude",
-           "plan_ladder", "thrown"]
+__all__ = ["LARGEST_MODULUS", "LARGEST_PRIME", "Forecast", "Ladder", "Lift", "expected_log_size",
+           "log_density", "may_exclude", "plan_ladder", "thrown"]

@@ -9,9 +9,10 @@ import pytest
 
 from scripts.high_rank import main
 from sieve.engine.depth_first import climb
+from sieve.engine.higher import climb_further
 from sieve.engine.staged import plan_ladder
 from sieve.engine.verdicts import surviving_classes
-from tests.support.high_rank import down_to_known, gather, tops_of
+from tests.support.high_rank import FURTHER, TOPS, down_to_known, gather, proved
 from tests.support.problems import investigate, known_point_problem
 from tests.support.reference_cases import reference_case
 from tests.support.sweep import full_sweep
@@ -50,16 +51,21 @@ def test_rank_six() -> None:
 def climb_to(name: str, bound: int, index: float, rest: float = 1e-3):
     """All classes up to the index; the known points must pass every filter."""
     investigation, relations = gather(name, bound)
-    ladder = plan_ladder(relations, tops_of(investigation), log(index), rest=rest)
+    ladder = plan_ladder(relations, proved(investigation, TOPS), log(index), rest=rest)
     known = [c.vector for c in investigation.coordinates.values()]
     result = climb(relations, ladder, known=known)
     assert result.relation.index >= index and all(map(result.relation.contains, known))
-    return known, ladder, result
+    return investigation, relations, known, ladder, result
 
 
 def test_rank_three_beyond_ten_to_the_twenty() -> None:
-    known, _, result = climb_to("y2_minus_y_x5_minus_x", 6000, 1e20)
-    assert len(known) == result.relation.count == 17
+    investigation, relations, known, _, result = climb_to("y2_minus_y_x5_minus_x", 6000, 1e22)
+    alone = down_to_known(result.relation, known)
+    assert len(known) == alone.count == 17 and alone.index >= 10**20
+    more = proved(investigation, FURTHER)
+    further, _ = climb_further(relations, result.relation, more, log(1e15), known=known)
+    assert further.index > 10**35 and 17 <= further.count < 100 and all(map(further.contains, known))
+    assert down_to_known(further, known).index > 10**30
 
 
 def test_the_script_says_what_is_left(capsys: pytest.CaptureFixture[str]) -> None:
@@ -74,8 +80,8 @@ def test_the_script_says_what_is_left(capsys: pytest.CaptureFixture[str]) -> Non
 @pytest.mark.slow
 def test_rank_six_beyond_ten_to_the_twenty() -> None:
     full = full_sweep()
-    known, ladder, result = climb_to("binomial_y2_x5", 30_000 if full else 300, 1e20 if full else 2e6,
-                                     1e-3 if full else 1e9)
+    _, _, known, ladder, result = climb_to("binomial_y2_x5", 30_000 if full else 300,
+                                           1e20 if full else 2e6, 1e-3 if full else 1e9)
     assert len(known) == 39 and result.halved
     if full:
         alone = down_to_known(result.relation, known)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
 
 from sieve.engine.investigation import Investigation
 from sieve.engine.relation import Relation, coarsen, relation_from_condition
@@ -16,6 +16,9 @@ from tests.support.reference_cases import reference_case
 TOPS = {2: 5, 3: 3, 5: 2, 7: 1, 11: 1, 13: 1}
 """The largest exponents of the modulus."""
 
+FURTHER = {2: 1, 3: 1, 5: 1, 7: 1, 17: 1, 19: 1, 23: 1}
+"""What the modulus grows by when few classes are left."""
+
 START = 150
 """Primes below this are used in any case; the coordinates of the known points come from them."""
 
@@ -25,8 +28,8 @@ def gather(name: str, bound: int, report: Callable[[int, int], None] | None = No
     """The group of the known points of a reference curve, and its conditions at the useful primes.
 
     Arguments: id of a curve of genus 2; a bound for the auxiliary primes; `report` receives the prime and the
-    number of groups so far.  The conditions have the parts at those primes of `TOPS` where the group is
-    proved saturated.
+    number of groups so far.  The conditions have the parts at those primes of `TOPS` and `FURTHER` where the
+    group is proved saturated.
     """
     problem = known_point_problem(reference_case(name))
     investigation = Investigation(problem)
@@ -39,15 +42,15 @@ def gather(name: str, bound: int, report: Callable[[int, int], None] | None = No
             investigation.add(local_record(curve, problem.base, investigation.asked, v))
             if report is not None:
                 report(v, len(investigation.records))
-    ells = [ell for ell in sorted(TOPS) if investigation.saturation_at(ell).proved]
+    ells = [ell for ell in sorted({*TOPS, *FURTHER}) if investigation.saturation_at(ell).proved]
     relations = [relation_from_condition(record.condition(investigation.images(record)), ells)
                  for record in investigation.usable]
     return investigation, [r for r in relations if r.count < r.index]
 
 
-def tops_of(investigation: Investigation) -> dict[int, int]:
-    """`TOPS` at the primes where the group is proved saturated."""
-    return {ell: e for ell, e in TOPS.items() if investigation.saturation_at(ell).proved}
+def proved(investigation: Investigation, tops: Mapping[int, int]) -> dict[int, int]:
+    """The exponents at the primes where the group is proved saturated."""
+    return {ell: e for ell, e in tops.items() if investigation.saturation_at(ell).proved}
 
 
 def down_to_known(relation: Relation, known: Sequence[Sequence[int]]) -> Relation:
