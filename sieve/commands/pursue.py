@@ -29,8 +29,8 @@ Key = tuple[int, str]
 
 
 def reach_of(curve: Curve, bound: int | None, seconds: float | None) -> int:
-    """How far primes are sought by their orders for open candidates: 0 where orders have no quick way (genus 3
-    and more)."""
+    """How far primes are sought by their orders for open candidates: 0 where orders take long (genus 3 and
+    more)."""
     if curve.weight == 3:
         return bound or (REACH if seconds is None else LONG_REACH)
     return 0
