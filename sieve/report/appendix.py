@@ -28,6 +28,7 @@ def appendix(view: LogView, file_name: str) -> list[Block]:
     for p in sorted({r["prime"] for r in _lists(view)}):
         blocks += _candidates(view, p)
     blocks += _classes(view)
+    blocks += _deep(view)
     blocks += _check(view, file_name)
     return blocks
 
@@ -325,9 +326,15 @@ def _names(uses: list[list[Any]]) -> str:
     auxiliary = list(dict.fromkeys(name for name, _, _ in uses if isinstance(name, int)))
     others = list(dict.fromkeys(name for name, _, _ in uses if not isinstance(name, int)))
     parts = ["$v = " + "$, $".join(map(str, auxiliary)) + "$"] if auxiliary else []
-    deep = [f"$X$ modulo ${name[5:]}^2$" for name in others if name.startswith("deep ")]
-    lists = [f"the list at ${name}$" for name in others if not name.startswith("deep ")]
-    return " and ".join(parts + deep + lists)
+    return " and ".join(parts + [_condition(name) for name in others])
+
+
+def _condition(name: int | str) -> str:
+    """A condition in words: at an auxiliary prime, from the points modulo q^2, or from a list."""
+    if isinstance(name, int):
+        return f"${name}$"
+    word, number = name.split(" ", 1)
+    return f"the points of $X$ modulo ${number}^{{2}}$" if word == "deep" else f"the list at ${name}$"
 
 
 def _classes(view: LogView) -> list[Block]:
@@ -335,7 +342,7 @@ def _classes(view: LogView) -> list[Block]:
     for r in view.of("classes"):
         out.append(Heading("Surviving classes"))
         rows = tuple(
-            (f"${name}$", f"${m.factored([(int(q), e) for q, e in exponents.items()])}$",
+            (_condition(name), f"${m.factored([(int(q), e) for q, e in exponents.items()])}$",
              "refine" if kind == "join" else "exclude")
             for name, exponents, kind in r["uses"]
         )  # fmt: skip
@@ -348,6 +355,20 @@ def _classes(view: LogView) -> list[Block]:
             more = f", and {r['count'] - 40} more" if r["count"] > 40 else ""
             out.append(Paragraph(f"Representatives in the generators of $G$: {shown}{more}."))
     return out
+
+
+def _deep(view: LogView) -> list[Block]:
+    """What conditions modulo q^2 are, where they are used."""
+    uses = [use for r in [*view.of("fate"), *view.of("classes")] for use in r.get("uses", [])]
+    primes = sorted({int(name[5:]) for name, _, _ in uses if str(name).startswith("deep ")})
+    if not primes:
+        return []
+    shown = ", ".join(f"${q}$" for q in primes)
+    text = (
+        f"For $q$ = {shown} the points of $X$ modulo $q^{{2}}$, $q$ in each residue disc, were compared with $G$ "
+        "by their classes in $J(\\mathbb{F}_{q})$ and their abelian logarithms modulo $q^{2}$ together."
+    )
+    return [Paragraph(text)]
 
 
 def _check(view: LogView, file_name: str) -> list[Block]:
