@@ -365,8 +365,8 @@ def _deep(view: LogView) -> list[Block]:
         return []
     shown = ", ".join(f"${q}$" for q in primes)
     text = (
-        f"For $q$ = {shown} the points of $X$ modulo $q^{{2}}$, $q$ in each residue disc, were compared with $G$ "
-        "by their classes in $J(\\mathbb{F}_{q})$ and their abelian logarithms modulo $q^{2}$ together."
+        f"For $q$ = {shown} the points of $X$ modulo $q^{{2}}$, $q$ in each residue disc, were compared with "
+        "$G$ by their classes in $J(\\mathbb{F}_{q})$ and their abelian logarithms modulo $q^{2}$ together."
     )
     return [Paragraph(text)]
 
