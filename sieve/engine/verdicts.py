@@ -279,16 +279,15 @@ def _rational(
 def from_fate(p: int, fate: Fate) -> Decision:
     """The decision that a fate means for a candidate at the Chabauty prime p."""
     primes = tuple(dict.fromkeys(prime_of(name) for name in fate.conditions))
+    moduli = [f"{prime_of(name)}{'^2' * name.startswith('deep')}" for name in fate.conditions]
     if fate.kind == "image":
         reason = f"its class modulo {p} and its {p}-adic integrals are not in the image of J(Q)"
         return Decision(p, fate.label, "eliminated", reason, (), fate=fate)
     if fate.kind == "single":
-        reason = f"no point of X modulo {primes[0]} has a class compatible with it"
+        reason = f"no point of X modulo {moduli[0]} has a class compatible with it"
         return Decision(p, fate.label, "eliminated", reason, primes, fate=fate)
     if fate.kind == "several":
-        reason = "no class of the group is compatible with it and with the points modulo " + ", ".join(
-            map(str, primes)
-        )
+        reason = "no class of the group is compatible with it and with the points modulo " + ", ".join(moduli)
         return Decision(p, fate.label, "eliminated", reason, primes, fate=fate)
     hint = "add auxiliary primes (a larger --bound)"
     if fate.kind == "shared":
