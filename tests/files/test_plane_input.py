@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import random
 from fractions import Fraction
 from pathlib import Path
 
@@ -154,3 +155,30 @@ def test_a_point_off_the_curve_has_no_fraction_of_it() -> None:
     curve = PlaneCurve(KLEIN)
     with pytest.raises(ValueError, match="not on the curve"):
         curve.from_user(Fraction(1), Fraction(1), Fraction(1))
+
+
+@pytest.mark.parametrize("name", ["good_plane.toml", "good_plane.json"])
+def test_random_damage_never_crashes(name: str, tmp_path: Path) -> None:
+    rng = random.Random(name)
+    original = (BAD / name).read_bytes()
+    path, refused = tmp_path / name, 0
+    for _ in range(250):
+        data = bytearray(original)
+        for _ in range(rng.randint(1, 3)):
+            place = rng.randrange(len(data))
+            kind = rng.randrange(3)
+            if kind == 0:
+                data[place] = rng.choice(b"0123456789xyz+-*^():,/ \"")
+            elif kind == 1:
+                del data[place : place + rng.randint(1, 5)]
+            else:
+                data[place:place] = data[rng.randrange(len(data)) :][: rng.randint(1, 12)]
+        path.write_bytes(bytes(data))
+        try:
+            problem = read_case(path if name.endswith("toml") else BAD / "good_plane.toml")
+            file = load_candidates(path if name.endswith("json") else BAD / "good_plane.json")
+            check_candidates(file, problem.curve, 1, ())
+        except InputError as error:
+            assert error.line.isprintable() and ", expected " in error.line
+            refused += 1
+    assert 100 < refused < 250
