@@ -304,21 +304,27 @@ class ReducedPlane:
         return lines[firsts]
 
     def _lines_by_pairs(self) -> IntArray:
-        """Every pair of points gives a line; those that m (m - 1) / 2 pairs give are the ones."""
-        m, v = self.degree, self.prime
-        first, second = np.triu_indices(self.count, 1)
-        (a, b, c), (d, e, f) = self.coordinates[first].T, self.coordinates[second].T
-        line = np.stack([b * f - c * e, c * d - a * f, a * e - b * d], axis=1) % v
-        x, y, z = line.T
-        lead = np.where(z != 0, z, np.where(x != 0, x, y))
-        codes = self._code(line * self._inverse[lead][:, None] % v)
-        order = np.argsort(codes, kind="stable")
-        codes = codes[order]
-        starts = np.flatnonzero(np.diff(codes, prepend=-1))
-        pairs = np.diff(starts, append=len(codes))
-        # in the order of a stable sort, the first m - 1 pairs contain the first point
-        rows = order[starts[pairs == m * (m - 1) // 2][:, None] + np.arange(m - 1)]
-        return np.concatenate([first[rows[:, :1]], second[rows]], axis=1).astype(np.int64)
+        """The lines that join a point to exactly m - 1 others of larger number."""
+        m, v, count = self.degree, self.prime, self.count
+        found = []
+        block = max(1, BLOCK // (4 * count))
+        for low in range(0, count, block):
+            size = min(block, count - low)
+            first, second = np.repeat(np.arange(low, low + size), count), np.tile(np.arange(count), size)
+            later = first < second
+            first, second = first[later], second[later]
+            (a, b, c), (d, e, f) = self.coordinates[first].T, self.coordinates[second].T
+            line = np.stack([b * f - c * e, c * d - a * f, a * e - b * d], axis=1) % v
+            x, y, z = line.T
+            lead = np.where(z != 0, z, np.where(x != 0, x, y))
+            codes = self._code(line * self._inverse[lead][:, None] % v) + (first - low) * (v * v + v + 1)
+            order = np.argsort(codes, kind="stable")
+            codes = codes[order]
+            starts = np.flatnonzero(np.diff(codes, prepend=-1))
+            others = np.diff(starts, append=len(codes))
+            rows = order[starts[others == m - 1][:, None] + np.arange(m - 1)]
+            found.append(np.concatenate([first[rows[:, :1]], second[rows]], axis=1))
+        return np.concatenate(found).astype(np.int64)
 
     def _tangents(self) -> IntArray:
         """The tangents that meet the curve in rational points alone, with multiplicities."""
