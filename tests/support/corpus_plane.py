@@ -196,6 +196,12 @@ def traps() -> Traps:
         "plane_points",
     )
     rejected("point_at_infinity_twice", "zero-multiplicity", whole(_twice_at_infinity), "plane_points")
+    rejected(
+        "point_eightfold_after_simpler_zeros",
+        "zero-multiplicity",
+        put("local", "close", 16, 1, value=[5] * 8, prime=7),
+        "plane_points",
+    )
     rejected("section_of_smaller_degree", "form-degree", whole(_smaller_degree), "plane_points")
     rejected("section_of_hidden_degree", "form-degree", whole(_hidden_degree), "plane_points")
     out.malformed("section_of_degree_zero", "range", put("local", "close", 0, 0, 0, value=0), "plane_points")
