@@ -46,7 +46,7 @@ def test_random_points_die_on_every_quartic(name: str) -> None:
 @pytest.mark.parametrize("name", sorted(PRIMES))
 def test_every_log_is_accepted(name: str, tmp_path: Path) -> None:
     case = write_quartic(quartic_case(name), tmp_path)
-    count, bound = (40, "1000") if full_sweep() else (6, "300")
+    count, bound = (40, "2000") if full_sweep() else (6, "300")
     candidates = write_plane_candidates(case, tmp_path / "c.json", PRIMES[name], 6, count, complete=False)
     done = sieve("run", case, "-c", candidates, "-o", tmp_path / "out", "--bound", bound, "--json")
     assert done.code in (0, 1), done.err
