@@ -41,60 +41,48 @@ def test_number_of_mutants() -> None:
 
 
 UNNOTICED = {
-    "field_tables: raise Rejected('field', f'no field of order {size} was found'): left out": (
-        "there is always a primitive polynomial"
-    ),
-    "Disc.__init__: raise Rejected('expansion', 'a residue disc was not expanded'): left out": (
-        "Newton's iteration converges in the steps allowed"
-    ),
-    "Disc.__init__: check == one: now check != one": (
-        "the last step of the inverse; its error is below the digits of the corpus, "
-        "test_discs_agree_with_the_engine sees it"
-    ),
-    "Disc.small_roots: need(divide(series, monic, q)[1] == [] and (not any((c % p for c in monic[:m]))), "
-    "'roots', 'the zeros of a section were not separated'): left out": (
+    "Field.__init__: raise Rejected('field', f'no field of order {self.size} "
+    "was found'): left out": "there is always a primitive polynomial",
+    "Disc.__init__: raise Rejected('expansion', 'a residue disc was not "
+    "expanded'): left out": "Newton's iteration converges in the steps allowed",
+    "Disc.__init__: need(start % p != 0, 'expansion', 'a residue disc was "
+    "not expanded'): left out": "the curve is smooth there; the next line inverts the number",
+    "Disc.differentials: (self.chart > 0) != self.vertical: now (self.chart "
+    "> 0) == self.vertical": "all logarithms change their sign",
+    "Disc.differentials: self.chart > 0: now self.chart <= 0": "all logarithms change their sign",
+    "Padic.small_roots: need(divide(series, monic, q)[1] == [] and (not "
+    "any((c % p for c in monic[:m]))), 'roots', 'the zeros of a section were "
+    "not separated'): left out": (
         "Weierstrass preparation gives this; the lines above it are checked a second time"
     ),
-    "Padic.place: need(len(monic) - 1 == inside[i], 'place-roots', "
-    "'the points of a place were not separated'): left out": (
-        "the zeros of u in a disc are the multiple root of its reduction"
-    ),
-    "Padic.place: source is not None: now source is None": (
-        "saves work alone: what is skipped is subtracted and added again; otherwise more is refused"
-    ),
-    "Local.vector: origin == k > 0: now origin != k > 0": (
-        "relations change by (x, y) -> (x, - 2 x (1, .., 1) - y), which is unimodular: the same index"
+    "Place.__init__: limit(small, 'a place of too large a height or "
+    "degree'): left out": "a limit on time alone: the work is counted as well",
+    "Local.__init__: limit(self.width * self.points <= MAX_ENTRIES, 'too "
+    "many points in terms of the base'): left out": "a limit on memory alone",
+    "Local.vector: limit(not max(map(abs, row)) >> MAX_BITS, 'points far "
+    "from the base'): left out": "a limit on memory alone",
+    "Proof.place: limit(len(self.places) < MAX_PLACES, f'more than "
+    "{MAX_PLACES} places'): left out": "a limit on time alone",
+    "Proof.deep_condition: need(known > 0, 'digits', 'too few digits of the "
+    "logarithms'): left out": "groups of order 1 say nothing, and no integer is a modulus below",
+    "Zeros.functions: p ** (e + 1) <= length + 1: now p ** (e + 1) > length + 1": (
+        "a bound for what is beyond the terms, which are many more than the digits"
     ),
     "insert: i <= j: now i > j": "keeps numbers small alone: pivots are below the modulus anyway",
     "insert: i > j: now i <= j": "keeps numbers small alone",
-    "Proof.branch: need(len(total) <= len(self.curve.square), 'factor', 'the factors have another product')"
-    ": left out": "saves time alone: the product is compared at the end",
+    "Proof.read_branch: need(len(total) <= len(self.curve.square), 'factor', "
+    "'the factors have another product'): left out": "saves time alone: the product is compared at the end",
     "Proof.use: len(self.tables) > 400: now len(self.tables) <= 400": "tables that are kept save time alone",
-    "Work.spend: raise Declined('more work than this checker does'): left out": (
-        "a limit on time alone, tests/proof/test_checker_hostile.py"
-    ),
-    "decode: raise Declined(f'nesting deeper than {MAX_DEPTH}') from None: left out": (
-        "the depth was counted before, tests/proof/test_checker_hostile.py"
-    ),
-    "Proof.read: raise Declined(f'more than {MAX_RECORDS} records'): left out": (
-        "a limit on time alone, tests/proof/test_checker_hostile.py"
-    ),
-    "lines_of: raise Declined(f'a line beyond {MAX_LINE} bytes or a file beyond {MAX_FILE}'): left out": (
-        "a limit on memory alone, tests/proof/test_checker_hostile.py"
-    ),
-    "Proof.divisor: raise Declined(f'more than {MAX_PLACES} places'): left out": "a limit on time alone",
-    "Local.vector: raise Declined('points far from the base'): left out": "a limit on memory alone",
-    "apply: raise Declined(f'more than {MAX_CLASSES} classes'): left out": "a limit on memory alone",
-    "Zeros.functions: p ** (e + 1) <= length + 1: now p ** (e + 1) > length + 1": (
-        "the terms left out matter only where there are as few terms as digits; a section with a zero of "
-        "order 2 needs twice as many"
-    ),
-    "Zeros.disc: (value - v) % p ** depth == 0: now (value - v) % p ** depth != 0": (
-        "only in balls where no coefficient is known: they are refused now, or after more subdivision"
-    ),
-    "Proof.deep_condition: need(known > 0, 'digits', 'too few digits of the logarithms'): left out": (
-        "values modulo 1 allow everything, and a negative power is no modulus"
-    ),
+    "Work.spend: limit(self.done <= MAX_WORK, 'more work than this checker "
+    "does'): left out": "a limit on time alone, tests/proof/test_checker_hostile.py",
+    "decode: raise Declined(f'nesting deeper than {MAX_DEPTH}') from None: "
+    "left out": "the depth was counted before, tests/proof/test_checker_hostile.py",
+    "Proof.read: limit(self.records <= MAX_RECORDS, f'more than "
+    "{MAX_RECORDS} records'): left out": "a limit on time alone, tests/proof/test_checker_hostile.py",
+    "lines_of: raise Declined(f'a line beyond {MAX_LINE} bytes or a file "
+    "beyond {MAX_FILE}'): left out": "a limit on memory alone, tests/proof/test_checker_hostile.py",
+    "apply: limit(len(joined) <= MAX_CLASSES, f'more than {MAX_CLASSES} "
+    "classes'): left out": "a limit on memory alone",
     "main: a != '--json': now a == '--json'": "the command line, test_accepted_alone",
     "main: len(paths) != 1: now len(paths) == 1": "the command line, test_accepted_alone",
     "main: '--json' in arguments: now '--json' not in arguments": "the command line, test_accepted_alone",
