@@ -68,6 +68,7 @@ UNNOTICED = {
     "Zeros.functions: p ** (e + 1) <= length + 1: now p ** (e + 1) > length + 1": (
         "a bound for what is beyond the terms, which are many more than the digits"
     ),
+    "Reduction.__init__: curve.weight > 1 (2): now curve.weight <= 1": "changes the count of work alone",
     "insert: i <= j: now i > j": "keeps numbers small alone: pivots are below the modulus anyway",
     "insert: i > j: now i <= j": "keeps numbers small alone",
     "Proof.read_branch: need(len(total) <= len(self.curve.square), 'factor', "
