@@ -69,6 +69,8 @@ UNNOTICED = {
         "a bound for what is beyond the terms, which are many more than the digits"
     ),
     "Reduction.__init__: curve.weight > 1 (2): now curve.weight <= 1": "changes the count of work alone",
+    "Zeros.disc: (value - v) % p ** depth == 0: now (value - v) % p ** depth "
+    "!= 0": "tells earlier alone that nothing is known of a ball; it is refused later",
     "insert: i <= j: now i > j": "keeps numbers small alone: pivots are below the modulus anyway",
     "insert: i > j: now i <= j": "keeps numbers small alone",
     "Proof.read_branch: need(len(total) <= len(self.curve.square), 'factor', "

@@ -351,6 +351,10 @@ def limits(traps: Traps) -> None:
     declined("many_base_points", put("local", "base", value=lambda b: b * 300), "demo")
     declined("section_of_large_degree", whole(_large_degree), "demo")
     declined("field_too_large", put("local", "counts", value=3, prime=103), "genus_three")
+    declined(
+        "complete_list_at_a_large_prime",
+        _premise(id="complete 1048583", statement="a", source="b", prime=1048583),
+    )
     declined("ell_beyond_the_limit", put("saturated", "ell", value=2**64 + 13), "demo")
 
 
