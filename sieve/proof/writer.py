@@ -111,7 +111,10 @@ def _layout(source: ProofInput) -> tuple[list[Record], set[int]]:
                 "count": relation.count,
                 "index": relation.index,
                 "vectors": vectors
-                if source.outcome and relation.count == source.outcome.relation.count
+                # a finer quotient has other representatives
+                if source.outcome
+                and relation.count == source.outcome.relation.count
+                and relation.index == source.outcome.relation.index
                 else [],
             }
         )
