@@ -135,6 +135,15 @@ def _all_points(log: Log) -> int:
     return log.find("fate")
 
 
+def _integral_point_eliminated(log: Log) -> int:
+    """An integral point by all the uses that some other candidate has."""
+    uses = max((r["uses"] for r in log.records if r.get("uses")), key=len)
+    i = log.find("fate", verdict="rational")
+    p, name = log.records[i]["prime"], log.records[i]["id"]
+    log.records[i] = {"kind": "fate", "prime": p, "id": name, "verdict": "eliminated", "uses": uses}
+    return i
+
+
 def traps() -> Traps:
     """All of this file."""
     out = Traps()
@@ -263,6 +272,9 @@ def traps() -> Traps:
         place,
     )
     # integral points
+    rejected(
+        "integral_point_eliminated", "not-eliminated", whole(_integral_point_eliminated), "integral_points"
+    )
     rejected("point_at_infinity_called_integral", "not-integral", whole(_called_rational), "integral_points")
     rejected("infinity_left_out_of_rational_points", "not-eliminated", whole(_all_points), "integral_points")
     return out
