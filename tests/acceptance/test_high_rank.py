@@ -80,7 +80,7 @@ def test_the_script_says_what_is_left(capsys: pytest.CaptureFixture[str]) -> Non
 @pytest.mark.slow
 def test_rank_six_beyond_ten_to_the_twenty() -> None:
     full = full_sweep()
-    _, _, known, ladder, result = climb_to("binomial_y2_x5", 30_000 if full else 300,
+    _, _, known, ladder, result = climb_to("binomial_y2_x5", 40_000 if full else 300,
                                            1e20 if full else 2e6, 1e-3 if full else 1e9)
     assert len(known) == 39 and result.halved
     if full:
