@@ -19,7 +19,7 @@ def add_deep(
     """Give the sieve the points modulo q^2 for small q; says whether there are any.
 
     Arguments: `ells`, whose parts may be used (others than q gain nothing); `allowed`, auxiliary primes that
-    may be used (None: all); `lists`, primes with candidates, which are left alone.
+    may be used (None: all); `lists`, primes with complete lists, which say more.
     """
     problem = investigation.problem
     generators = investigation.generators

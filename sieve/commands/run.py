@@ -229,7 +229,7 @@ def execute(
         if lists:
             decisions = decide_candidates(investigation, lists, matched, run.ells, stage, wanted)
             if any(d.verdict == "open" for d in decisions.values()) and not investigation.deep and add_deep(
-                investigation, run.ells, wanted, chabauty_primes
+                investigation, run.ells, wanted, [x.place.prime for x in lists if x.complete]
             ):
                 say(f"points modulo q^2 at q = {sorted(investigation.deep)}")
                 decisions = decide_candidates(investigation, lists, matched, run.ells, stage, wanted)

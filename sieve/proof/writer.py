@@ -316,6 +316,9 @@ def _with_evidence(source: ProofInput, record: Record) -> Record:
             # zeros are counted in every disc
             discs |= set(range(place.group.curve.count))
             digits = max(digits, listing.proof.digits + 1)
+        if p in source.deep:
+            discs |= set(range(place.group.curve.count))
+            digits = max(digits, DEEP_DIGITS + 1)
         return evidence.record(discs, digits, record["reduction"])
     return record
 

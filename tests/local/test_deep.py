@@ -19,7 +19,7 @@ from sieve.files.resolve import read_case
 from sieve.local.deep import DEEP_PRIMES, deep_condition
 from sieve.proof import checker
 from tests.support.reference_cases import reference_case
-from tests.support.run_files import write_case
+from tests.support.run_files import write_candidates, write_case
 
 
 def investigation(name: str, directory: Path) -> Investigation:
@@ -91,3 +91,16 @@ def test_logs_with_deep_conditions(tmp_path: Path) -> None:
     assert b'["deep ' in text
     proof = checker.check(io.BytesIO(text))
     assert done.outlook is not None and proof.count == done.outlook.outcome.relation.count
+
+
+def test_at_the_prime_of_an_incomplete_list(tmp_path: Path) -> None:
+    """Such a list says nothing of other points: those modulo p^2 are a condition for the candidates at q."""
+    case = write_case(reference_case("integral_g2"), tmp_path)
+    reference = reference_case("integral_g2")
+    lists = [str(write_candidates(reference, tmp_path, p, 3, 8, complete=False)) for p in (3, 5)]
+    done = run_command.execute(str(case), lists, primes=[3, 5, 7, 11])
+    assert {3, 5} <= set(done.investigation.deep)
+    run_command.write_files(done, tmp_path / "out", full_proof=True)
+    proof = checker.check(io.BytesIO((tmp_path / "out" / "proof.jsonl").read_bytes()))
+    assert {3, 5} <= set(proof.padics)
+    assert proof.deep_condition("deep 3").allowed and proof.deep_condition("deep 5").allowed
