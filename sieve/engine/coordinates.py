@@ -198,7 +198,8 @@ def basis_of_classes(size: int, functionals: Sequence[tuple[int, Sequence[int]]]
     coordinates are made small over all classes together by lattice reduction.
     """
     basis, settled = vanishing_lattice(size, functionals)
-    relations = true_relations(basis, settled)
+    # in a form that depends on the lattice alone: the same basis whatever primes showed it
+    relations = _lll(hermite(true_relations(basis, settled)))
     count = len(relations)
     diagonal, right = _smith(relations, size)
     # class of e_j: row j of `right`; coordinates with diagonal d > 1 are torsion, those past `count` are free
