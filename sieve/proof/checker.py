@@ -327,9 +327,11 @@ def insert(basis: list[Row], row: Row, modulus: int = 0) -> Row:
     """
     for j, pivot in enumerate(basis):
         a, b = pivot[j], row[j]
+        if b == 0:
+            continue
         if b % a == 0:
             quotient = b // a
-            row = [x - quotient * y for x, y in zip(row, pivot)] if quotient else row
+            row = [x - quotient * y for x, y in zip(row, pivot)]
         else:
             divisor, s, t = bezout(a, b)
             basis[j] = [s * y + t * x for x, y in zip(row, pivot)]
@@ -378,7 +380,9 @@ def lattice_index(rows: list[Row], width: int, work: Work) -> int:
     chosen = independent(rows, LARGE_PRIMES[0], width)
     if len(chosen) < width:
         return 0
-    multiple = determinant([rows[i] for i in chosen])
+    last = rows[::-1]
+    multiple = gcd(determinant([rows[i] for i in chosen]),
+                   determinant([last[i] for i in independent(last, LARGE_PRIMES[0], width)]))
     basis = diagonal([multiple] * width)
     for row in rows:
         insert(basis, row, multiple)

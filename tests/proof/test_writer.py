@@ -58,7 +58,8 @@ def check_agreement(run: run_command.Run, text: str) -> None:
         fate = fates[verdict.prime, verdict.id]
         assert fate["verdict"] == verdict.verdict
         if verdict.verdict == "eliminated":
-            names = [u[0] if isinstance(u[0], int) else int(u[0].split("=")[1]) for u in fate["uses"]]
+            # v, "p = q" or "deep q"
+            names = [u[0] if isinstance(u[0], int) else int(u[0].split(" ")[-1]) for u in fate["uses"]]
             assert tuple(dict.fromkeys(names)) == verdict.primes
         elif verdict.verdict == "rational":
             assert (fate["given"], fate["sole"]) == (verdict.given, verdict.sole)
