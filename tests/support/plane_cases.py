@@ -14,7 +14,7 @@ from sieve.curves.protocol import Curve
 from sieve.engine.problem import Problem
 from sieve.files.notation_out import form_text
 from sieve.files.resolve import read_case
-from tests.support.run_files import random_points
+from tests.support.run_files import numbered, random_points, write_json
 
 DATA = Path(__file__).resolve().parents[2] / "data" / "reference" / "quartics.json"
 
@@ -100,13 +100,4 @@ def write_plane_candidates(
     problem = read_case(case)
     points = [problem.curve.format_point(q) for q in problem.known_points]
     points += random_points(problem.curve, p, digits, count, seed)
-    document = {
-        "format": "sieve-candidates/1",
-        "prime": p,
-        "precision": digits,
-        "complete": complete,
-        "source": "known points and random ones, for tests",
-        "candidates": [{"id": f"z{i}", "point": text} for i, text in enumerate(points, 1)],
-    }
-    path.write_text(json.dumps(document), encoding="utf-8")
-    return path
+    return write_json(path, p, digits, numbered(points), complete)

@@ -18,6 +18,7 @@ from flint import fmpz_poly
 
 from sieve.curves.divisors import Divisor, Point
 from sieve.curves.hyperelliptic import HyperellipticCurve, SingularCurve
+from sieve.curves.protocol import Curve
 from sieve.curves.search import points_over
 from sieve.engine.coordinates import PointCoordinates, basis_of_classes
 from sieve.engine.investigation import Investigation
@@ -137,6 +138,20 @@ class Planted:
         return other
 
 
+def group_of_points(curve: Curve, points: tuple[Point, ...], base: Divisor) -> Investigation:
+    """The group that the differences of the points generate, of whatever rank it is."""
+    first = Investigation(
+        Problem("planted", curve, base, (), (), points, 0, "a premise", from_known_points=True)
+    )
+    first.gather(primes_below(BOUND))
+    rank = len(basis_of_classes(len(points), first._functionals(None)).free)
+    group = Investigation(replace(first.problem, rank=rank))
+    for record in first.records.values():
+        group.add(record)
+    group.establish(lambda primes: None)
+    return group
+
+
 def plant(rng: random.Random, genus: int) -> Planted:
     """A random curve, a base among its planted points or a divisor, the group of the differences."""
     curve, points = planted_curve(rng, genus)
@@ -151,16 +166,7 @@ def plant(rng: random.Random, genus: int) -> Planted:
     elif rng.random() < 0.15:
         # a fibre, of degree 2
         base = Divisor.of([(1, curve.double_cover_place())])
-    first = Investigation(
-        Problem("planted", curve, base, (), (), points, 0, "a premise", from_known_points=True)
-    )
-    first.gather(primes_below(BOUND))
-    rank = len(basis_of_classes(len(points), first._functionals(None)).free)
-    group = Investigation(replace(first.problem, rank=rank))
-    for record in first.records.values():
-        group.add(record)
-    group.establish(lambda primes: None)
-    return Planted(curve, points, base, group)
+    return Planted(curve, points, base, group_of_points(curve, points, base))
 
 
 # ---- candidates ---------------------------------------------------------------------------------------

@@ -6,7 +6,6 @@ Points first: the quartics through given points are the small vectors of a latti
 from __future__ import annotations
 
 import random
-from dataclasses import replace
 from math import gcd
 
 import flint
@@ -14,12 +13,8 @@ import flint
 from sieve.curves.divisors import Divisor, Point
 from sieve.curves.line_search import line_places
 from sieve.curves.plane import PlaneCurve, SingularPlaneCurve, monomials
-from sieve.engine.coordinates import basis_of_classes
-from sieve.engine.investigation import Investigation
-from sieve.engine.problem import Problem
 from sieve.errors import Inconsistent
-from sieve.exact.primes import primes_below
-from tests.support.planted import BOUND, Planted, Tally, spoil, survive
+from tests.support.planted import Planted, Tally, group_of_points, spoil, survive
 
 
 def normalised(x: int, y: int, z: int) -> Point:
@@ -73,16 +68,7 @@ def plant_quartic(rng: random.Random) -> Planted:
         else:
             a, b = rng.sample(points, 2)
             base = Divisor.of([(1, place(a)), (1, place(b))]) - base
-    first = Investigation(
-        Problem("planted", curve, base, (), (), points, 0, "a premise", from_known_points=True)
-    )
-    first.gather(primes_below(BOUND))
-    rank = len(basis_of_classes(len(points), first._functionals(None)).free)
-    group = Investigation(replace(first.problem, rank=rank))
-    for record in first.records.values():
-        group.add(record)
-    group.establish(lambda primes: None)
-    return Planted(curve, points, base, group)
+    return Planted(curve, points, base, group_of_points(curve, points, base))
 
 
 def sweep_quartics(seed: str, count: int) -> Tally:

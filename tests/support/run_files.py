@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import random
+from collections.abc import Sequence
 from fractions import Fraction
 from pathlib import Path
 
@@ -114,17 +115,13 @@ def write_candidates(
     if known and len(case.f) == 2 * case.genus + 2 and len(case.h) <= case.genus + 1:
         points += [] if (1, 0, 0) in case.known_points else ["(1 : 0 : 0)"]
     points += random_points(curve, p, digits, count, 1000 * p + digits)
-    document = {
-        "format": "sieve-candidates/1",
-        "prime": p,
-        "precision": digits,
-        "complete": complete,
-        "source": "known points and random ones, for tests",
-        "candidates": [{"id": f"z{i}", "point": text} for i, text in enumerate(points, 1)],
-    }
     path = directory / f"{case.id}.{p}.json"
-    path.write_text(json.dumps(document), encoding="utf-8")
-    return path
+    return write_json(path, p, digits, numbered(points), complete)
+
+
+def numbered(points: Sequence[str]) -> list[dict[str, object]]:
+    """Candidates z1, z2, .. of the form point."""
+    return [{"id": f"z{i}", "point": text} for i, text in enumerate(points, 1)]
 
 
 def write_json(
