@@ -287,9 +287,9 @@ def statement(run: Run) -> str:
         how_many = f"{len(exact)} point" + ("s" if len(exact) > 1 else "")
         shown = ", ".join(map(curve.format_point, exact))
         return f"{all_of_them} has exactly {how_many}: {shown}. {why}"
-    text = f"{eliminated} candidates are proved not to be {kind}."
+    text = f"Candidates proved not to be {kind}: {eliminated}."
     if left:
-        text += f" {len(left)} stay open."
+        text += f" Candidates that stay open: {len(left)}."
     if points:
         text += f" {kind.capitalize()} points met: {shown}."
     return text

@@ -2131,12 +2131,13 @@ def statement(proof: Proof) -> str:
         out.append(f"{where} at {p}: {how}.")
     if proof.conclusion == "points":
         points = ", ".join(map(point_words, proof.points))
-        out.append(f"{points_of} has exactly {len(proof.points)} points: {points}.")
+        count = len(proof.points)
+        out.append(f"{points_of} has exactly {count} point{'s' * (count > 1)}: {points}.")
     elif proof.conclusion == "empty":
         out.append(f"{points_of} is empty.")
     still = sum(c.verdict == "open" for c in proof.fates)
     if still:
-        out.append(f"{still} candidates stay open.")
+        out.append(f"Candidates that stay open: {still}.")
     if proof.count:
         out.append(f"{points_of} lies in {proof.count} classes of the group of the generators.")
     return " ".join(out)
