@@ -3,16 +3,28 @@
 from __future__ import annotations
 
 import json
+import random
+from collections.abc import Sequence
+from fractions import Fraction
 from pathlib import Path
 
 import pytest
 
 from sieve.engine.investigation import Investigation
 from sieve.exact.primes import primes_below
+from sieve.local.logarithms import PadicIntegrals
 from tests.support.command_line import sieve
-from tests.support.plane_cases import quartic_case, quartic_problem, write_plane_candidates, write_quartic
+from tests.support.plane_cases import (
+    moved,
+    plane_case_text,
+    quartic_case,
+    quartic_problem,
+    write_plane_candidates,
+    write_quartic,
+)
 from tests.support.planted_quartics import sweep_quartics
 from tests.support.power import power
+from tests.support.run_files import numbered, write_json
 from tests.support.sweep import full_sweep
 
 PRIMES = {
@@ -55,6 +67,43 @@ def test_every_log_is_accepted(name: str, tmp_path: Path) -> None:
     checked = sieve("check", tmp_path / "out" / "proof.jsonl", "--json")
     assert checked.code == 0
     assert len(json.loads(checked.out)["eliminated"]) == data["counts"]["eliminated"]
+
+
+def test_verdicts_do_not_depend_on_the_coordinates(tmp_path: Path) -> None:
+    """A quartic and its image under a projective change of coordinates: same verdicts, same groups."""
+    case, p, digits = quartic_case("X0p239"), 3, 5
+    curve = case.curve
+    # (X, Y, Z) = matrix * (new coordinates), determinant 1
+    matrix, inverse = [[1, 1, 0], [0, 1, 2], [1, 1, 1]], [[-1, -1, 2], [2, 1, -2], [-1, 0, 1]]
+    assert [[sum(a * row[j] for a, row in zip(line, inverse, strict=True)) for j in range(3)]
+            for line in matrix] == [[1, 0, 0], [0, 1, 0], [0, 0, 1]]  # fmt: skip
+
+    def there(point: Sequence[int]) -> list[int]:
+        return [sum(a * b for a, b in zip(row, point, strict=True)) for row in inverse]
+
+    image = moved(curve, matrix)
+    integrals, rng = PadicIntegrals(curve, p, digits), random.Random(239)
+    points: list[Sequence[int]] = list(case.known_points)
+    for _ in range(15):
+        disc, t = rng.randrange(integrals.group.curve.count), p * rng.randrange(p ** (digits - 1))
+        points.append(integrals.point_at(disc, t, digits))
+    found = []
+    for name, model, change in (("here", curve, list), ("there", image, there)):
+        known = [model.normalise(*map(Fraction, change(q))) for q in case.known_points]
+        path = tmp_path / f"{name}.toml"
+        path.write_text(plane_case_text(model, name, 3, known), "utf-8")
+        texts = [" : ".join(f"{c} + O({p}^{digits})" for c in change(q)) for q in points]
+        candidates = tmp_path / f"{name}.json"
+        write_json(candidates, p, digits, numbered([f"({text})" for text in texts]), False)
+        done = sieve("run", path, "-c", candidates, "-o", tmp_path / name, "--bound", "300", "--json")
+        assert done.code in (0, 1), done.err
+        data = json.loads(done.out)
+        groups = {r["prime"]: (r["points"], r["structure"]) for r in data["local"]}
+        found.append(([v["verdict"] for v in data["verdicts"]], groups))
+    here, other = found
+    assert here[0] == other[0] and here[0].count("eliminated") >= 5 and here[0].count("rational") >= 5
+    common = here[1].keys() & other[1].keys()
+    assert len(common) > 30 and all(here[1][v] == other[1][v] for v in common)
 
 
 def check(seed: str, curves: int) -> None:

@@ -19,6 +19,7 @@ from sieve.local.picard import PicardGroup, picard_group
 from sieve.local.rational_sections import Section, present, section_through
 from sieve.local.records import class_bytes, classes_from_bytes, divisor_log, local_record
 from sieve.proof.witness_local import local_document
+from tests.support.plane_cases import moved
 from tests.support.quartics import DATA, line_places, quartics, random_line
 from tests.support.sweep import full_sweep
 
@@ -34,23 +35,6 @@ def group_of(name: str, v: int) -> PicardGroup | None:
 
 def primes(low: int, high: int) -> list[int]:
     return [v for v in range(low, high) if fmpz(v).is_prime()]
-
-
-def moved(curve: PlaneCurve, matrix: list[list[int]]) -> PlaneCurve:
-    """The curve F(M (X, Y, Z)) = 0."""
-    total: dict[tuple[int, int, int], int] = {}
-    for exponents, c in curve.terms.items():
-        product = {(0, 0, 0): c}
-        for row, exponent in zip(matrix, exponents, strict=True):
-            for _ in range(exponent):
-                longer: dict[tuple[int, int, int], int] = {}
-                for (i, j, k), a in product.items():
-                    for key, b in zip(((i + 1, j, k), (i, j + 1, k), (i, j, k + 1)), row, strict=True):
-                        longer[key] = longer.get(key, 0) + a * b
-                product = longer
-        for key, a in product.items():
-            total[key] = total.get(key, 0) + a
-    return PlaneCurve(total)
 
 
 # ---- orders --------------------------------------------------------------------------------------------

@@ -86,6 +86,23 @@ base = "{curve.format_point(points[0])}"
 """
 
 
+def moved(curve: PlaneCurve, matrix: list[list[int]]) -> PlaneCurve:
+    """The curve F(M (X, Y, Z)) = 0."""
+    total: dict[tuple[int, int, int], int] = {}
+    for exponents, c in curve.terms.items():
+        product = {(0, 0, 0): c}
+        for row, exponent in zip(matrix, exponents, strict=True):
+            for _ in range(exponent):
+                longer: dict[tuple[int, int, int], int] = {}
+                for (i, j, k), a in product.items():
+                    for key, b in zip(((i + 1, j, k), (i, j + 1, k), (i, j, k + 1)), row, strict=True):
+                        longer[key] = longer.get(key, 0) + a * b
+                product = longer
+        for key, a in product.items():
+            total[key] = total.get(key, 0) + a
+    return PlaneCurve(total)
+
+
 def write_quartic(case: QuarticCase, directory: Path) -> Path:
     assert case.rank is not None
     path = directory / f"{case.id}.toml"
