@@ -373,19 +373,42 @@ def index_of(basis: list[Row]) -> int:
     return prod(row[i] for i, row in enumerate(basis))
 
 
-def lattice_index(rows: list[Row], width: int, work: Work) -> int:
-    """The index in Z^width of the lattice that the rows span; 0 for infinite index."""
+def lattice_index(rows: list[Row], width: int, order: int, work: Work) -> int:
+    """The index in Z^width of the lattice that the rows span, a multiple of `order`; 0 for infinite index.
+
+    It divides every minor.  Fraction-free elimination (Bareiss 1968) gives one minor d, and Cramer's rule
+    those that differ from it in one row; mostly their greatest common divisor is the index already.
+    """
     work.spend(width**2 * (width + len(rows)) // 4)
     rows = sorted(rows, key=lambda row: (sum(map(abs, row)), row))
-    chosen = independent(rows, LARGE_PRIMES[0], width)
-    if len(chosen) < width:
+    table, d = [list(column) for column in zip(*rows)], 1
+    pivots: Row = []
+    for c in range(len(rows)):
+        k = len(pivots)
+        place = next((i for i in range(k, width) if table[i][c]), None)
+        if place is None:
+            continue
+        table[k], table[place] = table[place], table[k]
+        top, pivot = table[k][c:], table[k][c]
+        for row in table[k + 1 :]:
+            factor = row[c]
+            row[c:] = [(pivot * x - factor * y) // d for x, y in zip(row[c:], top)]
+        pivots.append(c)
+        d = pivot
+    if len(pivots) < width:
         return 0
-    last = rows[::-1]
-    multiple = gcd(determinant([rows[i] for i in chosen]),
-                   determinant([last[i] for i in independent(last, LARGE_PRIMES[0], width)]))
-    basis = diagonal([multiple] * width)
+    divisor = abs(d)
+    for c in sorted(set(range(len(rows))) - set(pivots)):
+        if divisor == order:
+            return order
+        solution: Row = []
+        for row, c_pivot in zip(table[::-1], pivots[::-1]):
+            known = sum(row[q] * x for q, x in zip(pivots[::-1], solution))
+            solution.append((d * row[c] - known) // row[c_pivot])
+        divisor = gcd(divisor, *solution)
+    basis = diagonal([divisor] * width)
     for row in rows:
-        insert(basis, row, multiple)
+        insert(basis, row, divisor)
     return index_of(basis)
 
 
@@ -1031,7 +1054,7 @@ class Local:
         for row in generators:
             insert(image, row)
         need(index_of(image) == 1, "not-onto", "the logarithms do not generate the group")
-        index = lattice_index(relations, self.width, self.curve.work)
+        index = lattice_index(relations, self.width, order, self.curve.work)
         need(index == order, "index", "the index of the relations is not the order of the group")
         need(counts in (0, g), "counts", f"counts is {counts}, expected 0 or {g}")
         if counts == 0:
