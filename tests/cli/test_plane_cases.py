@@ -156,7 +156,7 @@ order = 4
 divisor = [[1, { root_of = "t^2 + 10/41*t + 9/41", point = "(2*t : -2 : 3*t + 1)" }], [-2, "(-1 : -1 : 1)"]]
 """,
 }
-"""What the proposals are."""
+"""What the proposals are, up to the choice of torsion generators."""
 
 
 def write_even(name: str, directory: Path) -> Path:
@@ -179,7 +179,8 @@ def test_proposals(name: str, tmp_path: Path) -> None:
     assert done.code == 0, done.err
     found, expected = json.loads(done.out), tomllib.loads(write_even(name, tmp_path).read_text("utf-8"))
     assert found["generators"] == [g["divisor"] for g in expected["jacobian"]["generators"]]
-    assert found["torsion"] == expected["jacobian"]["torsion"]
+    # the same group in another basis is as good: `inspect` proves the orders of the stored one
+    assert [t["order"] for t in found["torsion"]] == [t["order"] for t in expected["jacobian"]["torsion"]]
     assert found["base"] == expected["jacobian"]["base"] and found["known_points"] == expected["known_points"]
 
 
