@@ -1,6 +1,6 @@
 """Ratios, taken in one run on one core: this engine next to the usual ways.
 
-    python scripts/bench.py [--quick] [local] [plane] [joins] [store] [cores] [advice]
+    python scripts/bench.py [--quick] [local] [plane] [joins] [store] [cores] [advice] [check]
 
 local   J(F_v) with the logarithms of all points of X(F_v), next to PARI's point count alone
         (`hyperellcharpoly`) and to the textbook way (order by PARI, Cantor arithmetic, Pohlig-Hellman for
@@ -12,6 +12,7 @@ joins   the sieve by joins next to lift-and-filter (Bruin and Stoll 2010) on the
 store   local data computed next to local data read back.
 cores   local data with one and with two processes.
 advice  what the primes advised first remove, next to the best ones of all.
+check   checking the proof log, trimmed and full, next to the cold run that wrote it.
 
 Times are the minimum of several runs.  Every table carries a count that shows that the work was done.  Needs
 the test packages (`pip install -e '.[test]'`).
@@ -19,6 +20,7 @@ the test packages (`pip install -e '.[test]'`).
 
 from __future__ import annotations
 
+import io
 import os
 import sys
 import time
@@ -38,6 +40,8 @@ sys.path.insert(0, str(Path(__file__).resolve().parent.parent))
 from cypari import pari
 from flint import fmpz
 
+from sieve.commands import run as run_command
+from sieve.commands.prooflog import proof_of
 from sieve.curves.divisors import Divisor
 from sieve.curves.hyperelliptic import HyperellipticCurve
 from sieve.curves.plane import PlaneCurve
@@ -53,10 +57,13 @@ from sieve.exact.primes import primes_below
 from sieve.files.store import Store
 from sieve.local.picard import PicardGroup, picard_group
 from sieve.local.records import LocalRecord, local_records
+from sieve.proof import checker
 from tests.support.cantor import CantorJacobian
+from tests.support.plane_cases import quartic_case, write_plane_candidates, write_quartic
 from tests.support.pohlig_hellman import GroupOracle
 from tests.support.quartics import quartics
 from tests.support.reference_cases import ReferenceCase, reference_case, reference_cases
+from tests.support.run_files import RUNNABLE, chabauty_prime, write_candidates, write_case
 
 T = TypeVar("T")
 
@@ -377,11 +384,41 @@ def bench_advice(quick: bool) -> None:
           f"left: median factor {factors[len(factors) // 2]:.2f}")
 
 
+def bench_check(quick: bool) -> None:
+    """A run with 10 random candidates, then the checker on both its logs; one process, no store."""
+    quartics_at = {"level13_split": 7, "level13_S4": 5, "X0p97": 7, "X0p239": 3}
+    names = [*RUNNABLE[: 4 if quick else None], *list(quartics_at)[: 1 if quick else None]]
+    print("check: seconds of a cold run, of checking its log (trimmed, full), kB, primes in the logs")
+    ratios = []
+    for name in names:
+        with TemporaryDirectory() as directory:
+            folder = Path(directory)
+            if name in quartics_at:
+                case = write_quartic(quartic_case(name), folder)
+                candidates = write_plane_candidates(case, folder / "c.json", quartics_at[name], 5, 10)
+            else:
+                known = reference_case(name)
+                case = write_case(known, folder)
+                candidates = write_candidates(known, folder, chabauty_prime(known), 4, 10)
+            start = time.perf_counter()
+            done = run_command.execute(str(case), [str(candidates)], bound=400)
+            run_command.write_files(done, folder / "out")
+            run = time.perf_counter() - start
+            logs = [proof_of(done, full) for full in (False, True)]
+        texts = [log.text.encode() for log in logs]
+        seconds = [best(lambda text=text: checker.check(io.BytesIO(text)), 3)[0] for text in texts]
+        ratios.append(seconds[0] / run)
+        times = f"run {run:6.2f}  check {seconds[0]:5.2f} {seconds[1]:6.2f}  ratio {ratios[-1]:.2f}"
+        print(f"  {name:24} {times}  {len(texts[0]) / 1000:6.1f} {len(texts[1]) / 1000:7.1f} kB  {len(logs[0].primes)} of "
+              f"{len(logs[1].primes)} primes")
+    print(f"  check / run: mean {mean(ratios):.2f}, worst {max(ratios):.2f} (goal 0.5, limit 1)")
+
+
 def main() -> None:
     words = sys.argv[1:]
     quick = "--quick" in words
     sections = {"local": bench_local, "plane": bench_plane, "joins": bench_joins, "store": bench_store,
-                "cores": bench_cores, "advice": bench_advice}
+                "cores": bench_cores, "advice": bench_advice, "check": bench_check}
     for word in [w for w in words if w != "--quick"] or list(sections):
         sections[word](quick)
 
