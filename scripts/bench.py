@@ -409,8 +409,8 @@ def bench_check(quick: bool) -> None:
         seconds = [best(lambda text=text: checker.check(io.BytesIO(text)), 3)[0] for text in texts]
         ratios.append(seconds[0] / run)
         times = f"run {run:6.2f}  check {seconds[0]:5.2f} {seconds[1]:6.2f}  ratio {ratios[-1]:.2f}"
-        print(f"  {name:24} {times}  {len(texts[0]) / 1000:6.1f} {len(texts[1]) / 1000:7.1f} kB  {len(logs[0].primes)} of "
-              f"{len(logs[1].primes)} primes")
+        print(f"  {name:24} {times}  {len(texts[0]) / 1000:6.1f} {len(texts[1]) / 1000:7.1f} kB  "
+              f"{len(logs[0].primes)} of {len(logs[1].primes)} primes")
     print(f"  check / run: mean {mean(ratios):.2f}, worst {max(ratios):.2f} (goal 0.5, limit 1)")
 
 
