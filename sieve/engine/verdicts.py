@@ -260,8 +260,8 @@ def _rational(
         notes.append("a whole residue disc without the bound at_most = 1 may hold other rational points")
     if candidate.kind == "coefficients":
         notes.append("other rational points may have coefficients that agree to the digits given")
-    if listing.proved_complete and not listing.claimed and not notes:
-        # the multiplicity of a point is part of the claim
+    if not listing.claimed and not notes:
+        # the multiplicity of a point is part of the claim to be complete, and a premise with it
         notes.append("nothing bounds the number of rational points that agree with it")
     bounds = (candidate.at_most, listing.proved_bound(candidate, points))
     sole = not notes or (candidate.kind != "coefficients" and len(points) in bounds)

@@ -63,15 +63,18 @@ def decide(
 
 
 def test_known_and_unknown_rational_points(found: Investigation, place: ChabautyPlace) -> None:
-    """A point that the case does not list is recognised by rational reconstruction."""
+    """A point that the case does not list is recognised by rational reconstruction.
+
+    The list claims nothing, so that a point is alone near a candidate only by a bound of its own.
+    """
+    bounded = given(place, (0, 1, 1), "a", at_most=1)
     decisions = decide(
-        found,
-        place,
-        [given(place, (0, 1, 1), "a"), given(place, (1, 7, 2), "b"), given(place, (1, -1, 0), "c")],
+        found, place, [bounded, given(place, (1, 7, 2), "b"), given(place, (1, -1, 0), "c")]
     )
     assert [d.verdict for d in decisions.values()] == ["rational"] * 3
     assert decisions["a"].points == ((0, 1, 1),) and decisions["a"].given and decisions["a"].sole
-    assert decisions["b"].points == ((1, 7, 2),) and not decisions["b"].given
+    assert decisions["b"].points == ((1, 7, 2),) and not decisions["b"].given and not decisions["b"].sole
+    assert "bounds" in decisions["b"].reason
     assert decisions["c"].points == ((1, -1, 0),) and not decisions["c"].given
 
 
